@@ -1,0 +1,168 @@
+"""What any robot must offer, and nothing else: the one page that a backend and the program share.
+
+A backend drives one robot. It is found by its entry point in the group `trundle.backends`, a callable that
+takes a `Setup` and returns a `Backend`. It knows poses and floors (`runner.site`) and nothing of missions.
+
+Rules that every backend keeps, and that the host relies on:
+- Time is `clock.now()`, seconds since `open`, never falling. Every report carries the stamp of when it was true.
+- `go` is idempotent by goal id: the same id again changes nothing. A new id replaces the goal under way, for which
+  no further status comes. Ids count up within a run and never repeat.
+- A goal ends exactly once, with `arrived`, `refused`, `no route`, `halted` or `failed`; then the robot stands still.
+- `clear`, `replan`, `ease_back` and `relocate` carry an action id and are answered by one `ActionReport`. They may be
+  asked for with or without a goal under way. A goal under way stays under way, and driving to it goes on afterwards.
+- `halt` ends the goal and any action and stops the robot as fast as its limits allow. It is always legal.
+- `reports(until)` returns as soon as there is news, or with an empty list at `until`. A simulator computes up to that
+  moment; a link waits for it. Commands take effect at `clock.now()`.
+- Same setup, same seed, same calls at the same times: same reports, to the bit (simulators).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from datetime import datetime
+from enum import Enum
+from typing import Protocol
+
+from runner.site.values import Conditions, Point, Pose, RobotDescription, Site
+
+
+class Capability(Enum):
+    """What a robot may be able to do beyond driving to a pose and halting."""
+
+    CLEAR = "clear"
+    REPLAN = "replan"
+    EASE_BACK = "ease back"
+    RELOCATE = "relocate"
+    CHARGE = "charge"
+
+
+@dataclass(frozen=True, slots=True)
+class Setup:
+    """Everything a backend is made from. A backend for a real robot ignores `conditions` and `seed`."""
+
+    site: Site
+    robot: RobotDescription
+    start: Pose
+    conditions: Conditions
+    seed: int
+    begins: datetime
+    """Wall time at which a simulated run begins; local time of the site, without a zone."""
+
+
+@dataclass(frozen=True, slots=True)
+class Goal:
+    """A pose to drive to. `speed` caps the robot's own limit, m/s."""
+
+    id: int
+    pose: Pose
+    speed: float
+
+
+class GoalStatus(Enum):
+    """Where a goal stands. The last five end it."""
+
+    ACCEPTED = "accepted"
+    UNDER_WAY = "under way"
+    ARRIVED = "arrived"
+    REFUSED = "refused"
+    NO_ROUTE = "no route"
+    HALTED = "halted"
+    FAILED = "failed"
+
+
+@dataclass(frozen=True, slots=True)
+class GoalReport:
+    """The status of a goal changed. `reason` is a sentence where the status needs one."""
+
+    stamp: float
+    goal_id: int
+    status: GoalStatus
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class ActionReport:
+    """An action ended; `done` is False where the robot could not do it, with the reason."""
+
+    stamp: float
+    action_id: int
+    done: bool
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Telemetry:
+    """What the robot believes and senses, some times a second.
+
+    `spread` is the standard deviation of the believed position, meters. `remaining` is the length of the route
+    still to drive to the goal, meters, None without a goal or before there is a route. `route` is that route from
+    the robot to the goal and `route_number` counts the times it was planned anew. `driven` is the path length driven
+    since `open`, meters. `battery` is a fraction, 0 to 1. `obstacles` are points of things sensed near the robot
+    that its map does not know, in the site frame.
+    """
+
+    stamp: float
+    pose: Pose
+    spread: float
+    speed: float
+    turn_rate: float
+    battery: float
+    driven: float
+    remaining: float | None
+    route_number: int
+    route: tuple[Point, ...]
+    obstacles: tuple[Point, ...]
+
+
+Report = GoalReport | ActionReport | Telemetry
+
+
+class Clock(Protocol):
+    """The time a run lives in."""
+
+    @property
+    def virtual(self) -> bool:
+        """True where time jumps as the arithmetic allows, so that the host must set the pace."""
+
+    def now(self) -> float:
+        """Seconds since `open`."""
+
+    def wall(self) -> datetime:
+        """Local wall time of the site, for clock conditions only."""
+
+
+class Backend(Protocol):
+    """One robot. Every call returns at once, except `reports`."""
+
+    @property
+    def clock(self) -> Clock: ...
+
+    @property
+    def capabilities(self) -> frozenset[Capability]: ...
+
+    def open(self) -> None:
+        """Make ready, before any other call. May take seconds the first time (compiling, connecting)."""
+
+    def go(self, goal: Goal) -> None: ...
+
+    def halt(self) -> None: ...
+
+    def clear(self, action_id: int, radius: float) -> None:
+        """Forget remembered obstacles within `radius` meters of the robot."""
+
+    def replan(self, action_id: int) -> None:
+        """Throw the route away and plan a new one from what is remembered now."""
+
+    def ease_back(self, action_id: int, distance: float) -> None:
+        """Drive straight backward by `distance` meters, slowly, as far as it is free."""
+
+    def relocate(self, action_id: int, pose: Pose | None) -> None:
+        """Find out anew where the robot is, near `pose` if given."""
+
+    def charge(self) -> None:
+        """Begin charging, where the robot stands at a charger."""
+
+    def reports(self, until: float) -> Sequence[Report]: ...
+
+    def close(self) -> None: ...

@@ -1,0 +1,222 @@
+"""What goes into the engine and what comes out: inputs, commands, notes. Plain values, no behavior.
+
+Inputs carry their stamp, seconds since the run began; it is all the engine ever knows of time.
+Commands are for the robot. Notes are for the record: what a person wants to read in the morning.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+from runner.machine.table import Ending, Event, Outcome
+from runner.site.values import Point, Pose
+
+# --- inputs ---------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class Begin:
+    """The run begins. `clock` is the time of day at stamp 0, seconds since midnight."""
+
+    stamp: float
+    clock: float
+
+
+@dataclass(frozen=True, slots=True)
+class Seen:
+    """Telemetry, as far as the engine uses it (units as in `backends.contract.Telemetry`)."""
+
+    stamp: float
+    pose: Pose
+    spread: float
+    speed: float
+    battery: float
+    driven: float
+    remaining: float | None
+    route_number: int
+    route: tuple[Point, ...]
+    obstacles: tuple[Point, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class GoalNews:
+    """The robot ended a goal, or (event None) accepted it or got under way."""
+
+    stamp: float
+    goal_id: int
+    event: Event | None
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class ActionNews:
+    """The robot ended an action."""
+
+    stamp: float
+    action_id: int
+    done: bool
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Tick:
+    """Time has come this far; timers may have run out."""
+
+    stamp: float
+
+
+@dataclass(frozen=True, slots=True)
+class Operator:
+    """A person acts: `event` is HOLD, RELEASE, SKIP or ABORT."""
+
+    stamp: float
+    event: Event
+    who: str
+
+
+Input = Begin | Seen | GoalNews | ActionNews | Tick | Operator
+
+# --- commands -------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class Go:
+    goal_id: int
+    place: str
+    pose: Pose
+    speed: float
+
+
+@dataclass(frozen=True, slots=True)
+class Halt:
+    pass
+
+
+@dataclass(frozen=True, slots=True)
+class Clear:
+    action_id: int
+    radius: float
+
+
+@dataclass(frozen=True, slots=True)
+class Replan:
+    action_id: int
+
+
+@dataclass(frozen=True, slots=True)
+class EaseBack:
+    action_id: int
+    distance: float
+
+
+@dataclass(frozen=True, slots=True)
+class Relocate:
+    action_id: int
+
+
+Command = Go | Halt | Clear | Replan | EaseBack | Relocate
+
+# --- notes ----------------------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class StepBegan:
+    """`laps` are the laps of the loops around the step, outermost first, counted from 1."""
+
+    step: int
+    text: str
+    line: int
+    laps: tuple[int, ...] = ()
+
+
+@dataclass(frozen=True, slots=True)
+class LegBegan:
+    leg: int
+    step: int
+    place: str
+
+
+@dataclass(frozen=True, slots=True)
+class LegEnded:
+    """`seconds` and `meters` from where the leg began; `reason` says why, where it did not arrive."""
+
+    leg: int
+    step: int
+    place: str
+    outcome: Outcome
+    reason: str
+    seconds: float
+    meters: float
+    tries: int
+    recoveries: int
+
+
+@dataclass(frozen=True, slots=True)
+class IncidentBegan:
+    """`sign` is the event that showed the trouble."""
+
+    incident: int
+    leg: int
+    sign: Event
+    detail: str
+    pose: Pose | None
+    remaining: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class RecoveryBegan:
+    """One recovery is tried. `rung` counts from 1 within the rule, `attempt` from 1 within the incident."""
+
+    incident: int
+    leg: int
+    recovery: str
+    rung: int
+    attempt: int
+    tries: int
+
+
+@dataclass(frozen=True, slots=True)
+class IncidentEnded:
+    """`ended_by` is the recovery after which the robot got on, or what else ended the trouble.
+
+    `diagnosis` is what the evidence speaks for, `reasons` the evidence.
+    """
+
+    incident: int
+    leg: int
+    recovered: bool
+    ended_by: str
+    seconds: float
+    diagnosis: str
+    reasons: tuple[str, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class TryFailed:
+    """A try of a leg is over without arriving; `rest` seconds until the next one."""
+
+    leg: int
+    tries: int
+    rest: float
+
+
+@dataclass(frozen=True, slots=True)
+class OperatorActed:
+    """An intervention. `accepted` is False where the action meant nothing in this state."""
+
+    action: str
+    who: str
+    accepted: bool
+
+
+@dataclass(frozen=True, slots=True)
+class Ended:
+    ending: Ending
+    reason: str
+
+
+Note = (
+    StepBegan | LegBegan | LegEnded | IncidentBegan | RecoveryBegan | IncidentEnded | TryFailed | OperatorActed | Ended
+)
+
+Effect = Command | Note

@@ -1,0 +1,262 @@
+"""The machine: states, transitions and registers as data. Nothing here runs; the engine interprets it.
+
+A machine is a list of blocks. A block is one instance of a fragment (a small table of states, written once and shared
+by every step of the same shape) together with what is particular to the step: where to go, how long, and which block
+follows through which exit. So one `go` is a handful of explicit states, and ten thousand of them cost ten thousand
+small tuples, not a million rows.
+
+How a table is read:
+- A state is (block, local): the block's number and the number of the state within its fragment.
+- On entry a state's `on_entry` actions happen in order. Then, if it has AT ONCE rows, the first whose guard holds is
+  taken without waiting. Otherwise the state rests until an event comes.
+- An event takes the first row of that event whose guard holds; if the state has none, the machine's `anywhere` rows
+  are looked at. `target` is a local state, an exit of the block, or None: stay, without entering again.
+- `Exit.HELD` keeps the place in a return register and enters the held block; `Exit.RETURN` goes back to the
+  `resume` state of the place that was left.
+- A state without rows is an end.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field
+from enum import Enum
+
+from runner.language.mission import Mark
+from runner.site.values import Pose
+
+
+class Event(Enum):
+    """What can happen to a machine. The first is not an event but its absence: the row is taken without waiting."""
+
+    AT_ONCE = "at once"
+    ARRIVED = "arrived"
+    REFUSED = "refused"
+    NO_ROUTE = "no route"
+    FAILED = "failed"
+    HALTED = "halted"
+    STALLED = "stalled"
+    SWAYING = "swaying"
+    PROGRESSED = "progressed"
+    ACTION_DONE = "action done"
+    ACTION_FAILED = "action failed"
+    ACTION_OVERDUE = "action overdue"
+    REST_OVER = "rest over"
+    WAIT_OVER = "wait over"
+    LEG_TIME_OVER = "leg time over"
+    GIVE_UP_TIME = "give-up time"
+    END_BY_TIME = "end-by time"
+    HOLD = "hold"
+    RELEASE = "release"
+    SKIP = "skip"
+    ABORT = "abort"
+
+
+class Timer(Enum):
+    """A register that raises an event when its time has come."""
+
+    ACTION = "action"
+    REST = "rest"
+    WAIT = "wait"
+    LEG = "leg"
+    GIVE_UP = "give up"
+
+
+TIMER_EVENTS: dict[Timer, Event] = {
+    Timer.ACTION: Event.ACTION_OVERDUE,
+    Timer.REST: Event.REST_OVER,
+    Timer.WAIT: Event.WAIT_OVER,
+    Timer.LEG: Event.LEG_TIME_OVER,
+    Timer.GIVE_UP: Event.GIVE_UP_TIME,
+}
+
+GOAL_ENDS = (Event.REFUSED, Event.NO_ROUTE, Event.FAILED, Event.HALTED)
+"""The ways in which the robot itself ends a goal short of its pose."""
+
+
+class Register(Enum):
+    """Counters of the leg under way."""
+
+    TRIES = "tries"
+    RUNG = "rung"
+    """Which recovery of the rule comes next, from 0."""
+    RECOVERIES = "recoveries"
+    """Recoveries begun in this leg, whatever the rung."""
+
+
+class Exit(Enum):
+    """The ways out of a block, and of the machine's regions."""
+
+    NEXT = "next"
+    FAILED = "failed"
+    SKIPPED = "skipped"
+    BODY = "body"
+    HELD = "held"
+    RETURN = "return"
+    RETURN_SKIPPED = "return, skipped"
+    ABORTED = "aborted"
+    TIMED_OUT = "timed out"
+
+
+class Outcome(Enum):
+    """How a leg ended."""
+
+    ARRIVED = "arrived"
+    FAILED = "failed"
+    SKIPPED = "skipped"
+    ABORTED = "aborted"
+
+
+class Ending(Enum):
+    """How a mission ended."""
+
+    COMPLETED = "completed"
+    LEG_FAILED = "leg failed"
+    TIMED_OUT = "timed out"
+    ABORTED = "aborted"
+
+
+class Verb(Enum):
+    """What an action does. In the comments: what `Action.argument` and `Action.amount` mean."""
+
+    DRIVE = "drive"  # send the block's goal unless it is under way; begin to watch progress
+    HALT = "halt"
+    CLEAR = "clear"  # amount: radius, m
+    REPLAN = "replan"
+    EASE_BACK = "ease back"  # amount: distance, m
+    RELOCATE = "relocate"
+    START = (
+        "start"  # argument: Timer; amount: seconds, None for the block's own `seconds` (no timer if that is None too)
+    )
+    START_REST = "start rest"  # amounts in `rest`: first, factor, most; the exponent is the try
+    SET = "set"  # argument: Register; amount: value
+    ADD = "add"  # argument: Register; amount: increment
+    BEGIN_LEG = "begin leg"
+    END_LEG = "end leg"  # argument: Outcome; reason: a phrase
+    OPEN_INCIDENT = "open incident"  # once; trouble on trouble is the same incident
+    CLOSE_INCIDENT = "close incident"  # reason: a phrase
+    ENTER_LOOP = "enter loop"  # laps 0; deadline from the block
+    COUNT_LAP = "count lap"
+    END_MISSION = "end mission"  # argument: Ending
+
+
+class Test(Enum):
+    """What a guard asks."""
+
+    ALWAYS = "always"
+    EQUALS = "equals"  # register == amount
+    BELOW = "below"  # register < amount
+    LAPS_LEFT = "laps left"  # laps of this loop < the block's `times`
+    TIME_LEFT = "time left"  # the deadline of this loop has not come
+
+
+@dataclass(frozen=True, slots=True)
+class Guard:
+    test: Test
+    register: Register | None = None
+    amount: int = 0
+
+
+ALWAYS = Guard(Test.ALWAYS)
+
+
+@dataclass(frozen=True, slots=True)
+class Action:
+    verb: Verb
+    argument: Timer | Register | Outcome | Ending | None = None
+    amount: float | None = None
+    rest: tuple[float, float, float] | None = None
+    reason: str = ""
+
+
+@dataclass(frozen=True, slots=True)
+class Row:
+    event: Event
+    target: int | Exit | None
+    actions: tuple[Action, ...] = ()
+    guard: Guard = ALWAYS
+
+
+@dataclass(frozen=True, slots=True)
+class State:
+    """`resume` is the local state in which the machine goes on when it was interrupted in this one."""
+
+    name: str
+    rows: tuple[Row, ...] = ()
+    on_entry: tuple[Action, ...] = ()
+    resume: int = 0
+
+
+@dataclass(frozen=True, slots=True)
+class Watch:
+    """When progress is too little: under `progress` meters of remaining route in `window` seconds."""
+
+    progress: float
+    window: float
+
+
+@dataclass(frozen=True, slots=True)
+class Fragment:
+    """States written once; `watch` is set where they drive. `recoveries_at_most` bounds a whole leg."""
+
+    name: str
+    states: tuple[State, ...]
+    watch: Watch | None = None
+    recoveries_at_most: int = 0
+
+
+Address = tuple[int, int]
+"""Block number, local state."""
+
+
+@dataclass(frozen=True, slots=True)
+class Block:
+    """An instance of a fragment. `step` indexes `Machine.steps`; `place` indexes `Machine.places`.
+
+    `seconds`: a leg's time limit, a wait's length, a timed loop's length. `times`: laps. `clock`: the clock time that
+    ends a loop, seconds since midnight.
+    """
+
+    fragment: str
+    step: int
+    exits: tuple[tuple[Exit, Address], ...] = ()
+    place: int | None = None
+    seconds: float | None = None
+    times: int | None = None
+    clock: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class StepNote:
+    """A step of the mission as people see it: what it says, how deep it is nested, where it is written."""
+
+    text: str
+    depth: int
+    mark: Mark
+
+
+@dataclass(frozen=True, slots=True)
+class Target:
+    """A place a leg may drive to."""
+
+    name: str
+    pose: Pose
+
+
+@dataclass(frozen=True, slots=True)
+class Machine:
+    """A compiled mission. `exits` are those that belong to no block: held, aborted, timed out."""
+
+    name: str
+    start: Address
+    fragments: dict[str, Fragment]
+    blocks: tuple[Block, ...]
+    anywhere: tuple[Row, ...]
+    exits: tuple[tuple[Exit, Address], ...]
+    steps: tuple[StepNote, ...]
+    places: tuple[Target, ...]
+    speed: float
+    """Cap on the speed of every leg, m/s."""
+    end_by: float | None = None
+    """Clock time by which the mission ends, seconds since midnight."""
+    routes_from: tuple[tuple[int | None, int, Mark], ...] = field(default=())
+    """Each leg as (place before, place to, mark), None for the mission's start: what the checks drive through."""
