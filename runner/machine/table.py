@@ -116,7 +116,7 @@ class Ending(Enum):
 
 
 class Verb(Enum):
-    """What an action does. In the comments: what `Action.argument` and `Action.amount` mean."""
+    """What an action does. In the comments: which fields of the action it uses."""
 
     DRIVE = "drive"  # send the block's goal unless it is under way; begin to watch progress
     HALT = "halt"
@@ -124,19 +124,17 @@ class Verb(Enum):
     REPLAN = "replan"
     EASE_BACK = "ease back"  # amount: distance, m
     RELOCATE = "relocate"
-    START = (
-        "start"  # argument: Timer; amount: seconds, None for the block's own `seconds` (no timer if that is None too)
-    )
+    START = "start"  # timer; amount: seconds, None for the block's own `seconds` (no timer if that is None too)
     START_REST = "start rest"  # amounts in `rest`: first, factor, most; the exponent is the try
-    SET = "set"  # argument: Register; amount: value
-    ADD = "add"  # argument: Register; amount: increment
+    SET = "set"  # register; amount: value
+    ADD = "add"  # register; amount: increment
     BEGIN_LEG = "begin leg"
-    END_LEG = "end leg"  # argument: Outcome; reason: a phrase
+    END_LEG = "end leg"  # outcome; reason: a phrase
     OPEN_INCIDENT = "open incident"  # once; trouble on trouble is the same incident
     CLOSE_INCIDENT = "close incident"  # reason: a phrase
     ENTER_LOOP = "enter loop"  # laps 0; deadline from the block
     COUNT_LAP = "count lap"
-    END_MISSION = "end mission"  # argument: Ending
+    END_MISSION = "end mission"  # ending; reason: a phrase
 
 
 class Test(Enum):
@@ -162,8 +160,11 @@ ALWAYS = Guard(Test.ALWAYS)
 @dataclass(frozen=True, slots=True)
 class Action:
     verb: Verb
-    argument: Timer | Register | Outcome | Ending | None = None
     amount: float | None = None
+    timer: Timer | None = None
+    register: Register | None = None
+    outcome: Outcome | None = None
+    ending: Ending | None = None
     rest: tuple[float, float, float] | None = None
     reason: str = ""
 
