@@ -1,0 +1,259 @@
+"""Writes the record of a run while it happens. What `write` returned from is on the disk and stays there.
+
+Rules:
+- Exactly one connection, this one, writes and checkpoints; readers open the file for reading only. (SQLite versions up
+  to 3.51.2 can damage a write-ahead log that two connections reset at once; sqlite.org/wal.html, "The WAL-Reset Bug".)
+- Entries are committed one call a transaction, with a write-ahead log and synchronous FULL: they survive loss of power.
+  The track waits for the next entry, or for enough rows or time.
+- A failed write changes nothing here, so the same values may be written again once there is room.
+- While a writer lives it holds a lock on the run's folder, which the system drops when its process dies. That is how a
+  reader tells a run that goes on from one that was broken off.
+- A record that was closed is a single file without companions, so it can be copied as it is.
+"""
+
+from __future__ import annotations
+
+import fcntl
+import os
+import sqlite3
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
+from datetime import datetime
+from pathlib import Path
+from types import TracebackType
+from typing import Self
+
+from runner.engine.values import Seen
+from runner.journal import header as run_header
+from runner.journal import schema
+from runner.journal.codec import Value, encode, pack_points
+from runner.journal.errors import JournalError, cause
+from runner.journal.header import RunHeader
+from runner.language.mission import Source
+from runner.site.values import Point
+
+TRACK_ROWS_AT_MOST = 64
+TRACK_SECONDS_AT_MOST = 10.0
+"""Telemetry waits for the next entry no longer than this, in rows and in seconds of the run."""
+
+CHECKPOINT_PAGES = 1000
+"""Pages of 4 KiB in the write-ahead log before they are moved into the file: a pause of some 20 ms every 4 MB."""
+
+BUSY_S = 5.0
+
+Row = tuple[object, ...]
+
+_INSERT_ENTRY = "INSERT INTO entry (seq, stamp, kind, name, body, digest) VALUES (?, ?, ?, ?, ?, ?)"
+_INSERT_TRACK = (
+    "INSERT INTO track (after_entry, stamp, x, y, heading, spread, speed, battery, driven, remaining,"
+    " route_number, obstacles, route, route_kept) VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)"
+)
+
+
+class JournalWriter:
+    """The one that writes the record of a run. Made by `create`; used from the thread that made it."""
+
+    def __init__(self, path: Path, connection: sqlite3.Connection, lock: int, digest: str) -> None:
+        self.path = path
+        self._connection = connection
+        self._lock = lock
+        self._digest = digest
+        self._seq = 0
+        self._waiting: list[Row] = []
+        self._waiting_since = 0.0
+        self._route: tuple[Point, ...] = ()
+        self._closed = False
+
+    @classmethod
+    def create(cls, folder: Path, header: RunHeader, sources: Sequence[Source], machine_json: str) -> Self:
+        """Begin the record of a run in its folder, which is made (mode 0700) if it is not there.
+
+        JournalError where the folder holds a record already, is being written by another, or cannot be written.
+        """
+        path = folder / schema.FILE_NAME
+        lock = _lock_folder(folder)
+        try:
+            if path.exists():
+                raise JournalError(f"{folder} holds the record of a run already. Start the run in a folder of its own.")
+            with _in_words(path):
+                connection = _new_file(path, header, sources, machine_json)
+        except BaseException:
+            os.close(lock)
+            raise
+        return cls(path, connection, lock, schema.first_digest(machine_json, sources))
+
+    @property
+    def last_entry(self) -> int:
+        """The number of the last entry written; 0 before the first."""
+        return self._seq
+
+    def write(self, stamp: float, values: Sequence[Value]) -> None:
+        """Commit entries, all of the same stamp, and the track that waits. Durable on return.
+
+        JournalError where it cannot be done; then nothing has changed, and nothing recorded before is lost.
+        """
+        rows, digest = self._entry_rows(float(stamp), values)
+        self._commit(rows)
+        self._seq += len(rows)
+        self._digest = digest
+
+    def track(self, seen: Seen) -> None:
+        """Keep telemetry: with the next entries, or on its own once enough of it waits."""
+        if not self._waiting:
+            self._waiting_since = seen.stamp
+        self._waiting.append(self._track_row(seen))
+        self._route = seen.route
+        if len(self._waiting) >= TRACK_ROWS_AT_MOST or seen.stamp - self._waiting_since >= TRACK_SECONDS_AT_MOST:
+            self._commit([])
+
+    def close(self, trouble: str = "") -> None:
+        """End the record. `trouble` says in a sentence what ended it, where it was not the mission.
+
+        Closing twice is closing once.
+        """
+        if self._closed:
+            return
+        try:
+            self._commit([])
+            with _in_words(self.path):
+                closing = [("closed", datetime.now().astimezone().isoformat()), ("trouble", trouble)]
+                self._connection.executemany("INSERT OR REPLACE INTO run VALUES (?, ?)", closing)
+                _into_one_file(self._connection)
+        finally:
+            self._closed = True
+            self._connection.close()
+            os.close(self._lock)
+
+    def __enter__(self) -> Self:
+        return self
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        if kind is None:
+            self.close()
+            return
+        try:
+            self.close(f"{kind.__name__}: {error}")
+        except JournalError:
+            return  # the error that ended the run is the one to tell
+
+    def _entry_rows(self, stamp: float, values: Sequence[Value]) -> tuple[list[Row], str]:
+        rows: list[Row] = []
+        digest = self._digest
+        for seq, value in enumerate(values, self._seq + 1):
+            kind, name, body = encode(value)
+            digest = schema.next_digest(digest, seq, stamp, kind, name, body)
+            rows.append((seq, stamp, kind, name, body, digest))
+        return rows, digest
+
+    def _track_row(self, seen: Seen) -> Row:
+        route, kept = _route_change(self._route, seen.route)
+        return (
+            self._seq,
+            seen.stamp,
+            seen.pose.x,
+            seen.pose.y,
+            seen.pose.heading,
+            seen.spread,
+            seen.speed,
+            seen.battery,
+            seen.driven,
+            seen.remaining,
+            seen.route_number,
+            pack_points(seen.obstacles),
+            route,
+            kept,
+        )
+
+    def _commit(self, entries: Sequence[Row]) -> None:
+        if not entries and not self._waiting:
+            return
+        with _in_words(self.path), _transaction(self._connection):
+            self._connection.executemany(_INSERT_TRACK, self._waiting)
+            self._connection.executemany(_INSERT_ENTRY, entries)
+        self._waiting.clear()
+
+
+def _route_change(before: tuple[Point, ...], route: tuple[Point, ...]) -> tuple[bytes | None, int | None]:
+    """The new head of a route and how many points of the end of the route before it still follow.
+
+    (None, None) where nothing changed. A robot that drives along its route cuts points off the head, or moves the
+    head with it; any other change is kept whole.
+    """
+    if route == before:
+        return None, None
+    for new in (0, 1):
+        kept = len(route) - new
+        if 0 < kept <= len(before) and route[new:] == before[len(before) - kept :]:
+            return pack_points(route[:new]), kept
+    return pack_points(route), 0
+
+
+def _lock_folder(folder: Path) -> int:
+    """Make the folder and hold its lock; the lock goes with the returned file descriptor."""
+    try:
+        folder.mkdir(mode=0o700, parents=True, exist_ok=True)
+        lock = os.open(folder, os.O_RDONLY | os.O_DIRECTORY)
+    except OSError as error:
+        raise JournalError(f"The folder {folder} cannot be made or opened: {error.strerror}.") from error
+    try:
+        fcntl.flock(lock, fcntl.LOCK_EX | fcntl.LOCK_NB)
+    except OSError as error:
+        os.close(lock)
+        raise JournalError(f"Another process is writing the run in {folder}.") from error
+    return lock
+
+
+def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_json: str) -> sqlite3.Connection:
+    connection = sqlite3.connect(path, timeout=BUSY_S, isolation_level=None)
+    try:
+        # The marks go into the file itself before the write-ahead log exists, so that any tool finds them there.
+        connection.execute(f"PRAGMA application_id = {schema.APPLICATION_ID}")
+        connection.execute(f"PRAGMA user_version = {schema.FORMAT}")
+        with _transaction(connection):
+            for table in schema.TABLES:
+                connection.execute(table)
+            connection.executemany("INSERT INTO run VALUES (?, ?)", run_header.to_rows(header))
+            digests = [(source.path, source.text, schema.text_digest(source.text)) for source in sources]
+            connection.executemany("INSERT INTO source VALUES (?, ?, ?)", digests)
+            connection.execute("INSERT INTO machine VALUES (?)", (machine_json,))
+        connection.execute("PRAGMA journal_mode = WAL")
+        connection.execute("PRAGMA synchronous = FULL")
+        connection.execute(f"PRAGMA wal_autocheckpoint = {CHECKPOINT_PAGES}")
+        connection.execute(f"PRAGMA journal_size_limit = {CHECKPOINT_PAGES * 4096}")
+    except BaseException:
+        connection.close()
+        raise
+    return connection
+
+
+def _into_one_file(connection: sqlite3.Connection) -> None:
+    """Move the write-ahead log into the file. A reader may be in the way; then the log stays beside it, whole."""
+    connection.execute("PRAGMA busy_timeout = 500")
+    try:
+        connection.execute("PRAGMA journal_mode = DELETE")
+    except sqlite3.OperationalError:
+        connection.execute("PRAGMA wal_checkpoint(PASSIVE)")
+
+
+@contextmanager
+def _transaction(connection: sqlite3.Connection) -> Iterator[None]:
+    connection.execute("BEGIN IMMEDIATE")
+    try:
+        yield
+        connection.execute("COMMIT")
+    except BaseException:
+        if connection.in_transaction:
+            connection.execute("ROLLBACK")
+        raise
+
+
+@contextmanager
+def _in_words(path: Path) -> Iterator[None]:
+    """SQLite's errors as a JournalError."""
+    try:
+        yield
+    except sqlite3.Error as error:
+        message = f"The record {path} cannot be written: {cause(error)}. What was recorded before is safe."
+        raise JournalError(message) from error
