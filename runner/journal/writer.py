@@ -71,6 +71,7 @@ class JournalWriter:
         JournalError where the folder holds a record already, is being written by another, or cannot be written.
         """
         path = folder / schema.FILE_NAME
+        sources = tuple(dict.fromkeys(sources))
         lock = _lock_folder(folder)
         try:
             if path.exists():
