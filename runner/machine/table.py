@@ -18,7 +18,7 @@ How a table is read:
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from enum import Enum
 
 from runner.language.mission import Mark
@@ -125,11 +125,13 @@ class Verb(Enum):
     EASE_BACK = "ease back"  # amount: distance, m
     RELOCATE = "relocate"
     START = "start"  # timer; amount: seconds, None for the block's own `seconds` (no timer if that is None too)
+    STOP = "stop"  # timer
     START_REST = "start rest"  # amounts in `rest`: first, factor, most; the exponent is the try
     SET = "set"  # register; amount: value
     ADD = "add"  # register; amount: increment
     BEGIN_LEG = "begin leg"
     END_LEG = "end leg"  # outcome; reason: a phrase
+    SKIP_LEG = "skip leg"  # ends the leg under way as skipped, if there is one
     OPEN_INCIDENT = "open incident"  # once; trouble on trouble is the same incident
     CLOSE_INCIDENT = "close incident"  # reason: a phrase
     ENTER_LOOP = "enter loop"  # laps 0; deadline from the block
@@ -179,12 +181,16 @@ class Row:
 
 @dataclass(frozen=True, slots=True)
 class State:
-    """`resume` is the local state in which the machine goes on when it was interrupted in this one."""
+    """`resume` is the local state in which the machine goes on when it was interrupted in this one.
+
+    `recovery` numbers the recoveries of a leg from 1, in the order of the rule; 0 for every other state.
+    """
 
     name: str
     rows: tuple[Row, ...] = ()
     on_entry: tuple[Action, ...] = ()
     resume: int = 0
+    recovery: int = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -197,11 +203,12 @@ class Watch:
 
 @dataclass(frozen=True, slots=True)
 class Fragment:
-    """States written once; `watch` is set where they drive. `recoveries_at_most` bounds a whole leg."""
+    """States written once; `watch` is set where they drive. The two bounds are those of a whole leg."""
 
     name: str
     states: tuple[State, ...]
     watch: Watch | None = None
+    tries_at_most: int = 0
     recoveries_at_most: int = 0
 
 
@@ -211,14 +218,15 @@ Address = tuple[int, int]
 
 @dataclass(frozen=True, slots=True)
 class Block:
-    """An instance of a fragment. `step` indexes `Machine.steps`; `place` indexes `Machine.places`.
+    """An instance of a fragment. `step` indexes `Machine.steps`, None for the held block and the ends; `place`
+    indexes `Machine.places`.
 
     `seconds`: a leg's time limit, a wait's length, a timed loop's length. `times`: laps. `clock`: the clock time that
     ends a loop, seconds since midnight.
     """
 
     fragment: str
-    step: int
+    step: int | None
     exits: tuple[tuple[Exit, Address], ...] = ()
     place: int | None = None
     seconds: float | None = None
@@ -228,11 +236,15 @@ class Block:
 
 @dataclass(frozen=True, slots=True)
 class StepNote:
-    """A step of the mission as people see it: what it says, how deep it is nested, where it is written."""
+    """A step of the mission as people see it: what it says, how deep it is nested, where it is written.
+
+    `loops` are the blocks of the loops around it, outermost first.
+    """
 
     text: str
     depth: int
     mark: Mark
+    loops: tuple[int, ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -258,6 +270,4 @@ class Machine:
     speed: float
     """Cap on the speed of every leg, m/s."""
     end_by: float | None = None
-    """Clock time by which the mission ends, seconds since midnight."""
-    routes_from: tuple[tuple[int | None, int, Mark], ...] = field(default=())
-    """Each leg as (place before, place to, mark), None for the mission's start: what the checks drive through."""
+    """Clock time by which the mission ends, seconds since midnight; the first such time after it began."""
