@@ -147,6 +147,7 @@ class Mission:
     site: Site
     robot: RobotDescription
     start: Place
+    start_mark: Mark
     limits: Limits
     rules: tuple[RetryRule, ...]
     steps: tuple[Step, ...]
