@@ -1,0 +1,152 @@
+"""What the screen's text is made of: spans of text, each with an ink that says what it means; and the marks used.
+
+An ink is a meaning, not a color; `runner.screen.painted` gives it a look. Every meaning also has its own mark or word,
+so that a screen without color says the same.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from enum import Enum
+
+from rich.cells import cell_len, chop_cells, set_cell_size
+
+from runner.host.view import Health
+
+
+class Ink(Enum):
+    """What a piece of text means."""
+
+    TEXT = "text"
+    FAINT = "faint"
+    STRONG = "strong"
+    CURRENT = "current step"
+    NOTICE = "notice"
+    TROUBLE = "trouble"
+    KEY = "key"
+    QUESTION = "question"
+    WALL = "wall"
+    DOOR = "door"
+    PLACE = "place"
+    GOAL = "goal"
+    ROUTE = "route"
+    SENSED = "sensed"
+    ROBOT = "robot"
+    STARTING = "starting"
+    MOVING = "moving"
+    WAITING = "waiting"
+    RECOVERING = "recovering"
+    HELD = "held"
+    ENDED = "ended"
+
+
+HEALTH_INK: dict[Health, Ink] = {health: Ink(health.value) for health in Health}
+
+Span = tuple[str, Ink]
+Row = tuple[Span, ...]
+
+
+@dataclass(frozen=True, slots=True)
+class Glyphs:
+    """The marks of one alphabet, each one cell wide. `heading` runs counterclockwise from +x in equal sectors."""
+
+    dots: bool
+    heading: str
+    place: str
+    goal: str
+    sensed: str
+    door_across: str
+    door_upright: str
+    route: str
+    current: str
+    more: str
+    done: str
+    ahead: str
+    rule: str
+    upright: str
+    trouble: str
+    notice: str
+
+
+DOTTED = Glyphs(
+    dots=True,
+    heading="→↗↑↖←↙↓↘",
+    place="◦",
+    goal="●",
+    sensed="\u00d7",  # a multiplication sign
+    door_across="╌",
+    door_upright="┆",
+    route="⠒",
+    current="▶",
+    more="…",
+    done="━",
+    ahead="╌",
+    rule="─",
+    upright="│",
+    trouble="!",
+    notice="•",
+)
+ASCII = Glyphs(
+    dots=False,
+    heading=">^<v",
+    place="o",
+    goal="@",
+    sensed="x",
+    door_across="~",
+    door_upright=":",
+    route=".",
+    current=">",
+    more="~",
+    done="=",
+    ahead=".",
+    rule="-",
+    upright="|",
+    trouble="!",
+    notice="*",
+)
+
+
+def cut(text: str, width: int, more: str) -> str:
+    """The text if it fits into that many cells, else its beginning and the mark for more."""
+    if cell_len(text) <= width:
+        return text
+    return "" if width <= 0 else set_cell_size(text, width - 1).rstrip() + more
+
+
+def wrap(text: str, width: int, lines: int, more: str) -> list[str]:
+    """The text in at most that many lines, broken between words where possible; the last one cut if need be."""
+    wrapped: list[str] = []
+    rest = text
+    while rest and len(wrapped) < lines - 1 and cell_len(rest) > width > 0:
+        head = chop_cells(rest, width)[0]
+        space = head.rfind(" ") if not rest[len(head) :].startswith(" ") else len(head)
+        end = space if space > width // 3 else len(head)
+        wrapped.append(rest[:end].rstrip())
+        rest = rest[end:].lstrip()
+    return [*wrapped, cut(rest, width, more)] if rest or not wrapped else wrapped
+
+
+def row_width(row: Row) -> int:
+    """Cells a row takes."""
+    return sum(cell_len(text) for text, _ in row)
+
+
+def both_ends(left: Row, right: Row, width: int, ink: Ink, more: str) -> Row:
+    """A row with one part at each end, exactly `width` cells. The left is cut first; a right that leaves less than
+    half of the width is dropped."""
+    if right and row_width(right) + 1 > width // 2:
+        right = ()
+    room = width - row_width(right) - (1 if right else 0)
+    kept = crop(left, room, more)
+    return (*kept, (" " * (width - row_width(kept) - row_width(right)), ink), *right)
+
+
+def crop(row: Row, width: int, more: str) -> Row:
+    """The row cut to at most that many cells."""
+    kept: list[Span] = []
+    for text, ink in row:
+        room = width - row_width(tuple(kept))
+        kept.append((cut(text, room, more), ink))
+        if cell_len(text) > room:
+            break
+    return tuple(span for span in kept if span[0])

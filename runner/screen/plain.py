@@ -1,0 +1,73 @@
+"""The run as plain lines, for pipes, logs, screen readers and terminals that cannot hold a screen.
+
+Says the same as the screen does: each line of the feed as it comes, and where the run stands now and then. ASCII,
+one thing a line, flushed at once. The same run gives the same lines: only the run's own time is looked at. A reader
+that goes away (`| head`) is no reason to stop the robot: the printer falls silent and the run goes on.
+"""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterable
+from typing import TextIO
+
+from runner.host.view import FeedLine, Health, View
+from runner.screen.terminal import clean, to_ascii
+from runner.screen.words import amount, legs_so_far, spell_seconds
+
+
+class PlainPrinter:
+    """Prints feed lines as `HH:MM:SS  text`, and a line of progress where the feed was silent for `every` seconds of
+    the run."""
+
+    def __init__(self, stream: TextIO, every: float = 60.0) -> None:
+        self._stream = stream
+        self._every = every
+        self._last = 0.0
+        self._gone = False
+
+    @property
+    def gone(self) -> bool:
+        """Whether the reader went away."""
+        return self._gone
+
+    def show(self, lines: Iterable[FeedLine], view: View | None) -> None:
+        """Print what is new. To be called whenever there may be news; it never raises for a closed stream."""
+        for line in lines:
+            self._print(line.clock, line.text)
+            self._last = max(self._last, line.stamp)
+        if view is not None and view.health is not Health.ENDED and view.stamp >= self._last + self._every:
+            self._print(view.clock, progress(view))
+            self._last = view.stamp
+
+    def _print(self, clock: str, text: str) -> None:
+        if self._gone:
+            return
+        try:
+            self._stream.write(to_ascii(clean(f"{clock}  {text}")) + "\n")
+            self._stream.flush()
+        except (BrokenPipeError, ValueError):
+            self._fall_silent()
+
+    def _fall_silent(self) -> None:
+        """Let the interpreter's own flush at exit go nowhere, or it would print an error about the closed pipe."""
+        self._gone = True
+        try:
+            nowhere = os.open(os.devnull, os.O_WRONLY)
+            os.dup2(nowhere, self._stream.fileno())
+            os.close(nowhere)
+        except (OSError, ValueError):
+            return
+
+
+def progress(view: View) -> str:
+    """Where the run stands, in one line."""
+    parts = [f"{view.health.value}: {view.reason}" if view.reason else view.health.value]
+    if view.place is not None and view.remaining is not None:
+        parts.append(f"{amount(view.remaining, 'm')} to {view.place}")
+    if view.leg_seconds is not None:
+        limit = f" of {spell_seconds(view.leg_limit)}" if view.leg_limit is not None else ""
+        parts.append(f"leg {spell_seconds(view.leg_seconds)}{limit}")
+    if view.battery is not None:
+        parts.append(f"battery {view.battery * 100:.0f} %")
+    return "; ".join([*parts, legs_so_far(view)])
