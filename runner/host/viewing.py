@@ -1,0 +1,86 @@
+"""From the engine's state to the view a screen shows. Looks, and changes nothing."""
+
+from __future__ import annotations
+
+from runner.engine.state import EngineState
+from runner.host.view import Health, View
+from runner.host.wording import SIGNS
+from runner.machine.table import Machine, Register, Timer
+from runner.machine.wording import say_seconds
+
+
+def clock_text(seconds: float) -> str:
+    """Seconds since some midnight as HH:MM:SS."""
+    whole = int(seconds) % 86_400
+    return f"{whole // 3600:02d}:{whole // 60 % 60:02d}:{whole % 60:02d}"
+
+
+def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
+    """Everything about a run at this stamp."""
+    health, reason = _health(machine, state, stamp)
+    seen, leg = state.seen, state.leg
+    fragment = machine.fragments[machine.blocks[_place_in_machine(state)[0]].fragment]
+    limit = state.timers.get(Timer.LEG)
+    return View(
+        stamp=stamp,
+        clock=clock_text(state.clock + stamp),
+        health=health,
+        reason=reason,
+        step=None if state.ended else state.step,
+        laps=_laps(machine, state),
+        place=leg.place if leg else None,
+        leg_seconds=stamp - leg.began if leg else None,
+        leg_limit=limit - leg.began if leg and limit is not None else None,
+        tries=state.registers.get(Register.TRIES, 0) if leg else 0,
+        tries_at_most=fragment.tries_at_most if leg else 0,
+        recoveries=state.registers.get(Register.RECOVERIES, 0) if leg else 0,
+        recoveries_at_most=fragment.recoveries_at_most if leg else 0,
+        pose=seen.pose if seen else None,
+        spread=seen.spread if seen else None,
+        speed=seen.speed if seen else 0.0,
+        battery=seen.battery if seen else None,
+        remaining=seen.remaining if seen else None,
+        route=seen.route if seen else (),
+        obstacles=seen.obstacles if seen else (),
+        legs_arrived=state.legs_arrived,
+        legs_failed=state.legs_failed,
+        incidents=state.incidents,
+        outcome=state.ended.value if state.ended else None,
+    )
+
+
+def _place_in_machine(state: EngineState) -> tuple[int, int]:
+    """Where the mission is; while held, where it was left."""
+    return state.held.address if state.held else state.address
+
+
+def _laps(machine: Machine, state: EngineState) -> tuple[int, ...]:
+    if state.step is None:
+        return ()
+    return tuple(state.loops[loop].laps for loop in machine.steps[state.step].loops if loop in state.loops)
+
+
+def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health, str]:
+    if state.ended is not None:
+        return Health.ENDED, state.ended.value
+    if state.held is not None:
+        return Health.HELD, "a person holds the robot"
+    block, local = state.address
+    name = machine.fragments[machine.blocks[block].fragment].states[local].name
+    rest = _rest(state, stamp)
+    if state.incident is not None:
+        doing = f", {name}{rest}" if name != "drive" else ", driving on"
+        return Health.RECOVERING, SIGNS[state.incident.sign] + doing
+    if state.leg is not None:
+        return (Health.WAITING, name + rest) if rest else (Health.MOVING, f"on the way to {state.leg.place}")
+    if rest:
+        return Health.WAITING, f"waiting{rest}"
+    return Health.STARTING, "starting"
+
+
+def _rest(state: EngineState, stamp: float) -> str:
+    """How long a rest or wait still takes, where there is one."""
+    deadline = min((state.timers[timer] for timer in (Timer.REST, Timer.WAIT) if timer in state.timers), default=None)
+    if deadline is None:
+        return ""
+    return f", {say_seconds(float(round(max(0.0, deadline - stamp))))} left"

@@ -1,0 +1,103 @@
+"""What happened, in words a person reads in the feed: one line a note, or none where it would only be noise."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+from runner.engine.values import (
+    Effect,
+    Ended,
+    IncidentBegan,
+    IncidentEnded,
+    LegBegan,
+    LegEnded,
+    OperatorActed,
+    RecoveryBegan,
+    StepBegan,
+    TryFailed,
+)
+from runner.host.view import FeedLine, Weight
+from runner.machine.table import Ending, Event, Outcome
+from runner.machine.wording import say_seconds
+
+SIGNS: dict[Event, str] = {
+    Event.STALLED: "no progress",
+    Event.SWAYING: "much driving, nothing gained",
+    Event.REFUSED: "the robot refused the goal",
+    Event.NO_ROUTE: "the robot finds no route",
+    Event.FAILED: "the robot gave the goal up",
+    Event.HALTED: "the robot halted by itself",
+}
+
+_ACTED: dict[str, str] = {"hold": "held", "release": "released", "skip": "skipped", "abort": "aborted"}
+
+
+def feed_line(effect: Effect, stamp: float, clock: str) -> FeedLine | None:
+    """The line for a note; None for commands and for notes that another line already tells."""
+    words = _WORDS.get(type(effect))
+    if words is None:
+        return None
+    told = words(effect)
+    return None if told is None else FeedLine(stamp, clock, *told)
+
+
+Told = tuple[Weight, str] | None
+
+
+def _step(note: StepBegan) -> Told:
+    lap = f" (lap {', '.join(str(lap) for lap in note.laps)})" if note.laps else ""
+    return Weight.PLAIN, f"step: {note.text}{lap}"
+
+
+def _leg_ended(note: LegEnded) -> Told:
+    took = f"{note.meters:.1f} m in {note.seconds:.0f} s"
+    if note.outcome is Outcome.ARRIVED:
+        return Weight.PLAIN, f"arrived at {note.place}: {took}"
+    weight = Weight.TROUBLE if note.outcome is Outcome.FAILED else Weight.NOTICE
+    return weight, f"leg to {note.place} {note.outcome.value}: {note.reason} ({took})"
+
+
+def _incident_began(note: IncidentBegan) -> Told:
+    where = f" at {note.pose.x:.1f}, {note.pose.y:.1f}" if note.pose else ""
+    detail = f": {note.detail}" if note.detail else ""
+    return Weight.TROUBLE, f"incident {note.incident}{where}: {SIGNS[note.sign]}{detail}"
+
+
+def _recovery(note: RecoveryBegan) -> Told:
+    return Weight.NOTICE, f"recovery {note.attempt}, try {note.tries}: {note.recovery}"
+
+
+def _incident_ended(note: IncidentEnded) -> Told:
+    took = f"after {note.seconds:.0f} s; {note.diagnosis}"
+    if note.recovered:
+        return Weight.NOTICE, f"incident {note.incident} over, ended by {note.ended_by}, {took}"
+    return Weight.TROUBLE, f"incident {note.incident} not resolved, {took}"
+
+
+def _try_failed(note: TryFailed) -> Told:
+    return Weight.NOTICE, f"try {note.tries} failed; next try in {say_seconds(note.rest)}"
+
+
+def _acted(note: OperatorActed) -> Told:
+    if note.accepted:
+        return Weight.NOTICE, f"{_ACTED.get(note.action, note.action)} by {note.who}"
+    return Weight.NOTICE, f"{note.action} by {note.who}: no effect now"
+
+
+def _ended(note: Ended) -> Told:
+    weight = Weight.PLAIN if note.ending is Ending.COMPLETED else Weight.TROUBLE
+    return weight, f"mission ended: {note.reason}"
+
+
+_WORDS: dict[type[Any], Callable[[Any], Told]] = {
+    StepBegan: _step,
+    LegBegan: lambda _: None,
+    LegEnded: _leg_ended,
+    IncidentBegan: _incident_began,
+    RecoveryBegan: _recovery,
+    IncidentEnded: _incident_ended,
+    TryFailed: _try_failed,
+    OperatorActed: _acted,
+    Ended: _ended,
+}
