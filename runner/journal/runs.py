@@ -19,7 +19,8 @@ from runner.journal.reader import open_record
 from runner.journal.schema import FILE_NAME
 
 LATEST = "latest"
-NAME_LENGTH_MOST = 40
+NAME_LENGTH_MOST = 20
+"""Of the mission in an id: with date and time it leaves room for more on a line of 80 columns."""
 
 
 def runs_folder(environment: Mapping[str, str] = os.environ) -> Path:
@@ -54,7 +55,7 @@ def new_run(runs: Path, mission: str, created: datetime) -> Path:
 
 def list_runs(runs: Path) -> list[Path]:
     """The folders of all runs, newest first."""
-    return sorted(_folders(runs), key=_created, reverse=True)
+    return sorted(_folders(runs), key=lambda folder: (_created(folder), len(folder.name), folder.name), reverse=True)
 
 
 def find_run(runs: Path, text: str = LATEST) -> Path:
@@ -114,6 +115,9 @@ def _created(folder: Path) -> float:
 
 
 def _plain(name: str) -> str:
-    """A name in lower-case ASCII letters, digits and hyphens."""
+    """A name in lower-case ASCII letters, digits and hyphens, of whole words as far as they fit."""
     letters = unicodedata.normalize("NFKD", name).encode("ascii", "ignore").decode().lower()
-    return re.sub(r"[^a-z0-9]+", "-", letters).strip("-")[:NAME_LENGTH_MOST].strip("-") or "run"
+    words = re.sub(r"[^a-z0-9]+", "-", letters).strip("-")
+    if len(words) > NAME_LENGTH_MOST:
+        words = words[: NAME_LENGTH_MOST + 1].rpartition("-")[0] or words[:NAME_LENGTH_MOST]
+    return words or "run"

@@ -252,9 +252,11 @@ def _transaction(connection: sqlite3.Connection) -> Iterator[None]:
 
 @contextmanager
 def _in_words(path: Path) -> Iterator[None]:
-    """SQLite's errors as a JournalError."""
+    """SQLite's errors as a JournalError; wrong use of it is a fault of ours and stays what it is."""
     try:
         yield
+    except sqlite3.ProgrammingError:
+        raise
     except sqlite3.Error as error:
         message = f"The record {path} cannot be written: {cause(error)}. What was recorded before is safe."
         raise JournalError(message) from error
