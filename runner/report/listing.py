@@ -12,7 +12,7 @@ from runner.journal.errors import JournalError
 from runner.journal.outcome import RunOutcome, outcome_of
 from runner.journal.reader import open_record
 from runner.machine.table import Outcome
-from runner.report.text import cut, plain
+from runner.report.text import cut
 
 SHORT = {
     RunOutcome.ALL_ARRIVED: "completed",
@@ -58,5 +58,5 @@ def listing_text(runs: Sequence[Listed]) -> str:
     for run in runs:
         outcome = SHORT[run.outcome] if run.outcome else "not readable"
         legs = f"{run.legs_arrived}/{run.legs_ended}" if run.outcome else "-"
-        rows.append(ROW.format(run.run_id, cut(plain(run.mission), 16), outcome, legs).rstrip())
+        rows.append(ROW.format(run.run_id, cut(run.mission, 16), outcome, legs).rstrip())
     return "\n".join(rows) + "\n"

@@ -14,13 +14,13 @@ WIDTH = 80
 LABEL = 16
 """Columns of the labels at the left."""
 
-LEG_ROW = "{:>4}  {:<20} {:<17} {:<8} {:>7} {:>8} {:>5} {:>4}"
+LEG_ROW = "{:>4}  {:<20} {:<16} {:<8} {:>7} {:>8} {:>5} {:>4}"
 
 
 def report_text(summary: Summary) -> str:
     """The whole report, ending in a line break."""
     parts = [_head(summary), _legs(summary), _incidents(summary), _interventions(summary), _totals(summary.totals)]
-    return plain("\n\n".join("\n".join(part) for part in parts)) + "\n"
+    return "\n\n".join("\n".join(part) for part in parts) + "\n"
 
 
 def plain(text: str) -> str:
@@ -30,7 +30,8 @@ def plain(text: str) -> str:
 
 
 def cut(text: str, width: int) -> str:
-    """Text of at most `width` characters, with two dots where something was cut off."""
+    """Plain text of at most `width` characters, with two dots where something was cut off."""
+    text = plain(text)
     return text if len(text) <= width else text[: width - 2] + ".."
 
 
@@ -40,6 +41,13 @@ def span(seconds: float | None) -> str:
         return "-"
     hours, rest = divmod(round(seconds), 3600)
     return f"{hours}:{rest // 60:02}:{rest % 60:02}" if hours else f"{rest // 60}:{rest % 60:02}"
+
+
+def way(meters: float | None) -> str:
+    """A length in meters, from ten kilometers on in kilometers; a dash where there is none."""
+    if meters is None:
+        return "-"
+    return f"{meters:.1f} m" if meters < 9999.95 else f"{meters / 1000.0:.1f} km"
 
 
 def _head(summary: Summary) -> list[str]:
@@ -77,15 +85,14 @@ def _legs(summary: Summary) -> list[str]:
 
 def _leg(leg: Leg) -> list[str]:
     outcome = leg.outcome.value if leg.outcome else "open"
-    meters = "-" if leg.meters is None else f"{leg.meters:.1f} m"
     done = leg.outcome is not None
     row = LEG_ROW.format(
         leg.number,
         cut(leg.step, 20),
-        cut(leg.place, 17),
+        cut(leg.place, 16),
         outcome,
         span(leg.seconds),
-        meters,
+        way(leg.meters),
         leg.tries if done else "-",
         leg.recoveries if done else "-",
     )
@@ -166,7 +173,7 @@ def _totals(totals: Totals) -> list[str]:
         ("  Legs", ", ".join(f"{count} {word}" for word, count in legs)),
         ("  Incidents", f"{totals.incidents}, of which {totals.recovered} ended by a recovery"),
         ("  Interventions", str(totals.interventions)),
-        ("  Distance", f"{totals.meters:.1f} m"),
+        ("  Distance", way(totals.meters)),
         ("  Time", f"{span(totals.seconds)}: " + ", ".join(f"{word} {span(time)}" for word, time in times)),
         ("  Battery", _battery(totals)),
     ]
@@ -187,9 +194,9 @@ def _clock(summary: Summary, stamp: float) -> str:
 
 def _labeled(label: str, text: str, hanging: int = 0) -> list[str]:
     """A label and its text, wrapped so that the text stays in its column, all but its first line `hanging` deeper."""
-    lines = textwrap.wrap(text, WIDTH - LABEL, subsequent_indent=" " * hanging) or [""]
+    lines = textwrap.wrap(plain(text), WIDTH - LABEL, subsequent_indent=" " * hanging) or [""]
     return [f"{name:<{LABEL}}{line}".rstrip() for name, line in zip([label, *[""] * len(lines)], lines, strict=False)]
 
 
 def _wrapped(text: str, indent: int) -> list[str]:
-    return textwrap.wrap(text, WIDTH, initial_indent=" " * indent, subsequent_indent=" " * (indent + 8))
+    return textwrap.wrap(plain(text), WIDTH, initial_indent=" " * indent, subsequent_indent=" " * (indent + 8))
