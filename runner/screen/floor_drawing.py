@@ -18,8 +18,7 @@ from numpy.typing import NDArray
 
 from runner.host.view import View
 from runner.screen.ink import Glyphs, Ink
-from runner.screen.labels import Label, place_labels
-from runner.screen.terminal import clean
+from runner.screen.labels import place_labels
 from runner.site.floor import Floor, footprint_at, rasterize
 from runner.site.values import CELL_M, Point, Pose, RobotDescription, Site
 
@@ -64,8 +63,8 @@ class Scale:
 
 
 def fit(site: Site, columns: int, rows: int) -> Scale:
-    """The scale at which the whole floor just fits, centered."""
-    dots = min(columns * 2 / site.width, rows * 4 / site.height)
+    """The scale at which the whole floor just fits, centered. Both of its outer edges fall on a dot."""
+    dots = max(min((columns * 2 - 1) / site.width, (rows * 4 - 1) / site.height), 0.0)
     left = (columns * 2 - site.width * dots) / 2
     top = (rows * 4 - site.height * dots) / 2
     return Scale(columns, rows, dots, left, top, site.height)
@@ -82,27 +81,33 @@ class FloorDrawing:
         self.still: list[list[Drawn]] = []
         self._scale = fit(site, 0, 0)
         self._walls = np.zeros((0, 0), dtype=np.uint8)
-        self._labels: dict[str, Label] = {}
+        self._bare: list[list[Drawn]] = []
+        self._goal: str | None = None
 
     def resize(self, columns: int, rows: int) -> None:
         """Draw what stands still anew, for a panel of that many cells."""
         self._scale = fit(self._site, columns, rows)
         self._walls = _pack(wall_dots(self._site, self._floor, self._scale))
-        self.still = [
+        self._bare = [
             [(self._pattern(int(bits)), Ink.WALL) if bits else (" ", Ink.TEXT) for bits in row] for row in self._walls
         ]
         self._draw_doors()
         self._draw_places()
 
+    def aim(self, goal: str | None) -> None:
+        """Mark the place the robot is on its way to; it is the first to be named in full."""
+        if goal != self._goal:
+            self._goal = goal
+            self._draw_places()
+
     def moving(self, view: View | None) -> dict[Spot, Drawn]:
-        """The cells that differ from the still layer, for a view: route, sensed points, goal, robot, in this order."""
+        """The cells that differ from the still layer, for a view: route, sensed points, robot, in this order."""
         if view is None or not self.still:
             return {}
         cells: dict[Spot, Drawn] = {}
         self._dots(cells, _dashes(view.route, self._scale), Ink.ROUTE)
         for spot in filter(None, map(self._scale.spot, view.obstacles)):
             cells[spot] = (self._glyphs.sensed, Ink.SENSED)
-        self._draw_goal(cells, view.place)
         if view.pose is not None:
             self._draw_robot(cells, view.pose)
         return cells
@@ -118,7 +123,7 @@ class FloorDrawing:
             if 0 <= spot[0] < self._scale.rows and 0 <= spot[1] < self._scale.columns:
                 added[spot] = added.get(spot, 0) | int(_DOT_BITS[row % 4, column % 2])
         for spot, bits in added.items():
-            if self.still[spot[0]][spot[1]][1] is not Ink.PLACE:
+            if self.still[spot[0]][spot[1]][1] not in (Ink.PLACE, Ink.GOAL):
                 over_walls = self._pattern(bits | int(self._walls[spot]))
                 cells[spot] = (over_walls if self._glyphs.dots else self._glyphs.route, ink)
 
@@ -131,35 +136,23 @@ class FloorDrawing:
             for row, column in _stroke(((door.start), (door.end)), self._scale, inset=0.2):
                 spot = (row // 4, column // 2)
                 if 0 <= spot[0] < self._scale.rows and 0 <= spot[1] < self._scale.columns:
-                    self.still[spot[0]][spot[1]] = (mark, Ink.DOOR)
+                    self._bare[spot[0]][spot[1]] = (mark, Ink.DOOR)
 
     def _draw_places(self) -> None:
-        spots = {place.name: self._scale.spot((place.pose.x, place.pose.y)) for place in self._site.places}
-        seen = {clean(name): spot for name, spot in spots.items() if spot is not None}
-        self._labels = place_labels(seen, self._walls, self._glyphs.more)
-        for name, spot in seen.items():
-            self._write(self.still, self._labels.get(name), Ink.PLACE)
-            self.still[spot[0]][spot[1]] = (self._glyphs.place, Ink.PLACE)
-
-    @staticmethod
-    def _write(cells: list[list[Drawn]], label: Label | None, ink: Ink) -> None:
-        if label is not None:
-            for offset, char in enumerate(label.text):
-                cells[label.row][label.column + offset] = (char, ink)
-
-    def _draw_goal(self, cells: dict[Spot, Drawn], name: str | None) -> None:
-        place = self._site.place(name) if name is not None else None
-        spot = self._scale.spot((place.pose.x, place.pose.y)) if place is not None else None
-        if place is None or spot is None:
-            return
-        label = self._labels.get(clean(place.name))
-        if label is None or label.text != clean(place.name):  # the goal is named in full, whatever it covers
-            label = place_labels({clean(place.name): spot}, self._walls, self._glyphs.more).get(clean(place.name))
-        if label is not None:
-            cells.update(
-                {(label.row, label.column + offset): (char, Ink.GOAL) for offset, char in enumerate(label.text)}
-            )
-        cells[spot] = (self._glyphs.goal, Ink.GOAL)
+        """Names and marks of the places over walls and doors, those of the goal first."""
+        places = sorted(self._site.places, key=lambda place: place.name != self._goal)
+        spots = {place.name: self._scale.spot((place.pose.x, place.pose.y)) for place in places}
+        seen = {name: spot for name, spot in spots.items() if spot is not None}
+        labels = place_labels(seen, self._walls, self._glyphs)
+        self.still = [list(row) for row in self._bare]
+        for name, (row, column) in seen.items():
+            goal = name == self._goal
+            ink = Ink.GOAL if goal else Ink.PLACE
+            self.still[row][column] = (self._glyphs.goal if goal else self._glyphs.place, ink)
+            label = labels.get(name)
+            if label is not None:
+                cells = [(char, ink) for char in label.text]
+                self.still[label.row][label.column : label.column + len(cells)] = cells
 
     def _draw_robot(self, cells: dict[Spot, Drawn], pose: Pose) -> None:
         corners = footprint_at(self._robot.footprint, pose)

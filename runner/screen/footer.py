@@ -7,7 +7,6 @@ from enum import Enum
 
 from runner.host.view import FeedLine, Health, View, Weight
 from runner.screen.ink import Glyphs, Ink, Row, crop, row_width, wrap
-from runner.screen.terminal import clean
 
 _WEIGHT_INK = {Weight.PLAIN: Ink.TEXT, Weight.NOTICE: Ink.NOTICE, Weight.TROUBLE: Ink.TROUBLE}
 
@@ -47,7 +46,7 @@ def _entry(line: FeedLine, width: int, glyphs: Glyphs) -> list[Row]:
     mark = {Weight.PLAIN: " ", Weight.NOTICE: glyphs.notice, Weight.TROUBLE: glyphs.trouble}[line.weight]
     ink = _WEIGHT_INK[line.weight]
     lead = f" {line.clock} {mark} "
-    texts = wrap(clean(line.text), max(width - len(lead), 1), 3, glyphs.more)
+    texts = wrap(glyphs.say(line.text), max(width - len(lead), 1), 3, glyphs.more)
     first: Row = ((f" {line.clock} ", Ink.FAINT), (f"{mark} {texts[0]}", ink))
     return [first, *(((" " * len(lead) + text, ink),) for text in texts[1:])]
 

@@ -12,6 +12,7 @@ from enum import Enum
 from rich.cells import cell_len, chop_cells, set_cell_size
 
 from runner.host.view import Health
+from runner.screen.terminal import clean, to_ascii
 
 
 class Ink(Enum):
@@ -66,6 +67,10 @@ class Glyphs:
     upright: str
     trouble: str
     notice: str
+
+    def say(self, text: str) -> str:
+        """A text from outside, made safe and put into this alphabet."""
+        return clean(text) if self.dots else to_ascii(clean(text))
 
 
 DOTTED = Glyphs(

@@ -7,11 +7,12 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from rich.cells import cell_len
 
-from runner.screen.ink import cut
+from runner.screen.ink import Glyphs, cut
 
-_SHORTENED = (None, 9, 6, 4)
-"""Lengths at which a name is tried, None for the whole."""
+_SHORTENED = (9, 6, 4)
+"""Lengths to which a name is cut where the whole has no room."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -23,24 +24,24 @@ class Label:
     column: int
 
 
-def place_labels(spots: Mapping[str, tuple[int, int]], walls: NDArray[np.uint8], more: str) -> dict[str, Label]:
+def place_labels(spots: Mapping[str, tuple[int, int]], walls: NDArray[np.uint8], glyphs: Glyphs) -> dict[str, Label]:
     """A label for each name that finds room; the first names choose first. Names take one cell a character here."""
     taken = np.zeros(walls.shape, dtype=np.bool_)
     for row, column in spots.values():
         taken[row, column] = True
     labels: dict[str, Label] = {}
     for name, spot in spots.items():
-        label = _best(name if name.isascii() else _narrow(name), spot, walls, taken, more)
+        taken[spot] = False  # a name may touch its own mark, but no other
+        label = _best(_narrow(glyphs.say(name)), spot, walls, taken, glyphs.more)
+        taken[spot] = True
         if label is not None:
             labels[name] = label
-            taken[label.row, max(label.column - 1, 0) : label.column + len(label.text) + 1] = True
+            taken[label.row, label.column : label.column + len(label.text)] = True
     return labels
 
 
 def _narrow(name: str) -> str:
-    """Characters that take two cells would shift the drawing."""
-    from rich.cells import cell_len
-
+    """Characters that do not take one cell each would shift the drawing."""
     return "".join(char if cell_len(char) == 1 else "?" for char in name)
 
 
@@ -48,13 +49,10 @@ def _best(
     name: str, spot: tuple[int, int], walls: NDArray[np.uint8], taken: NDArray[np.bool_], more: str
 ) -> Label | None:
     """The free position over the least wall, of the longest form of the name that has one."""
-    for length in _SHORTENED:
-        if length is not None and length >= len(name):
-            continue
-        text = name if length is None else cut(name, length, more)
+    for text in dict.fromkeys([name, *(cut(name, length, more) for length in _SHORTENED)]):
         free = [label for label in _around(text, spot) if _fits(label, taken)]
         if free:
-            return min(free, key=lambda label: int(np.count_nonzero(_under(label, walls))))
+            return min(free, key=lambda label: _walls_under(label, walls))
     return None
 
 
@@ -69,9 +67,10 @@ def _around(text: str, spot: tuple[int, int]) -> Iterable[Label]:
 
 def _fits(label: Label, taken: NDArray[np.bool_]) -> bool:
     rows, columns = taken.shape
-    inside = 0 <= label.row < rows and label.column >= 0 and label.column + len(label.text) <= columns
-    return inside and not bool(np.any(_under(label, taken)))
+    first, end = label.column, label.column + len(label.text)
+    inside = 0 <= label.row < rows and first >= 0 and end <= columns
+    return inside and not bool(taken[label.row, max(first - 1, 0) : end + 1].any())
 
 
-def _under(label: Label, grid: NDArray[np.uint8] | NDArray[np.bool_]) -> NDArray[np.uint8] | NDArray[np.bool_]:
-    return grid[label.row, label.column : label.column + len(label.text)]
+def _walls_under(label: Label, walls: NDArray[np.uint8]) -> int:
+    return int(np.count_nonzero(walls[label.row, label.column : label.column + len(label.text)]))

@@ -7,8 +7,7 @@ from collections.abc import Sequence
 from runner.host.view import View
 from runner.machine.table import StepNote
 from runner.screen.ink import Glyphs, Ink, Row, cut, wrap
-from runner.screen.terminal import clean
-from runner.screen.words import counted, spell_seconds
+from runner.screen.words import spell_seconds
 
 _MARK = 2
 """Cells in front of a step, for the mark of the current one."""
@@ -45,19 +44,19 @@ def _indent(note: StepNote, width: int) -> int:
 
 
 def _step(note: StepNote, width: int, glyphs: Glyphs) -> Row:
-    text = " " * (_MARK + _indent(note, width)) + clean(note.text)
+    text = " " * (_MARK + _indent(note, width)) + glyphs.say(note.text)
     return ((cut(text, width, glyphs.more), Ink.TEXT),)
 
 
 def _current_block(note: StepNote, view: View, width: int, glyphs: Glyphs) -> list[Row]:
     indent = _indent(note, width)
-    lines = wrap(clean(note.text), width - _MARK - indent, 2, glyphs.more)
+    lines = wrap(glyphs.say(note.text), width - _MARK - indent, 2, glyphs.more)
     lead = f"{glyphs.current} " + " " * indent
     steps: list[Row] = [
         ((f"{lead if number == 0 else ' ' * len(lead)}{line}".ljust(width), Ink.CURRENT),)
         for number, line in enumerate(lines)
     ]
-    margin = " " * (_MARK + indent)
+    margin = " " * (_MARK + min(indent, 2))
     details = [((cut(margin + line, width, glyphs.more), Ink.STRONG),) for line in _details(view)]
     return [*steps, *details, *_time_bar(view, margin, width, glyphs)]
 
@@ -72,7 +71,7 @@ def _details(view: View) -> list[str]:
     lines = [", ".join(counts)] if counts else []
     if view.recoveries:
         most = f" of {view.recoveries_at_most}" if view.recoveries_at_most else ""
-        lines.append(counted(view.recoveries, "recovery", "recoveries") + most)
+        lines.append(f"recovery {view.recoveries}{most}")
     return lines
 
 
@@ -101,10 +100,10 @@ def summary(view: View, report_hint: str, width: int, glyphs: Glyphs) -> list[Ro
     ]
     if view.battery is not None:
         figures.append(("battery left", f"{view.battery * 100:.0f} %"))
-    ended = wrap(clean(view.outcome or "ended"), width, 3, glyphs.more)
-    hint = wrap(clean(report_hint), width - 2, 4, glyphs.more)
+    ended = wrap(glyphs.say(view.outcome or "ended"), width, 3, glyphs.more)
+    hint = wrap(glyphs.say(report_hint), width - 2, 4, glyphs.more)
     return [
-        (("The run has ended", Ink.STRONG),),
+        (("has ended:", Ink.FAINT),),
         *(((line, Ink.TEXT),) for line in ended),
         (),
         *(((f"{name:<14}{value:>8}", Ink.TEXT),) for name, value in figures),

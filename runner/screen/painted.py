@@ -7,7 +7,7 @@ the rows in which one of its cells changed.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 
 from rich.segment import Segment
 from rich.style import Style
@@ -35,7 +35,7 @@ LOOKS: dict[Ink, Style] = {
         Ink.KEY: "bold reverse default on default",
         Ink.QUESTION: "bold reverse default on default",
         Ink.WALL: "default on default",
-        Ink.DOOR: "cyan on default",
+        Ink.DOOR: "default on default",
         Ink.PLACE: "default on default",
         Ink.GOAL: "bold underline default on default",
         Ink.ROUTE: "bold cyan on default",
@@ -98,6 +98,16 @@ class Slice(Widget):
         """Of the floor's columns, the one at this slice's left edge."""
         return self.region.x - self._floor.region.x
 
+    def redraw(self, changed: Iterable[Spot]) -> None:
+        """Refresh, in each row that has changed cells in this slice, the stretch up to the last of them."""
+        first, width = self.first_column, self.size.width
+        ends: dict[int, int] = {}
+        for row, column in changed:
+            if first <= column < first + width:
+                ends[row] = max(ends.get(row, 0), column - first + 1)
+        if ends:
+            self.refresh(*(Region(0, row, end, 1) for row, end in ends.items()))
+
     def render_line(self, y: int) -> Strip:
         return self._floor.strip(y, self.first_column, self.size.width)
 
@@ -115,25 +125,29 @@ class FloorPanel(Horizontal):
         for _ in range(_SLICES):
             yield Slice(self)
 
-    def lay(self, still: list[list[Drawn]]) -> None:
-        """Replace the still layer: everything is drawn anew."""
-        self._still, self._moving = still, {}
-        for part in self.query(Slice):
-            part.refresh()
+    def show(self, still: list[list[Drawn]], moving: dict[Spot, Drawn]) -> None:
+        """Replace both layers: only the stretches of rows that changed are drawn anew."""
+        changed = self._changed(still, moving)
+        self._still, self._moving = still, moving
+        if changed:
+            for part in self.query(Slice):
+                part.redraw(changed)
 
-    def move(self, moving: dict[Spot, Drawn]) -> None:
-        """Replace the moving layer: only the stretches of rows that changed are drawn anew."""
-        before, self._moving = self._moving, moving
+    def _changed(self, still: list[list[Drawn]], moving: dict[Spot, Drawn]) -> list[Spot]:
+        before = self._moving
         changed = [spot for spot in before.keys() | moving.keys() if before.get(spot) != moving.get(spot)]
-        if not changed:
-            return
-        for part in self.query(Slice):
-            first, width = part.first_column, part.size.width
-            ends: dict[int, int] = {}
-            for row, column in changed:
-                if first <= column < first + width:
-                    ends[row] = max(ends.get(row, 0), column - first + 1)
-            part.refresh(*(Region(0, row, end, 1) for row, end in ends.items())) if ends else None
+        if still is not self._still:
+            changed += [
+                (row, column)
+                for row, cells in enumerate(still)
+                for column, cell in enumerate(cells)
+                if self._at_rest(row, column) != cell
+            ]
+        return changed
+
+    def _at_rest(self, row: int, column: int) -> Drawn | None:
+        cells = self._still[row] if row < len(self._still) else []
+        return cells[column] if column < len(cells) else None
 
     def strip(self, y: int, first: int, width: int) -> Strip:
         """A stretch of a row, as runs of one look each."""

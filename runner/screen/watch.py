@@ -24,7 +24,7 @@ from runner.screen.arrangement import HEADER_ROWS, Arrangement, arrange
 from runner.screen.floor_drawing import FloorDrawing
 from runner.screen.footer import Question, feed, keys, rule
 from runner.screen.header import header
-from runner.screen.ink import ASCII, DOTTED, Glyphs, Ink, Row
+from runner.screen.ink import ASCII, DOTTED, Glyphs, Ink, Row, cut
 from runner.screen.outline import outline, summary
 from runner.screen.painted import COLORLESS, LOOKS, FloorPanel, Panel
 from runner.screen.showing import Showing, Source
@@ -107,8 +107,8 @@ class WatchApp(App[None]):
         return arrange(columns, rows, self._showing.site.width / self._showing.site.height)
 
     def _redraw(self) -> None:
-        self._drawing.resize(self._arrangement.floor_columns, self._arrangement.floor_rows)
-        self._floor.lay(self._drawing.still)
+        if self._arrangement.floor_rows:
+            self._drawing.resize(self._arrangement.floor_columns, self._arrangement.floor_rows)
         self.pull()
 
     # --- what is shown --------------------------------------------------------------------------------------
@@ -131,9 +131,10 @@ class WatchApp(App[None]):
         width, arranged, glyphs = self.size.width, self._arrangement, self._glyphs
         if self._ended and self._question is not None:
             self._question = None
-        self._header.show(header(self._view, self._showing.mission, width, glyphs, self._said()))
+        self._header.show(header(self._view, self._showing, width, glyphs, self._said()))
         if arranged.floor_rows:
-            self._floor.move(self._drawing.moving(self._view))
+            self._drawing.aim(self._view.place if self._view is not None else None)
+            self._floor.show(self._drawing.still, self._drawing.moving(self._view))
         self._steps.show(self._step_rows())
         self._rule.show([rule(width, glyphs, arranged.floor_rows > 0)])
         self._lines.show(feed(self._feed, width, arranged.feed_rows, glyphs))
@@ -143,11 +144,12 @@ class WatchApp(App[None]):
         arranged, glyphs = self._arrangement, self._glyphs
         edge = " " if arranged.stacked else f"{glyphs.upright} "
         width, height = arranged.steps_columns - len(edge), arranged.steps_rows
+        title: Row = ((cut(glyphs.say(self._showing.mission), width, glyphs.more), Ink.STRONG),)
         if self._view is not None and self._ended:
             rows = summary(self._view, self._showing.report_hint, width, glyphs)
         else:
-            rows = outline(self._showing.steps, self._view, width, height, glyphs)
-        padded = [*rows, *([()] * (height - len(rows)))]
+            rows = outline(self._showing.steps, self._view, width, height - 1, glyphs)
+        padded = [title, *rows, *([()] * height)]
         return [((edge, Ink.FAINT), *row) for row in padded[:height]]
 
     def _said(self) -> str:

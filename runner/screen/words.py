@@ -9,8 +9,8 @@ NEXT_FOR_YOU: dict[Health, str] = {
     Health.MOVING: "nothing for you to do",
     Health.WAITING: "nothing for you to do",
     Health.RECOVERING: "it is helping itself",
-    Health.HELD: "it waits for you: r releases it",
-    Health.ENDED: "q leaves",
+    Health.HELD: "your turn: r releases",
+    Health.ENDED: "",
 }
 """The answer to the question whether a person has to act."""
 
