@@ -56,7 +56,9 @@ def _cache_folder(key: str) -> Path | None:
     for base in _bases():
         folder = base / key
         try:
-            folder.mkdir(mode=0o700, parents=True, exist_ok=True)
+            base.parent.mkdir(parents=True, exist_ok=True)
+            base.mkdir(mode=0o700, exist_ok=True)
+            folder.mkdir(mode=0o700, exist_ok=True)
         except OSError:
             continue
         if _is_private(base) and os.access(folder, os.W_OK | os.X_OK):

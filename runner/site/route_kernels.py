@@ -1,9 +1,11 @@
 """The search over a weighted grid, compiled.
 
-A* with a bucket queue: cells wait in stacks by their estimate (cost so far plus the least cost still to come), each
-stack a fixed width of estimates, the stacks used in a ring (Dial, 1969, for the buckets). Inside a stack the order is
-not by cost, so a cell may be expanded again when a cheaper way to it turns up; the search ends only when every
-estimate still waiting is above the goal's cost. The cost is therefore exactly the least, whatever the width.
+A* with a bucket queue (buckets after Dial, 1969): cells wait in stacks by their estimate, which is the cost so far
+plus the least cost still to come; the stacks are used in a ring. A stack holds a narrow span of estimates in no order,
+so a cell may be expanded again when a cheaper way to it turns up. The search ends only when every estimate still
+waiting is above the goal's cost: the cost is the least there is, whatever the width of a stack.
+
+Each cell waits at most once: stacks are doubly linked through two arrays, so nothing has to grow.
 """
 
 from __future__ import annotations
@@ -18,125 +20,142 @@ from runner.site.compiled import kernel_compiler
 kernel = kernel_compiler(__file__)
 
 ROOT_2 = 2.0**0.5
-RING_MOST = 1 << 16  # stacks in the ring; the width of a stack grows where weights would need more
-NOWHERE = -1
+NOBODY = -1  # end of a stack; -1 - p stands for the head of stack p
+WAITING = 8  # beside the number of the step (0 to 7) that led to a cell
+
+WIDTH = 0.003  # of a stack, in least weights: narrow enough that hardly a cell is expanded twice
+RING_MOST = 1 << 16  # stacks in the ring: the width grows where weights span more than this holds
+GAIN_LEAST = 1e-11  # of a cheaper way, in least weights: rounding alone is no reason to expand a cell again
+
+# The eight steps, straight ones first.
+ROW_STEPS = np.array([0, 0, 1, -1, 1, 1, -1, -1])
+COLUMN_STEPS = np.array([1, -1, 0, 0, 1, -1, 1, -1])
+STEP_LENGTHS = np.array([1.0, 1.0, 1.0, 1.0, ROOT_2, ROOT_2, ROOT_2, ROOT_2])
 
 
 @kernel
-def search(  # noqa: C901, PLR0912, PLR0915, PLR0917
-    weight: NDArray[Any], start_row: int, start_column: int, goal_row: int, goal_column: int, least: float
+def search(  # noqa: C901, PLR0912, PLR0915 - one loop over plain arrays: a call in it costs ten times the work
+    weight: NDArray[Any], start_row: int, start_column: int, goal_row: int, goal_column: int, least: float, most: float
 ) -> tuple[NDArray[np.intp], float]:
     """Cells of the cheapest route, shape (n, 2), and its cost; no cells where there is none.
 
-    `weight` (rows, columns) is positive, infinite where blocked; `least` is its least value.
+    `weight` (rows, columns) is positive, infinite where blocked; `least` and `most` bound its finite values.
     """
-    rows, columns = weight.shape
-    across = columns + 2  # a blocked border one cell wide spares every bounds check
-    size = (rows + 2) * across
-    price = np.full(size, np.inf)
-    most = least
-    for row in range(rows):
-        for column in range(columns):
-            value = weight[row, column]
-            price[(row + 1) * across + column + 1] = value
-            if value > most and value < np.inf:
-                most = value
-    step = np.array([1, -1, across, -across, across + 1, across - 1, 1 - across, -1 - across])
-    beside = np.array([0, 0, 0, 0, 1, -1, 1, -1])  # the column part of a diagonal step
+    price = with_border(weight)
+    across = weight.shape[1] + 2
+    steps = ROW_STEPS * across + COLUMN_STEPS
     start = (start_row + 1) * across + start_column + 1
     goal = (goal_row + 1) * across + goal_column + 1
 
-    cost = np.full(size, np.inf)
-    came = np.full(size, np.int8(NOWHERE))  # index of the step that led here
-    waiting = np.zeros(size, dtype=np.bool_)
+    width, ring = ring_for(least, most)
+    per_width = 1.0 / width
+    gain = GAIN_LEAST * least
+    saving = (2.0 - ROOT_2) * least  # of a diagonal step over two straight ones
 
-    width = max(0.5 * least, 2.0 * ROOT_2 * most / (RING_MOST - 2))
-    ring = 2
-    while ring * width < 2.0 * ROOT_2 * most + 2.0 * width:
-        ring *= 2
-    head = np.full(ring, NOWHERE, dtype=np.int32)
-    entry_cell = np.empty(4096, dtype=np.int32)
-    entry_next = np.empty(4096, dtype=np.int32)
-    used = 0
-    spare = NOWHERE
-    count = 0
+    cost = np.full(price.size, np.inf)
+    state = np.zeros(price.size, dtype=np.int8)
+    after = np.empty(price.size, dtype=np.int32)
+    before = np.empty(price.size, dtype=np.int32)
+    heads = np.full(ring, NOBODY, dtype=np.int32)
 
-    diagonal_saving = (2.0 - ROOT_2) * least
-    far_rows = abs(start_row - goal_row)
-    far_columns = abs(start_column - goal_column)
-    first = least * (far_rows + far_columns) - diagonal_saving * min(far_rows, far_columns)
-    cost[start] = 0.0
-    waiting[start] = True
-    bucket = int(first / width)
-    entry_cell[0] = start
-    entry_next[0] = NOWHERE
-    head[bucket & (ring - 1)] = 0
-    used = 1
+    far_rows, far_columns = abs(start_row - goal_row), abs(start_column - goal_column)
+    number = int((least * (far_rows + far_columns) - saving * min(far_rows, far_columns)) * per_width)
+    place = number & (ring - 1)
+    cost[start], state[start] = 0.0, WAITING
+    heads[place], after[start], before[start] = start, NOBODY, NOBODY - place
     count = 1
     while count > 0:
-        if cost[goal] < bucket * width:
-            break
-        place = bucket & (ring - 1)
-        entry = head[place]
-        if entry == NOWHERE:
-            bucket += 1
+        place = number & (ring - 1)
+        cell = heads[place]
+        if cell < 0:
+            number += 1
+            if cost[goal] < number * width:
+                break
             continue
-        head[place] = entry_next[entry]
-        entry_next[entry] = spare
-        spare = entry
+        follower = after[cell]
+        heads[place] = follower
+        if follower >= 0:
+            before[follower] = NOBODY - place
         count -= 1
-        cell = entry_cell[entry]
-        if not waiting[cell]:
-            continue
-        waiting[cell] = False
+        state[cell] -= WAITING
+
         here = cost[cell]
         half = 0.5 * price[cell]
+        row = cell // across - 1
+        column = cell % across - 1
         for index in range(8):
-            near = cell + step[index]
+            near = cell + steps[index]
             toll = price[near]
             if toll == np.inf:
                 continue
-            if index < 4:
-                reached = here + (half + 0.5 * toll)
-            else:
-                if price[cell + beside[index]] == np.inf or price[near - beside[index]] == np.inf:
-                    continue
-                reached = here + ROOT_2 * (half + 0.5 * toll)
-            if reached >= cost[near]:
+            aside = COLUMN_STEPS[index]
+            if index >= 4 and (price[cell + aside] == np.inf or price[near - aside] == np.inf):
                 continue
-            cost[near] = reached
-            came[near] = index
-            waiting[near] = True
-            far_rows = abs(near // across - 1 - goal_row)
-            far_columns = abs(near % across - 1 - goal_column)
-            estimate = reached + least * (far_rows + far_columns) - diagonal_saving * min(far_rows, far_columns)
-            place = max(int(estimate / width), bucket) & (ring - 1)
-            if spare != NOWHERE:
-                entry = spare
-                spare = entry_next[entry]
+            reached = here + STEP_LENGTHS[index] * (half + 0.5 * toll)
+            if reached >= cost[near] - gain:
+                continue
+            if state[near] >= WAITING:
+                leader, follower = before[near], after[near]
+                if leader >= 0:
+                    after[leader] = follower
+                else:
+                    heads[NOBODY - leader] = follower
+                if follower >= 0:
+                    before[follower] = leader
             else:
-                if used == len(entry_cell):
-                    entry_cell = np.append(entry_cell, np.empty(used, dtype=np.int32))
-                    entry_next = np.append(entry_next, np.empty(used, dtype=np.int32))
-                entry = used
-                used += 1
-            entry_cell[entry] = near
-            entry_next[entry] = head[place]
-            head[place] = entry
-            count += 1
+                count += 1
+            far_rows = abs(row + ROW_STEPS[index] - goal_row)
+            far_columns = abs(column + aside - goal_column)
+            estimate = reached + (least * (far_rows + far_columns) - saving * min(far_rows, far_columns))
+            place = max(int(estimate * per_width), number) & (ring - 1)
+            follower = heads[place]
+            cost[near], state[near] = reached, index + WAITING
+            heads[place], after[near], before[near] = near, follower, NOBODY - place
+            if follower >= 0:
+                before[follower] = near
+    return traced(state, steps, start, goal, across, cost[goal]), cost[goal]
 
-    if cost[goal] == np.inf:
-        return np.empty((0, 2), dtype=np.intp), np.inf
+
+@kernel
+def with_border(weight: NDArray[Any]) -> NDArray[Any]:
+    """The weights row by row with a blocked cell on every side, which spares each step its bounds check."""
+    rows, columns = weight.shape
+    price = np.empty((rows + 2, columns + 2), dtype=weight.dtype)
+    price[0, :] = np.inf
+    price[rows + 1, :] = np.inf
+    price[:, 0] = np.inf
+    price[:, columns + 1] = np.inf
+    price[1:-1, 1:-1] = weight
+    return price.ravel()
+
+
+@kernel
+def ring_for(least: float, most: float) -> tuple[float, int]:
+    """Width and number (a power of two) of stacks, so that one step never reaches all around the ring."""
+    reach = 2.0 * ROOT_2 * most  # a step costs at most half of it, and can raise the cost to come by as much
+    width = max(WIDTH * least, reach / (RING_MOST - 4))
+    ring = 4
+    while ring * width < reach + 3.0 * width:
+        ring *= 2
+    return width, ring
+
+
+@kernel
+def traced(
+    state: NDArray[np.int8], steps: NDArray[np.intp], start: int, goal: int, across: int, total: float
+) -> NDArray[np.intp]:
+    """The cells from start to goal, by going back the step that led to each; none where the goal was not reached."""
+    if total == np.inf:
+        return np.empty((0, 2), dtype=np.intp)
     length = 1
     cell = goal
     while cell != start:
-        cell -= step[came[cell]]
+        cell -= steps[state[cell] & 7]
         length += 1
     cells = np.empty((length, 2), dtype=np.intp)
     cell = goal
     for index in range(length - 1, -1, -1):
         cells[index, 0] = cell // across - 1
         cells[index, 1] = cell % across - 1
-        if index > 0:
-            cell -= step[came[cell]]
-    return cells, cost[goal]
+        cell -= 0 if index == 0 else steps[state[cell] & 7]
+    return cells

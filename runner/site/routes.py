@@ -54,11 +54,12 @@ def find_route(weight: Weights, start: Cell, goal: Cell) -> GridRoute | None:
     if not (_is_open(weight, start) and _is_open(weight, goal)):
         return None
     least = float(np.min(weight))
+    most = float(np.max(weight, where=np.isfinite(weight), initial=least))
     if not least > 0.0:
         raise ValueError("Every weight of a grid must be above 0.")
     from runner.site.route_kernels import search
 
-    cells, cost = search(np.ascontiguousarray(weight), start[0], start[1], goal[0], goal[1], least)
+    cells, cost = search(np.ascontiguousarray(weight), *start, *goal, least, most)
     if len(cells) == 0:
         return None
     return GridRoute(cells, float(cost), _length(cells))
