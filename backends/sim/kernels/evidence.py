@@ -1,0 +1,217 @@
+"""The robot's memory of obstacles as arithmetic: evidence per cell, and a distance field kept up to date with it.
+
+Evidence is counted in scans: a scan that hits a cell adds one, up to a cap; a scan with a beam that passes through the
+cell and comes back from beyond it takes one away. A beam that does not come back says nothing. Cells with evidence
+stand in a list, so that a scan costs by what is remembered and not by the size of the floor.
+
+`field` is the distance to the nearest solid cell of the map or remembered cell, right up to the radius of `disc`
+and the map's own beyond it.
+"""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.sim.kernels import grid
+from backends.sim.kernels.grid import CELLS_PER_M, value_at
+from runner.site.compiled import kernel_compiler
+
+kernel = kernel_compiler(__file__, grid.__file__)
+
+CELL = 0.05
+BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center to have passed it
+TURN = 2.0 * math.pi
+
+
+@kernel
+def paint(field: NDArray[Any], disc: NDArray[Any], row: int, column: int) -> None:
+    """Lower the field around one remembered cell; `disc` holds the distances of a square patch around its middle."""
+    reach = disc.shape[0] // 2
+    first, last = max(column - reach, 0), min(column + reach + 1, field.shape[1])
+    for r in range(max(row - reach, 0), min(row + reach + 1, field.shape[0])):
+        for c in range(first, last):
+            field[r, c] = min(field[r, c], disc[r - row + reach, c - column + reach])
+
+
+@kernel
+def repaint(
+    field: NDArray[Any], known: NDArray[Any], disc: NDArray[Any], cells: NDArray[Any], count: int, box: NDArray[Any]
+) -> None:
+    """Make the field right after cells inside `box` (low row, low column, high row, high column) were forgotten."""
+    reach = disc.shape[0] // 2
+    rows, columns = field.shape
+    low_row, high_row = max(box[0] - reach, 0), min(box[2] + reach + 1, rows)
+    low_column, high_column = max(box[1] - reach, 0), min(box[3] + reach + 1, columns)
+    field[low_row:high_row, low_column:high_column] = known[low_row:high_row, low_column:high_column]
+    for index in range(count):
+        row, column = cells[index] // columns, cells[index] % columns
+        if low_row - reach <= row < high_row + reach and low_column - reach <= column < high_column + reach:
+            paint(field, disc, row, column)
+
+
+@kernel
+def passes(
+    ranges: NDArray[Any], x: float, y: float, first: float, step: float, cell_x: float, cell_y: float, reach: float
+) -> bool:
+    """Whether the beam nearest to a cell's center goes through the cell and comes back from beyond it."""
+    to_x, to_y = cell_x - x, cell_y - y
+    apart = math.sqrt(to_x * to_x + to_y * to_y)
+    if apart > reach:
+        return False
+    bearing = math.atan2(to_y, to_x) - first
+    bearing -= math.floor(bearing / TURN) * TURN
+    beam = int(bearing / step + 0.5)
+    off = abs(bearing - beam * step)
+    if beam >= ranges.shape[0]:
+        beam, off = 0, TURN - bearing
+    if off > 0.5 * step or off * apart > 0.5 * CELL:
+        return False
+    return bool(apart + BEYOND < ranges[beam] < np.inf)
+
+
+@kernel
+def take_hits(
+    ranges: NDArray[Any],
+    x: float,
+    y: float,
+    first: float,
+    step: float,
+    trust: float,
+    tolerance: float,
+    known: NDArray[Any],
+    evidence: NDArray[Any],
+    seen: NDArray[Any],
+    number: int,
+    cap: int,
+    cells: NDArray[Any],
+    count: int,
+    field: NDArray[Any],
+    disc: NDArray[Any],
+) -> int:
+    """Add the returns nearer than `trust` that the map does not explain; the new number of remembered cells.
+
+    A return within `tolerance` plus 1 % of its range of a mapped cell is that cell.
+    """
+    columns = field.shape[1]
+    for beam in range(ranges.shape[0]):
+        reach = ranges[beam]
+        if reach > trust:
+            continue
+        angle = first + beam * step
+        hit_x, hit_y = x + reach * math.cos(angle), y + reach * math.sin(angle)
+        if value_at(known, hit_x, hit_y) <= tolerance + 0.01 * reach:
+            continue
+        row, column = int(hit_y * CELLS_PER_M), int(hit_x * CELLS_PER_M)
+        if seen[row, column] == number:
+            continue
+        seen[row, column] = number
+        if evidence[row, column] == 0:
+            if count == cells.shape[0]:
+                continue
+            cells[count] = row * columns + column
+            count += 1
+            paint(field, disc, row, column)
+        evidence[row, column] = min(evidence[row, column] + 1, cap)
+    return count
+
+
+@kernel
+def fade(
+    ranges: NDArray[Any],
+    x: float,
+    y: float,
+    first: float,
+    step: float,
+    reach: float,
+    known: NDArray[Any],
+    evidence: NDArray[Any],
+    seen: NDArray[Any],
+    number: int,
+    cells: NDArray[Any],
+    count: int,
+    field: NDArray[Any],
+    disc: NDArray[Any],
+) -> int:
+    """Take evidence from the cells that this scan saw through; the new number of remembered cells."""
+    rows, columns = field.shape
+    box = np.array([rows, columns, -1, -1])
+    index = 0
+    while index < count:
+        row, column = cells[index] // columns, cells[index] % columns
+        if seen[row, column] != number and passes(
+            ranges, x, y, first, step, (column + 0.5) * CELL, (row + 0.5) * CELL, reach
+        ):
+            evidence[row, column] -= 1
+            if evidence[row, column] == 0:
+                count -= 1
+                cells[index] = cells[count]
+                widen(box, row, column)
+                continue
+        index += 1
+    if box[2] >= 0:
+        repaint(field, known, disc, cells, count, box)
+    return count
+
+
+@kernel
+def widen(box: NDArray[Any], row: int, column: int) -> None:
+    """Let the box hold a cell too."""
+    box[0], box[1] = min(box[0], row), min(box[1], column)
+    box[2], box[3] = max(box[2], row), max(box[3], column)
+
+
+@kernel
+def forget(
+    x: float,
+    y: float,
+    radius: float,
+    known: NDArray[Any],
+    evidence: NDArray[Any],
+    cells: NDArray[Any],
+    count: int,
+    field: NDArray[Any],
+    disc: NDArray[Any],
+) -> int:
+    """Forget the cells within `radius` of a point; the new number of remembered cells."""
+    rows, columns = field.shape
+    box = np.array([rows, columns, -1, -1])
+    index = 0
+    while index < count:
+        row, column = cells[index] // columns, cells[index] % columns
+        off_x, off_y = (column + 0.5) * CELL - x, (row + 0.5) * CELL - y
+        if off_x * off_x + off_y * off_y <= radius * radius:
+            evidence[row, column] = 0
+            count -= 1
+            cells[index] = cells[count]
+            widen(box, row, column)
+            continue
+        index += 1
+    if box[2] >= 0:
+        repaint(field, known, disc, cells, count, box)
+    return count
+
+
+@kernel
+def near(x: float, y: float, radius: float, cells: NDArray[Any], count: int, columns: int, points: NDArray[Any]) -> int:
+    """Fill `points` with the centers of remembered cells within `radius`, evenly thinned; how many were filled."""
+    inside = 0
+    for index in range(count):
+        off_x = (cells[index] % columns + 0.5) * CELL - x
+        off_y = (cells[index] // columns + 0.5) * CELL - y
+        inside += off_x * off_x + off_y * off_y <= radius * radius
+    most = points.shape[0]
+    every = max(1, (inside + most - 1) // most)
+    filled, met = 0, 0
+    for index in range(count):
+        off_x = (cells[index] % columns + 0.5) * CELL - x
+        off_y = (cells[index] // columns + 0.5) * CELL - y
+        if off_x * off_x + off_y * off_y <= radius * radius:
+            if met % every == 0:
+                points[filled, 0], points[filled, 1] = x + off_x, y + off_y
+                filled += 1
+            met += 1
+    return filled

@@ -1,0 +1,205 @@
+"""The dynamic window (Fox, Burgard and Thrun, 1997) along a route, with the full outline of the robot.
+
+Candidates are the speeds and turn rates that the drive can reach within a short while. Each is rolled out as an arc;
+it is admissible where the robot could stop before its outline comes too near to anything. Of the admissible ones
+the best makes most way along the route, stays near it, points along it and keeps off obstacles.
+
+The outline is given as `rim`, points on it no more than twice the margin apart, shape (n, 2), robot frame. `field` is
+the believed distance to the nearest obstacle (see `evidence`).
+"""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.sim.kernels import grid, motion, path
+from backends.sim.kernels.grid import value_at
+from backends.sim.kernels.motion import admissible, arc, wrapped
+from backends.sim.kernels.path import point_at, project
+from runner.site.compiled import kernel_compiler
+
+kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, path.__file__)
+
+STEP_S = 0.1  # time between two checks on an arc
+REACTION_S = 0.1  # one tick passes before a change of mind takes effect
+SPEEDS, TURNS = 7, 21  # candidates
+WEIGHT_OFF = 1.2  # per meter beside the route, against 1 per meter along it
+WEIGHT_POINTING = 0.5  # meters, for pointing square off the route
+WEIGHT_NEAR = 0.5  # meters, for touching, falling to none at `ROOMY_M` of clearance beyond the inscribed radius
+ROOMY_M = 0.25
+POINT_AHEAD_M = 0.3  # where on the route its direction is taken
+
+
+@kernel
+def closeness(
+    field: NDArray[Any],
+    rim: NDArray[Any],
+    inner: float,
+    outer: float,
+    x: float,
+    y: float,
+    heading: float,
+    enough: float,
+) -> float:
+    """The least clearance of the outline at a pose, as far as it is below `enough`.
+
+    `inner` and `outer` are the inscribed and circumscribed radius, which spare looking at every point of the rim.
+    """
+    center = value_at(field, x, y)
+    if center >= outer + enough:
+        return enough
+    if center < inner:
+        return 0.0
+    cosine, sine = math.cos(heading), math.sin(heading)
+    least = enough
+    for index in range(rim.shape[0]):
+        ahead, left = rim[index, 0], rim[index, 1]
+        least = min(least, value_at(field, x + ahead * cosine - left * sine, y + ahead * sine + left * cosine))
+    return least
+
+
+@kernel
+def free_turn(
+    field: NDArray[Any],
+    rim: NDArray[Any],
+    inner: float,
+    outer: float,
+    x: float,
+    y: float,
+    heading: float,
+    by: float,
+    margin: float,
+) -> float:
+    """How much of a turn in place by the angle `by` is free, at least 0, at most abs(by)."""
+    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
+    steps = max(1, math.ceil(abs(by) / 0.07))
+    for step in range(1, steps + 1):
+        if closeness(field, rim, inner, outer, x, y, heading + by * step / steps, margin) < need:
+            return abs(by) * (step - 1) / steps
+    return abs(by)
+
+
+@kernel
+def free_straight(
+    field: NDArray[Any],
+    rim: NDArray[Any],
+    inner: float,
+    outer: float,
+    x: float,
+    y: float,
+    heading: float,
+    by: float,
+    margin: float,
+) -> float:
+    """How much of a straight drive by `by` (negative: backward) is free, at least 0, at most abs(by)."""
+    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
+    steps = max(1, math.ceil(abs(by) / 0.03))
+    cosine, sine = math.cos(heading), math.sin(heading)
+    for step in range(1, steps + 1):
+        part = by * step / steps
+        if closeness(field, rim, inner, outer, x + part * cosine, y + part * sine, heading, margin) < need:
+            return abs(by) * (step - 1) / steps
+    return abs(by)
+
+
+@kernel
+def choose(
+    field: NDArray[Any],
+    rim: NDArray[Any],
+    inner: float,
+    outer: float,
+    margin: float,
+    points: NDArray[Any],
+    along: NDArray[Any],
+    covered: float,
+    x: float,
+    y: float,
+    heading: float,
+    speed: float,
+    turn: float,
+    fastest: float,
+    acceleration: float,
+    turn_fastest: float,
+    turn_acceleration: float,
+    window: float,
+    horizon: float,
+) -> tuple[float, float, float]:
+    """The best admissible (speed, turn rate, score); score -inf and (0, 0) where nothing is admissible.
+
+    `covered` is how far along the route the robot is; `window` the time in which candidates must be reachable;
+    `horizon` the time an arc is looked at.
+    """
+    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
+    low_speed = max(0.0, speed - acceleration * window)
+    high_speed = max(min(fastest, speed + acceleration * window), low_speed)
+    low_turn = max(-turn_fastest, turn - turn_acceleration * window)
+    high_turn = min(turn_fastest, turn + turn_acceleration * window)
+    best_speed, best_turn, best = 0.0, 0.0, -np.inf
+    for i in range(SPEEDS):
+        v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
+        for j in range(TURNS):
+            w = low_turn + (high_turn - low_turn) * j / (TURNS - 1)
+            free, clearance = rolled(field, rim, inner, outer, x, y, heading, v, w, margin, need, horizon)
+            if v > admissible(v * (free - REACTION_S), acceleration) + 1e-9:
+                continue
+            if abs(w) > admissible(abs(w) * (free - REACTION_S), turn_acceleration) + 1e-9:
+                continue
+            score = worth(points, along, covered, x, y, heading, v, w, free)
+            score -= WEIGHT_NEAR * max(0.0, 1.0 - (clearance - inner) / ROOMY_M)
+            if score > best:
+                best_speed, best_turn, best = v, w, score
+    return best_speed, best_turn, best
+
+
+@kernel
+def rolled(
+    field: NDArray[Any],
+    rim: NDArray[Any],
+    inner: float,
+    outer: float,
+    x: float,
+    y: float,
+    heading: float,
+    speed: float,
+    turn: float,
+    margin: float,
+    need: float,
+    horizon: float,
+) -> tuple[float, float]:
+    """How long the arc is free, at most `horizon`, and the least clearance of the turning center on that part."""
+    steps = int(horizon / STEP_S + 0.5)
+    clearance = value_at(field, x, y)
+    for step in range(1, steps + 1):
+        at_x, at_y, at_heading = arc(x, y, heading, speed, turn, step * STEP_S)
+        if closeness(field, rim, inner, outer, at_x, at_y, at_heading, margin) < need:
+            return (step - 1) * STEP_S, clearance
+        clearance = min(clearance, value_at(field, at_x, at_y))
+    return steps * STEP_S, clearance
+
+
+@kernel
+def worth(
+    points: NDArray[Any],
+    along: NDArray[Any],
+    covered: float,
+    x: float,
+    y: float,
+    heading: float,
+    speed: float,
+    turn: float,
+    time: float,
+) -> float:
+    """What driving an arc for a time is worth: way made along the route, less what it is off and points off it."""
+    end_x, end_y, end_heading = arc(x, y, heading, speed, turn, time)
+    reached, off = project(points, along, end_x, end_y, covered - 0.2, covered + speed * time + 0.3)
+    from_x, from_y = point_at(points, along, reached)
+    to_x, to_y = point_at(points, along, reached + POINT_AHEAD_M)
+    score = reached - covered - WEIGHT_OFF * off
+    if to_x != from_x or to_y != from_y:
+        pointing = math.atan2(to_y - from_y, to_x - from_x)
+        score -= WEIGHT_POINTING * (1.0 - math.cos(wrapped(end_heading - pointing)))
+    return score

@@ -1,0 +1,86 @@
+"""The way to the goal over what the robot believes: A* on map and memory for a disc of the inscribed radius.
+
+The disc is optimistic: it can lead the robot into a gap that its whole outline does not pass. That is how robots get
+stuck, and it is the follower's business to notice.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.sim.kernels.grid import nearest_open
+from backends.sim.kernels.path import CLEAR, clearances, lengths, obstructed, point_at, smoothed
+from backends.sim.outline import Outline
+from runner.site.floor import cell_of
+from runner.site.routes import find_route, weight_from_clearance
+from runner.site.values import CELL_M, Point, Pose
+
+SOFT_M = 0.3
+"""Beyond the circumscribed radius, how much more clearance a route likes to have."""
+STRENGTH = 8.0
+"""How much dearer the tightest cell is than an open one."""
+SMOOTH_CELLS = 6
+"""A route is smoothed over this many cells to each side."""
+START_REACH_CELLS = 10
+"""How far off its own cell the robot may begin a route where its own cell is too tight."""
+SLACK_M = 0.01
+"""A route counts as obstructed where its clearance fell by more than this below what it needs."""
+
+
+@dataclass(frozen=True, slots=True)
+class Route:
+    """`points` (n, 2) from where the robot stood to the goal, `along` the length up to each, `needs` the clearance
+    that each needs to count as free."""
+
+    points: NDArray[np.float64]
+    along: NDArray[np.float64]
+    needs: NDArray[np.float64]
+
+    @property
+    def length(self) -> float:
+        return float(self.along[-1])
+
+    def obstruction(self, field: NDArray[np.float32], covered: float) -> float | None:
+        """How far along the route, from `covered` on, something now stands in its way; None where nothing does."""
+        index = obstructed(self.points, self.along, field, covered, self.needs)
+        return None if index == CLEAR else float(self.along[index])
+
+    def part(self, covered: float, most: int) -> tuple[Point, ...]:
+        """The route from `covered` to its end in at most `most` points."""
+        first = int(np.searchsorted(self.along, covered, side="right"))
+        rest = self.points[first:]
+        every = max(1, -(-len(rest) // (most - 2)))
+        points = [point_at(self.points, self.along, covered), *map(tuple, rest[::every].tolist())]
+        end = (float(self.points[-1, 0]), float(self.points[-1, 1]))
+        return tuple(points if points[-1] == end else [*points, end])
+
+
+class Planner:
+    """Plans for one robot."""
+
+    def __init__(self, outline: Outline) -> None:
+        self.clearance_needed = outline.inner + CELL_M
+        """Distance between cell centers at which the disc fits: the radius, and half a cell at each end."""
+        self._soft = outline.outer + SOFT_M
+
+    def plan(self, field: NDArray[np.float32], start: Pose, goal: Pose) -> Route | None:
+        """The route where there is one. `field` is the distance to the nearest known or remembered obstacle."""
+        row, column = cell_of((start.x, start.y))
+        first = nearest_open(field, row, column, self.clearance_needed, START_REACH_CELLS)
+        weight = weight_from_clearance(field, self.clearance_needed, self._soft, STRENGTH)
+        found = find_route(weight, first, cell_of((goal.x, goal.y)))
+        if found is None:
+            return None
+        raw = np.vstack([(start.x, start.y), found.points()[1:-1], (goal.x, goal.y)])
+        points = smoothed(raw, field, self.clearance_needed, SMOOTH_CELLS)
+        needs = clearances(points, field, self.clearance_needed) - SLACK_M
+        return Route(points, lengths(points), needs)
+
+    def fits(self, field: NDArray[np.float32], pose: Pose) -> bool:
+        """Whether the disc fits at a pose."""
+        row, column = cell_of((pose.x, pose.y))
+        on_floor = 0 <= row < field.shape[0] and 0 <= column < field.shape[1]
+        return on_floor and bool(field[row, column] >= self.clearance_needed)

@@ -1,0 +1,158 @@
+"""The simulator as a backend: a fixed tick of virtual time, world first, then people, then the robot.
+
+A tick depends only on the state before it and on the commands given since, never on how `reports` was called.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from datetime import datetime, timedelta
+
+import numpy as np
+
+from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry
+from backends.sim.belief import Localization
+from backends.sim.body import Body
+from backends.sim.memory import Memory
+from backends.sim.people import People
+from backends.sim.robot import Robot
+from backends.sim.sensing import Scanner
+from backends.sim.world import World
+from runner.site.floor import rasterize
+from runner.site.values import Pose
+
+TICKS_PER_S = 10
+TICK_S = 1.0 / TICKS_PER_S
+TELEMETRY_S, TELEMETRY_IDLE_S = 0.25, 1.0
+"""Time between two telemetry reports, at least: with something to do, and without."""
+IDLE_TICKS_PER_LOOK = 5
+"""With nothing to do the robot looks around only every so many ticks."""
+ROUTE_POINTS = 64
+"""Points of the route in telemetry, at most."""
+
+
+class VirtualClock:
+    """Time that jumps as the arithmetic allows."""
+
+    def __init__(self, begins: datetime) -> None:
+        self._begins = begins
+        self.seconds = 0.0
+
+    @property
+    def virtual(self) -> bool:
+        return True
+
+    def now(self) -> float:
+        return self.seconds
+
+    def wall(self) -> datetime:
+        return self._begins + timedelta(seconds=self.seconds)
+
+
+class Simulator:
+    """One robot on one floor. `world`, `people` and `body` are the truth, for tests and measurements only."""
+
+    def __init__(self, setup: Setup) -> None:
+        """ValueError, with a sentence, where the robot cannot stand at its start."""
+        streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(3)]
+        floor = rasterize(setup.site)
+        midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
+        self.world = World(setup.site, floor, setup.conditions, (setup.begins - midnight).total_seconds())
+        self.body = Body(setup.robot, setup.start, self.world)
+        start = (setup.start.x, setup.start.y)
+        self.people = People(setup.conditions.walkers, setup.site, self.world, start, streams[0])
+        self.memory = Memory(floor.blocked(), self.body.outline, setup.robot.lidar)
+        self.robot = Robot(self.body, self.memory, setup.start)
+        self._scanner = Scanner(setup.robot.lidar, streams[1])
+        self._localization = Localization(streams[2], TICK_S)
+        self._clock = VirtualClock(setup.begins)
+        self._ticks = 0
+        self._next_telemetry = 0.0
+        self._ticks_per_look = max(1, round(TICKS_PER_S / setup.robot.lidar.rate))
+
+    @property
+    def clock(self) -> Clock:
+        return self._clock
+
+    @property
+    def capabilities(self) -> frozenset[Capability]:
+        return frozenset(Capability)
+
+    def open(self) -> None:
+        """Compile the kernels, which takes seconds after an installation and a fraction of one later."""
+        from backends.sim.warming import warm_up
+
+        warm_up()
+
+    def go(self, goal: Goal) -> None:
+        self.robot.go(goal, self._clock.seconds)
+
+    def halt(self) -> None:
+        self.robot.halt(self._clock.seconds)
+
+    def clear(self, action_id: int, radius: float) -> None:
+        self.robot.clear(action_id, radius, self._clock.seconds)
+
+    def replan(self, action_id: int) -> None:
+        self.robot.replan(action_id, self._clock.seconds)
+
+    def ease_back(self, action_id: int, distance: float) -> None:
+        self.robot.ease_back(action_id, distance, self._clock.seconds)
+
+    def relocate(self, action_id: int, pose: Pose | None) -> None:  # noqa: ARG002  the robot knows without a hint
+        self._localization.begin_anew()
+        self.robot.news.append(ActionReport(self._clock.seconds, action_id, True))
+
+    def charge(self) -> None:
+        self.body.charge.charging = True
+
+    def reports(self, until: float) -> Sequence[Report]:
+        """Compute ticks until there is news, at most up to `until`."""
+        news = self.robot.news
+        while not news and (self._ticks + 1) / TICKS_PER_S <= until:
+            self._tick()
+        if not news:
+            self._clock.seconds = max(self._clock.seconds, until)
+        taken = list(news)
+        news.clear()
+        return taken
+
+    def close(self) -> None:
+        """Nothing is held."""
+
+    def _tick(self) -> None:
+        self._ticks += 1
+        now = self._clock.seconds = self._ticks / TICKS_PER_S
+        state, bodies = self.body.state(), self.people.bodies
+        self.world.advance(now, state.tolist(), self.body.outline, bodies, self._ticks % TICKS_PER_S == 0)
+        self.people.advance(now, state, self.body.outline, TICK_S)
+        robot = self.robot
+        robot.pose = self._localization.estimate(self.body.pose)
+        if self._ticks % (IDLE_TICKS_PER_LOOK if robot.idle else self._ticks_per_look) == 0:
+            scan = self._scanner.look(self.body.pose, self.world.distance, bodies)
+            self.memory.take(scan, robot.pose)
+        wish = robot.think(now)
+        self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
+        if now >= self._next_telemetry:
+            self._next_telemetry += TELEMETRY_S
+            while self._next_telemetry <= now:
+                self._next_telemetry += TELEMETRY_S
+            if robot.idle:
+                self._next_telemetry = max(self._next_telemetry, now + TELEMETRY_IDLE_S)
+            robot.news.append(self._telemetry(now))
+
+    def _telemetry(self, now: float) -> Telemetry:
+        robot, body = self.robot, self.body
+        return Telemetry(
+            stamp=now,
+            pose=robot.pose,
+            spread=self._localization.spread,
+            speed=body.drive.speed,
+            turn_rate=body.drive.turn,
+            battery=body.charge.fraction,
+            driven=body.driven,
+            remaining=robot.remaining,
+            route_number=robot.route_number,
+            route=() if robot.route is None else robot.route.part(robot.follower.covered, ROUTE_POINTS),
+            obstacles=self.memory.shown(robot.pose),
+        )

@@ -1,0 +1,42 @@
+"""Compiling every kernel before time counts, by running a small world in which all of them are needed."""
+
+from __future__ import annotations
+
+from datetime import datetime
+
+from backends.contract import Backend, Goal, Setup
+from runner.site.values import Battery, Carton, Conditions, Lidar, Place, Pose, RobotDescription, Site, Walkers, Wall
+
+
+def warm_up() -> None:
+    """Use every kernel once. About 20 s after an installation; then they are kept (`runner.site.compiled`)."""
+    from backends.sim.simulator import Simulator
+
+    world = Simulator(_small_setup())
+    world.go(Goal(1, Pose(4.0, 1.0, 0.0), 0.5))
+    _pass(world, 4.0)
+    world.ease_back(1, 0.1)
+    world.clear(2, 3.0)
+    world.replan(3)
+    _pass(world, 8.0)
+
+
+def _pass(world: Backend, until: float) -> None:
+    while world.clock.now() < until:
+        world.reports(until)
+
+
+def _small_setup() -> Setup:
+    corners = ((0.0, 0.0), (5.0, 0.0), (5.0, 3.0), (0.0, 3.0), (0.0, 0.0))
+    places = (Place("a", Pose(1.0, 2.0, 0.0)), Place("b", Pose(4.0, 2.0, 0.0)))
+    return Setup(
+        site=Site("small", 5.0, 3.0, (Wall(corners, 0.1),), (), (), places),
+        robot=RobotDescription(
+            "small", ((0.2, 0.2), (-0.2, 0.2), (-0.2, -0.2), (0.2, -0.2)), 0.5, 0.3, 0.5, 1.0, 2.0,
+            Lidar(4.0, 60, 8.0, 10.0, 0.01), Battery(100.0, 10.0, 50.0, 100.0),
+        ),
+        start=Pose(1.0, 1.0, 0.0),
+        conditions=Conditions(cartons=(Carton((2.5, 1.2), (0.3, 0.3)),), walkers=(Walkers(2),)),
+        seed=1,
+        begins=datetime(2024, 1, 1, 18, 0),
+    )  # fmt: skip
