@@ -51,17 +51,17 @@ def read_conditions_page(page: Page, site: Site) -> Conditions:
     if page.root is None:
         return DEFAULTS
     fields = Fields(page, page.root, "a conditions file", CONDITIONS_KEYS)
-    scale = read_coordinates(fields)
+    coordinates = read_coordinates(fields)
     return Conditions(
         name=fields.name("conditions"),
         begins_at=fields.phrase("begins at", parse_clock, DEFAULTS.begins_at),
-        cartons=tuple(_read_carton(page, node, site, scale) for node in fields.items("cartons")),
+        cartons=tuple(_read_carton(page, node, site, coordinates) for node in fields.items("cartons")),
         doors=tuple(_read_door_change(page, node, site) for node in fields.items("doors")),
         walkers=tuple(_read_walkers(page, node, site) for node in fields.items("walkers")),
     )
 
 
-def _read_carton(page: Page, node: Node, site: Site, scale: Coordinates) -> Carton:
+def _read_carton(page: Page, node: Node, site: Site, coordinates: Coordinates) -> Carton:
     body = mapping(page, node, "a carton", "{at: [20 m, 12 m], size: 60 cm x 40 cm}")
     if body is None:
         return Carton(ORIGIN, (SIDE.least, SIDE.least))
@@ -72,7 +72,7 @@ def _read_carton(page: Page, node: Node, site: Site, scale: Coordinates) -> Cart
         size = page.phrase(size_node, _parse_carton_size, size, "a size", CARTON_KEYS["size"])
     near, until, stays = fields.get("when near"), fields.get("until"), fields.get("stays")
     carton = Carton(
-        at=_read_spot(fields, site, scale),
+        at=_read_spot(fields, site, coordinates),
         size=size,
         from_s=fields.number_or("from", TIME, 0.0),
         until_s=None if until is None else fields.number("until", TIME),
@@ -83,9 +83,9 @@ def _read_carton(page: Page, node: Node, site: Site, scale: Coordinates) -> Cart
     return carton
 
 
-def _read_spot(fields: Fields, site: Site, scale: Coordinates) -> Point:
+def _read_spot(fields: Fields, site: Site, coordinates: Coordinates) -> Point:
     node = fields.need("at")
-    point = None if node is None else read_point(fields.page, node, scale)
+    point = None if node is None else read_point(fields.page, node, coordinates)
     if node is None or point is None:
         return ORIGIN
     if not (0.0 <= point[0] <= site.width and 0.0 <= point[1] <= site.height):

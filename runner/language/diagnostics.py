@@ -84,15 +84,22 @@ def source_lines(text: str) -> list[str]:
     return text.removeprefix("\ufeff").replace("\r\n", "\n").replace("\r", "\n").split("\n")
 
 
-def nearest(word: str, known: Iterable[str], kind: str) -> str:
-    """A help that names the known word nearest to `word`, or else all of them: `kind` is "place", "step" and so on."""
+def nearest_word(word: str, known: Iterable[str]) -> str | None:
+    """The known word that looks most like `word`, None where none does."""
     from difflib import get_close_matches
 
     folded = {candidate.casefold(): candidate for candidate in known}
     close = get_close_matches(word[:WORD_WIDTH].casefold(), folded, n=1, cutoff=0.6)
-    if close:
-        return f"The nearest {kind} is {quoted(folded[close[0]])}."
-    names = [shown(name) for name in folded.values()]
+    return folded[close[0]] if close else None
+
+
+def nearest(word: str, known: Iterable[str], kind: str) -> str:
+    """A help that names the known word nearest to `word`, or else all of them: `kind` is "place", "step" and so on."""
+    known = list(known)
+    close = nearest_word(word, known)
+    if close is not None:
+        return f"The nearest {kind} is {quoted(close)}."
+    names = [shown(name) for name in known]
     if not names:
         return ""
     more = f" and {len(names) - 12} more" if len(names) > 12 else ""
@@ -115,7 +122,7 @@ def _render_one(found: Diagnostic, lines: list[str], ascii_only: bool) -> str:
     position = "" if mark.line == WHOLE_FILE else f"{mark.line}:{mark.column}:"
     file = shown_path(mark.file) if ascii_only else mark.file
     parts = [f"{file}:{position} {found.severity.value}: {found.sentence}"]
-    if 0 < mark.line <= len(lines):
+    if 0 < mark.line <= len(lines) and lines[mark.line - 1].strip():
         parts += _excerpt(lines[mark.line - 1], mark, ascii_only)
     if found.help:
         parts.append(f"  {found.help}")

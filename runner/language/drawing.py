@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 
-from runner.language.diagnostics import quoted
+from runner.language.diagnostics import quoted, shown
 from runner.language.fields import Fields, Keys, mapping
 from runner.language.mission import Mark
 from runner.language.nodes import Mapping, Node, Scalar
@@ -133,7 +133,7 @@ def _read_legend(picture: _Picture, fields: Fields, squares: dict[str, list[Squa
         if body is not None:
             _read_entry(picture, body, where, doors, places, names)
     for character, where in squares.items():
-        help_text = f"Add for example: {character}: {{place: kitchen, facing: west}}"
+        help_text = f"Add for example: {shown(character)}: {{place: kitchen, facing: west}}"
         page.report(picture.mark(where[0]), f"The legend does not explain {quoted(character)}.", help_text)
     return doors, places
 
@@ -146,8 +146,10 @@ def _read_entry(
     places: list[Place],
     names: set[tuple[str, str]],
 ) -> None:
-    fields = Fields(picture.page, body, "a legend", LEGEND_KEYS)
+    fields = Fields(picture.page, body, "a line of the legend", LEGEND_KEYS)
     kinds = [kind for kind in body.pairs if kind in ("place", "door")]
+    if not kinds and fields.mistaken:
+        return
     if len(kinds) != 1:
         help_text = "Write {place: kitchen, facing: west} or {door: kitchen door}."
         picture.page.report(body, "A letter stands for one place or one door.", help_text)

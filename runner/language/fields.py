@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Iterable
 from typing import TypeVar
 
-from runner.language.diagnostics import nearest, quoted
+from runner.language.diagnostics import nearest, nearest_word, quoted
 from runner.language.mission import Mark
 from runner.language.nodes import Mapping, Node, Scalar, Sequence
 from runner.language.pages import Page
@@ -20,16 +20,19 @@ Keys = dict[str, str]
 class Fields:
     """One mapping whose keys are known. `what` names it in a sentence: "a retry rule"."""
 
-    __slots__ = ("keys", "mapping", "page", "what")
+    __slots__ = ("keys", "mapping", "mistaken", "page", "what")
 
     def __init__(self, page: Page, mapping: Mapping, what: str, keys: Keys) -> None:
         self.page = page
         self.mapping = mapping
         self.what = what
         self.keys = keys
+        self.mistaken: set[str | None] = set()
+        """Keys that an unknown key was probably meant to be: that they are missing is not said again."""
         for key, (node, _) in mapping.pairs.items():
             if key not in keys:
                 page.report(node, f"{what.capitalize()} has no key {quoted(key)}.", nearest(key, keys, "key"))
+                self.mistaken.add(nearest_word(key, keys))
 
     def get(self, key: str) -> Node | None:
         """The value of a key that may be left out."""
@@ -37,11 +40,13 @@ class Fields:
         return pair[1] if pair is not None else None
 
     def need(self, key: str) -> Node | None:
-        """The value of a key, or None after a report that it is missing."""
+        """The value of a key, or None, reported, where it is missing."""
         pair = self.mapping.pairs.get(key)
         if pair is not None:
             return pair[1]
-        self.page.report(self.mapping, f"{self.what.capitalize()} needs {quoted(key)}.", self._add(key))
+        if key not in self.mistaken:
+            help_text = f"Add for example: {key}: {self.keys[key]}"
+            self.page.report(self.mapping, f"{self.what.capitalize()} needs {quoted(key)}.", help_text)
         return None
 
     def pair_mark(self, key: str) -> Mark:
@@ -75,10 +80,10 @@ class Fields:
         node = self.need(key)
         return "" if node is None else name(self.page, node, self.keys[key])
 
-    def items(self, key: str, needed: bool = False) -> list[Node]:
-        """The items of the list at a key; none where it is left out. An empty list is reported."""
-        node = self.need(key) if needed else self.get(key)
-        return [] if node is None else items(self.page, node, quoted(key), self.keys[key])
+    def items(self, key: str) -> list[Node]:
+        """The items of the list at a key that may be left out. An empty list is reported."""
+        node = self.get(key)
+        return [] if node is None else items(self.page, node, quoted(key), self.keys[key], optional=True)
 
     def pairs(self, key: str) -> Iterable[tuple[Scalar, Node]]:
         """Names with what belongs to them at a key; none where it is left out."""
@@ -87,9 +92,6 @@ class Fields:
             return ()
         inner = mapping(self.page, node, quoted(key), self.keys[key])
         return () if inner is None else inner.pairs.values()
-
-    def _add(self, key: str) -> str:
-        return f"Add for example: {key}: {self.keys[key]}"
 
 
 def amount(page: Page, node: Node, kind: Amount, example: str) -> float:
@@ -113,13 +115,14 @@ def name(page: Page, node: Node, example: str) -> str:
     return text
 
 
-def items(page: Page, node: Node, what: str, example: str) -> list[Node]:
+def items(page: Page, node: Node, what: str, example: str, optional: bool = False) -> list[Node]:
     """The items of a list that is not empty; none after a report."""
     if not isinstance(node, Sequence):
         page.report(node, f"A list is meant for {what}.", f"Write for example {example}.")
         return []
     if not node.items:
-        page.report(node, f"The list of {what} is empty.", f"Write for example {example}, or leave the key out.")
+        instead = f"Write for example {example}{', or leave the key out' if optional else ''}."
+        page.report(node, f"The list of {what} is empty.", instead)
     return node.items
 
 

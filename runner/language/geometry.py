@@ -15,8 +15,24 @@ from runner.site.values import Point
 SCALES = {"in meters": 1.0, "in centimeters": 0.01, "in millimeters": 0.001}
 """What `coordinates:` may say, and the factor to meters."""
 
-Coordinates = float | None
-"""Meters per unit of a bare coordinate; None where the file does not say."""
+
+class Coordinates:
+    """What a file's bare coordinates are in: `scale` meters a unit, None where the file does not say."""
+
+    def __init__(self, scale: float | None) -> None:
+        self.scale = scale
+        self._told = False
+
+    def bare(self, page: Page, node: Node, number: float) -> float | None:
+        """A bare coordinate in meters; None where it needs a unit, which is reported once for the whole file."""
+        if self.scale is not None:
+            return number * self.scale
+        if not self._told:
+            help_text = f"Write {number:g} m, or once for the whole file: coordinates: in meters"
+            page.report(node, "This coordinate has no unit.", help_text)
+        self._told = True
+        return None
+
 
 ORIGIN: Point = (0.0, 0.0)
 
@@ -25,24 +41,24 @@ def read_coordinates(fields: Fields) -> Coordinates:
     """What the key `coordinates` says."""
     node = fields.get("coordinates")
     if node is None:
-        return None
+        return Coordinates(None)
     text = fields.page.text(node, "the unit of coordinates", "in meters")
     if text is not None and text not in SCALES:
         sentence = f"Coordinates cannot be {quoted(text)}."
         fields.page.report(node, sentence, nearest(text, SCALES, "wording"))
-    return SCALES.get(text or "", 1.0)
+    return Coordinates(SCALES.get(text or "", 1.0))
 
 
-def read_point(page: Page, node: Node, scale: Coordinates) -> Point | None:
+def read_point(page: Page, node: Node, coordinates: Coordinates) -> Point | None:
     """A pair of coordinates in meters, or None after a report."""
     if not isinstance(node, Sequence) or len(node.items) != 2:
         page.report(node, "A point is a pair, x and y.", "Write for example [12.5 m, 3 m].")
         return None
-    x, y = (_read_coordinate(page, item, scale) for item in node.items)
+    x, y = (_read_coordinate(page, item, coordinates) for item in node.items)
     return None if x is None or y is None else (x, y)
 
 
-def read_points(page: Page, node: Node, scale: Coordinates, least: int, what: str) -> tuple[Point, ...]:
+def read_points(page: Page, node: Node, coordinates: Coordinates, least: int, what: str) -> tuple[Point, ...]:
     """A list of points in meters, of at least so many; none after a report."""
     if not isinstance(node, Sequence):
         page.report(node, f"A list of points is meant for {what}.", "Write for example [[0 m, 0 m], [2 m, 0 m]].")
@@ -51,7 +67,7 @@ def read_points(page: Page, node: Node, scale: Coordinates, least: int, what: st
         help_text = f"Write {least} or more, as [[x, y], [x, y]]."
         page.report(node, f"There are too few points for {what}: {len(node.items)}.", help_text)
         return ()
-    points = [read_point(page, item, scale) for item in node.items]
+    points = [read_point(page, item, coordinates) for item in node.items]
     return tuple(point for point in points if point is not None) if None not in points else ()
 
 
@@ -68,17 +84,13 @@ def polygon_area(corners: Ordered[Point]) -> float:
     return abs(sum(x1 * y2 - x2 * y1 for (x1, y1), (x2, y2) in pairwise(outline))) / 2.0
 
 
-def _read_coordinate(page: Page, node: Node, scale: Coordinates) -> float | None:
+def _read_coordinate(page: Page, node: Node, coordinates: Coordinates) -> float | None:
     text = page.text(node, "a coordinate", "12.5 m")
     if text is None or not isinstance(node, Scalar):
         return None
-    bare = parse_number(text)
-    if bare is not None and scale is not None:
-        return bare * scale
-    if bare is not None:
-        help_text = f"Write {text} m, or once for the whole file: coordinates: in meters"
-        page.report(node, "This coordinate has no unit.", help_text)
-        return None
+    number = parse_number(text)
+    if number is not None:
+        return coordinates.bare(page, node, number)
     try:
         return parse_quantity(text, LENGTH)
     except PhraseError as error:

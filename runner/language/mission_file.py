@@ -85,9 +85,7 @@ def _open_named(page: Page, node: Node | None, example: str) -> Page | None:
 
 
 def _read_rules(fields: Fields) -> dict[str, RetryRule]:
-    rules = (read_rule(fields.page, key, node) for key, node in fields.pairs("retry rules"))
-    keys = [key.text for key, _ in fields.pairs("retry rules")]
-    return dict(zip(keys, rules, strict=True))
+    return {key.text: read_rule(fields.page, key, node) for key, node in fields.pairs("retry rules")}
 
 
 def _read_limits(fields: Fields) -> Limits:

@@ -74,7 +74,7 @@ def parse(text: str, report: Report) -> Node | None:
     try:
         return _Builder(report).build(yaml.parse(text, Loader=loader))
     except yaml.YAMLError as error:
-        report_syntax(error, report)
+        report_syntax(error, text, report)
         return None
 
 

@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 import re
 
+from runner.language.diagnostics import nearest, quoted
 from runner.language.mission import Recovery, RecoveryKind, Rest
 from runner.language.quantities import ANGLE, DURATION, LENGTH, Amount, PhraseError, parse_clock
 
@@ -76,10 +77,10 @@ def parse_recovery(text: str) -> Recovery:
     amount = RECOVERY_AMOUNTS[kind]
     if amount is None:
         if match.group(2) is not None:
-            raise PhraseError(*match.span(2), f"Nothing follows {word}.", f"Write {word}.")
+            raise PhraseError(*match.span(2), f"Nothing follows {quoted(word)}.", f"Write {word} alone.")
         return Recovery(kind)
     if match.group(2) is None:
-        sentence = f"{word} needs {amount.measure.name}."
+        sentence = f"{quoted(word)} needs {amount.measure.name}."
         raise PhraseError(0, len(text), sentence, f"Write for example {_RECOVERY_FORMS[kind]}.")
     return Recovery(kind, _part(match, 2, amount))
 
@@ -134,8 +135,6 @@ def _shifted(error: PhraseError, offset: int) -> PhraseError:
 
 
 def _unknown_recovery(word: str) -> PhraseError:
-    from runner.language.diagnostics import nearest, quoted
-
     forms = {kind.value: form for kind, form in _RECOVERY_FORMS.items()}
     sentence = f"There is no recovery called {quoted(word)}."
     return PhraseError(

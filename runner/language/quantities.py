@@ -11,7 +11,7 @@ import math
 import re
 from dataclasses import dataclass, field
 
-from runner.language.diagnostics import shown
+from runner.language.diagnostics import quoted, shown
 
 
 class PhraseError(ValueError):
@@ -164,7 +164,7 @@ def _not_a_quantity(text: str, measure: Measure) -> PhraseError:
         sign, whole, fraction, unit = miswritten.groups()
         number = f"{sign}{whole or '0'}.{fraction}"
         right = f"{number} {unit}" if unit in measure.units else f"{number} {next(iter(measure.units))}"
-        return PhraseError(0, len(text), "A decimal point stands between two digits.", f"Write {right}.")
+        return PhraseError(0, len(text), "A decimal is written with a point between digits.", f"Write {right}.")
     sentence = f"This is not {measure.name}: a number and a unit are meant."
     return PhraseError(0, len(text), sentence, f"Write for example {_choices('5', measure)}.")
 
@@ -172,8 +172,10 @@ def _not_a_quantity(text: str, measure: Measure) -> PhraseError:
 def _wrong_unit(number: str, unit: str, start: int, end: int, measure: Measure) -> PhraseError:
     right = _MISSPELLED.get(unit, _MISSPELLED.get(unit.lower(), unit.lower()))
     if right in measure.units:
-        return PhraseError(start, end, "This unit is written otherwise.", f"Write {number} {right}.")
-    return PhraseError(start, end, f"This is not a unit of {_bare(measure)}.", f"Write {_choices(number, measure)}.")
+        return PhraseError(start, end, f"There is no unit {quoted(unit)}.", f"Write {number} {right}.")
+    return PhraseError(
+        start, end, f"{quoted(unit)} is not a unit of {_bare(measure)}.", f"Write {_choices(number, measure)}."
+    )
 
 
 def _bare(measure: Measure) -> str:

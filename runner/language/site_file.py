@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass
 
 from runner.language.diagnostics import quoted
@@ -55,7 +56,7 @@ class Plan:
     """What the readers of a site's lists need to know of the whole."""
 
     page: Page
-    scale: Coordinates
+    coordinates: Coordinates
     thickness: float
     width: float
     height: float
@@ -120,7 +121,7 @@ def _read_wall(plan: Plan, node: Node) -> Wall | None:
 
 
 def _wall_along(plan: Plan, node: Node, thickness: float) -> Wall | None:
-    points = read_points(plan.page, node, plan.scale, 2, "a wall")
+    points = read_points(plan.page, node, plan.coordinates, 2, "a wall")
     plan.check(node, "This wall", points)
     return Wall(points, thickness) if points else None
 
@@ -137,7 +138,7 @@ def _read_solid(plan: Plan, node: Node) -> Solid | None:
     if shape == "rectangle":
         corners = _read_box(plan, value, "A rectangle")
         return Solid(corners) if corners else None
-    corners = read_points(plan.page, value, plan.scale, 3, "a polygon")
+    corners = read_points(plan.page, value, plan.coordinates, 3, "a polygon")
     if corners and polygon_area(corners) == 0.0:
         plan.page.report(value, "This polygon encloses nothing.", "List its corners in order, around the shape.")
     plan.check(value, "This polygon", corners)
@@ -149,6 +150,8 @@ def _one_shape(fields: Fields, shapes: tuple[str, str]) -> str | None:
     there = [shape for shape in fields.mapping.pairs if shape in shapes]
     if len(there) == 1:
         return there[0]
+    if not fields.mistaken.isdisjoint(shapes):
+        return None
     sentence = f"{fields.what.capitalize()} is either {shapes[0]} or {shapes[1]}."
     help_text = f"Write for example {shapes[0]}: {fields.keys[shapes[0]]}"
     fields.page.report(fields.mapping, sentence, help_text)
@@ -157,7 +160,7 @@ def _one_shape(fields: Fields, shapes: tuple[str, str]) -> str | None:
 
 def _read_box(plan: Plan, node: Node, what: str) -> tuple[Point, ...]:
     """The corners of an upright rectangle given by two opposite ones; none after a report."""
-    points = read_points(plan.page, node, plan.scale, 2, what.lower())
+    points = read_points(plan.page, node, plan.coordinates, 2, what.lower())
     if not points:
         return ()
     if len(points) != 2 or points[0][0] == points[1][0] or points[0][1] == points[1][1]:
@@ -172,7 +175,7 @@ def _read_doors(plan: Plan, fields: Fields, taken: set[str]) -> list[Door]:
     doors = []
     for key, node in fields.pairs("doors"):
         door_name = _new_name(plan.page, key, "door", taken)
-        body = mapping(plan.page, node, f"the door {quoted(key.text)}", SITE_KEYS["doors"][11:-1])
+        body = mapping(plan.page, node, f"the door {quoted(key.text)}", "{from: [4 m, 14 m], to: [5.2 m, 14 m]}")
         if body is not None:
             doors.append(_read_door(plan, door_name, body))
     return doors
@@ -181,19 +184,21 @@ def _read_doors(plan: Plan, fields: Fields, taken: set[str]) -> list[Door]:
 def _read_door(plan: Plan, door_name: str, body: Mapping) -> Door:
     fields = Fields(plan.page, body, "a door", DOOR_KEYS)
     start, end = _read_end(plan, fields, "from"), _read_end(plan, fields, "to")
-    width = ((start[0] - end[0]) ** 2 + (start[1] - end[1]) ** 2) ** 0.5
-    if not plan.page.reading.problems and not DOOR_LEAST <= width <= DOOR_MOST:
-        sentence = f"This door is {width:.2g} m wide."
+    hours = read_hours(fields)
+    if start is None or end is None:
+        return Door(door_name, ORIGIN, ORIGIN, plan.thickness, hours)
+    width = math.dist(start, end)
+    if not DOOR_LEAST <= width <= DOOR_MOST:
+        sentence = f"This door is {width:.3g} m wide."
         plan.page.report(body, sentence, f"Doors are {DOOR_LEAST:g} m to {DOOR_MOST:g} m wide; check its two ends.")
-    return Door(door_name, start, end, plan.thickness, read_hours(fields))
+    return Door(door_name, start, end, plan.thickness, hours)
 
 
-def _read_end(plan: Plan, fields: Fields, key: str) -> Point:
+def _read_end(plan: Plan, fields: Fields, key: str) -> Point | None:
     node = fields.need(key)
-    point = None if node is None else read_point(plan.page, node, plan.scale)
-    if node is None or point is None:
-        return ORIGIN
-    plan.check(node, "This end of the door", (point,))
+    point = None if node is None else read_point(plan.page, node, plan.coordinates)
+    if node is not None and point is not None:
+        plan.check(node, "This end of the door", (point,))
     return point
 
 
@@ -216,7 +221,7 @@ def _read_places(plan: Plan, fields: Fields, taken: set[str]) -> list[Place]:
 
 def _read_pose(plan: Plan, fields: Fields) -> Pose:
     node = fields.need("at")
-    point = None if node is None else read_point(plan.page, node, plan.scale)
+    point = None if node is None else read_point(plan.page, node, plan.coordinates)
     if node is not None and point is not None:
         plan.check(node, "This place", (point,))
     x, y = point or ORIGIN

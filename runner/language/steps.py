@@ -75,7 +75,7 @@ def _read_step(scope: Scope, node: Node) -> Step | None:
 
 def _report_no_step(page: Page, node: Node) -> None:
     if isinstance(node, Scalar) and node.text in _VERBS:
-        page.report(node, f"This step does not say what to {node.text}.", f"Write for example {_EXAMPLES[node.text]}.")
+        page.report(node, f"{quoted(node.text)} alone is not a step.", f"Write for example {_EXAMPLES[node.text]}.")
     else:
         page.report(node, "This is not a step.", f"Write for example {_EXAMPLES['go']}.")
 
@@ -133,9 +133,10 @@ def _read_otherwise(scope: Scope, node: Node | None) -> Otherwise | tuple[Step, 
     if isinstance(node, Mapping):
         scope.page.report(node, "What follows a failed leg is a word or a list of steps.", help_text)
         return None
-    word = next((word for word in Otherwise if word.value == node.text), None)
-    if word is None:
-        scope.page.report(node, f"{quoted(node.text)} does not say what follows a failed leg.", help_text)
+    text = scope.page.text(node, "what follows a failed leg", GO_KEYS["otherwise"])
+    word = None if text is None else _OTHERWISE_WORDS.get(text)
+    if text is not None and word is None:
+        scope.page.report(node, f"{quoted(text)} does not say what follows a failed leg.", help_text)
     return word
 
 
@@ -189,4 +190,5 @@ _EXAMPLES = {
     "wait": "wait: 2 min",
     "repeat": "repeat: {times: 3, steps: [go: ward east]}",
 }
+_OTHERWISE_WORDS = {word.value: word for word in Otherwise}
 _LISTED_VERBS = "go, visit, wait or repeat"

@@ -5,6 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from runner.language.decoding import Report
+from runner.language.diagnostics import source_lines
 
 # Part of the parser's problem or context, whether the beginning (context) is the better place to show, the sentence
 # and the help. The first row that fits is taken. The wordings are those of libyaml and of PyYAML's own parser.
@@ -40,7 +41,7 @@ _WORDINGS: tuple[tuple[str, bool, str, str], ...] = (
         "parsing a block collection",
         False,
         "This line does not fit the list above it.",
-        "Begin it with a dash, or give it another indentation.",
+        "Begin it with a dash, or indent it like the keys above it.",
     ),
     (
         "block sequence entries are not allowed",
@@ -49,12 +50,7 @@ _WORDINGS: tuple[tuple[str, bool, str, str], ...] = (
         "Begin the dash on a line of its own, below the key.",
     ),
     ("could not find expected ':'", True, "There is no colon after this key.", "Write key: value."),
-    (
-        "cannot start any token",
-        False,
-        "This character cannot begin a value.",
-        "Indent with spaces, not with tabs, or put the value in quotes.",
-    ),
+    ("cannot start any token", False, "A value cannot begin with this character.", "Put the value in quotes."),
     ("unknown escape", False, "There is no such escape.", "Use single quotes, or write the backslash twice."),
     ("maximum nesting", False, "Here lists and mappings are nested too deep.", "Write it flatter."),
     (
@@ -64,16 +60,23 @@ _WORDINGS: tuple[tuple[str, bool, str, str], ...] = (
         "Give it the same indentation as the lines it belongs to.",
     ),
 )
+_TAB = ("", False, "A line cannot be indented with a tab.", "Use spaces.")
 _OTHER = ("", False, "This is not well-formed YAML.", "Compare it with an example mission.")
 
 
-def report_syntax(error: Exception, report: Report) -> None:
-    """Reports one error of the parser at the place where a person would look."""
+def report_syntax(error: Exception, text: str, report: Report) -> None:
+    """Reports one error of the parser in `text` at the place where a person would look."""
     place: Any = getattr(error, "problem_mark", None)
     context: Any = getattr(error, "context_mark", None)
     said = f"{getattr(error, 'context', '')} {getattr(error, 'problem', '')}"
     fitting = (row for row in _WORDINGS if row[0] in said)
-    _, at_beginning, sentence, help_text = next(fitting, _OTHER)
+    row = _TAB if "any token" in said and _character_at(text, place) == "\t" else next(fitting, _OTHER)
+    _, at_beginning, sentence, help_text = row
     chosen = context if at_beginning and context is not None else place
     line, column = (chosen.line, chosen.column) if chosen is not None else (0, 0)
     report(line, column, 1, sentence, help_text)
+
+
+def _character_at(text: str, place: Any) -> str:
+    lines = source_lines(text)
+    return lines[place.line][place.column : place.column + 1] if place is not None and place.line < len(lines) else ""
