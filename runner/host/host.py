@@ -65,13 +65,17 @@ GOAL_EVENTS: dict[GoalStatus, Event] = {
 
 @dataclass(slots=True)
 class Host:
-    """One run, from begin to end. `pace` is virtual seconds per wall second, None for as fast as it goes."""
+    """One run, from begin to end. `pace` is virtual seconds per wall second, None for as fast as it goes.
+
+    `after_turn` is called in the host's own thread after each turn.
+    """
 
     machine: Machine
     backend: Backend
     journal: JournalWriter
     board: Board
     pace: float | None = None
+    after_turn: Callable[[], None] = lambda: None
     state: EngineState = field(init=False)
     _pacer: Pacer = field(init=False)
 
@@ -113,6 +117,7 @@ class Host:
         if clock.virtual:
             self._pacer.hold(self.state.held is not None, clock.now())
         self.board.post_view(view_of(self.machine, self.state, clock.now()))
+        self.after_turn()
 
     def _wishes(self) -> None:
         """Carry out what people ask for; wait for it as long as virtual time is ahead of the pace."""

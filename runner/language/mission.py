@@ -109,8 +109,8 @@ class Wait:
 class Repeat:
     """Do the steps again and again: `times` laps, or until `seconds` have passed or the clock shows `until_clock`.
 
-    Exactly one of the three is set. The bound is looked at before each lap, never inside one. `until_clock` means
-    the first time the clock shows that time after the loop was entered.
+    Exactly one of the three is set. The bound is looked at before each lap but the first, never inside one.
+    `until_clock` means the first time the clock shows that time after the loop was entered.
     """
 
     mark: Mark

@@ -48,11 +48,19 @@ HELD = Fragment(
 
 
 def _loop(name: str, test: Test) -> Fragment:
-    """A loop looks at its bound before each lap."""
+    """A loop looks at its bound before each lap but the first: a bound that leaves no room for a lap is refused.
+
+    So going in leads straight to a step, and loops within loops need no time to pass at their heads.
+    """
     return Fragment(
         name,
         (
-            State("enter", (Row(Event.AT_ONCE, HEAD),), (Action(Verb.ENTER_LOOP),)),
+            State(
+                "enter",
+                (Row(Event.AT_ONCE, Exit.BODY, (Action(Verb.COUNT_LAP),)),),
+                (Action(Verb.ENTER_LOOP),),
+                resume=HEAD,
+            ),
             State(
                 "next lap",
                 (
