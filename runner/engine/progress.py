@@ -64,5 +64,7 @@ def _follow(progress: Progress, seen: Seen) -> Progress:
 
 
 def _swaying(progress: Progress, seen: Seen, otherwise: Event | None) -> Event | None:
+    if progress.last is None:
+        return otherwise
     driven = seen.driven - progress.driven_at_best
     return Event.SWAYING if driven > SWAY_FACTOR * progress.longest + SWAY_MARGIN_M else otherwise

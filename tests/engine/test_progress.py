@@ -72,3 +72,7 @@ def test_shuttling_between_two_routes_is_swaying() -> None:
 def test_driving_back_and_forth_along_one_route_is_a_stall() -> None:
     there_and_back = [seen(t / 4, 5.0 - 0.1 * (t % 8 if t % 16 < 8 else 8 - t % 8) / 4, t * 0.1) for t in range(1, 60)]
     assert (12.0, Event.STALLED) in [(stamp, event) for stamp, event in follow(*there_and_back)][:1]
+
+
+def test_what_was_driven_before_there_is_a_route_is_no_swaying() -> None:
+    assert follow(seen(0.25, None, driven=50.0), seen(0.5, 8.0, driven=50.0)) == []
