@@ -170,7 +170,7 @@ def wall_dots(site: Site, floor: Floor, scale: Scale) -> NDArray[np.bool_]:
     """True for each dot that is solid.
 
     A dot that is at least half covered is; and so is each one that the middle line of a wall, or the edge of a solid,
-    runs through, so that a wall thinner than a dot is still one unbroken line.
+    runs through, so that a wall thinner than a dot is still one unbroken line, but for its doors.
     """
     dots = _covered(floor, scale) >= 0.5
     lines = [wall.points for wall in site.walls] + [(*block.corners, block.corners[0]) for block in site.solids]
@@ -179,6 +179,10 @@ def wall_dots(site: Site, floor: Floor, scale: Scale) -> NDArray[np.bool_]:
             row, column = scale.dot(point)
             if 0 <= row < dots.shape[0] and 0 <= column < dots.shape[1] and _solid_near(floor, point):
                 dots[row, column] = True
+    for door in site.doors:
+        for row, column in _stroke((door.start, door.end), scale, inset=0.3):
+            if 0 <= row < dots.shape[0] and 0 <= column < dots.shape[1]:
+                dots[row, column] = False
     return dots
 
 

@@ -57,18 +57,19 @@ def _current_block(note: StepNote, view: View, width: int, glyphs: Glyphs) -> li
         for number, line in enumerate(lines)
     ]
     margin = " " * (_MARK + min(indent, 2))
-    details = [((cut(margin + line, width, glyphs.more), Ink.STRONG),) for line in _details(view)]
+    details = [((cut(margin + line, width, glyphs.more), Ink.STRONG),) for line in _details(view, width - len(margin))]
     return [*steps, *details, *_time_bar(view, margin, width, glyphs)]
 
 
-def _details(view: View) -> list[str]:
-    """Laps, tries and recoveries, as far as there is anything to say."""
+def _details(view: View, width: int) -> list[str]:
+    """Laps, tries and recoveries, as far as there is anything to say, on as few lines as they fit."""
     counts = []
     if view.laps:
         counts.append(f"lap {', '.join(str(lap) for lap in view.laps)}")
     if view.tries_at_most:
         counts.append(f"try {view.tries} of {view.tries_at_most}")
-    lines = [", ".join(counts)] if counts else []
+    joined = ", ".join(counts)
+    lines = ([joined] if len(joined) <= width else counts) if counts else []
     if view.recoveries:
         most = f" of {view.recoveries_at_most}" if view.recoveries_at_most else ""
         lines.append(f"recovery {view.recoveries}{most}")

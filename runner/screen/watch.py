@@ -154,8 +154,10 @@ class WatchApp(App[None]):
 
     def _said(self) -> str:
         """What stands in for the advice: news too old to trust, or the answer to the last key."""
+        if self._ended:
+            return ""
         old = time.monotonic() - self._changed_at
-        if old >= OLD_AFTER_S and not self._ended and self._view is not None:
+        if old >= OLD_AFTER_S and self._view is not None:
             return f"OLD: no news for {old:.0f} s"
         return self._remark if time.monotonic() < self._remark_until else ""
 

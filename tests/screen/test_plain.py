@@ -1,0 +1,86 @@
+"""The run as plain lines."""
+
+from __future__ import annotations
+
+import io
+import subprocess
+import sys
+from dataclasses import replace
+
+from runner.host.view import FeedLine, Weight
+from runner.screen.plain import PlainPrinter
+from tests.screen.scripted import ENDED, FEED, MOVING, driving
+
+
+def _printed(lines: list[FeedLine], every: float = 60.0) -> str:
+    stream = io.StringIO()
+    PlainPrinter(stream, every).show(lines, None)
+    return stream.getvalue()
+
+
+def test_a_feed_line_is_its_time_and_its_text() -> None:
+    assert _printed([FEED[0]]) == "03:10:40  Began lap 2 of repeat until 05:30.\n"
+
+
+def test_what_is_not_ascii_is_spelled_with_ascii() -> None:
+    line = FeedLine(0.0, "03:00:00", Weight.PLAIN, "Küche \u2192 Büro \u2014 2 \u00d7 90 \u2026 \u6771")
+    assert _printed([line]) == "03:00:00  Kuche -> Buro - 2 x 90 ... ?\n"
+
+
+def test_a_robot_cannot_steer_the_terminal_or_forge_a_line() -> None:
+    line = FeedLine(0.0, "03:00:00", Weight.TROUBLE, "failed:\x1b[2J\x9b1mdone\n04:00:00  all is well")
+    printed = _printed([line])
+    assert printed.count("\n") == 1
+    assert "\x1b" not in printed
+    assert "\x9b" not in printed
+
+
+def test_progress_is_told_where_the_feed_was_silent_for_a_minute_of_the_run() -> None:
+    stream = io.StringIO()
+    printer = PlainPrinter(stream, every=10.0)
+    printer.show(FEED, None)
+    for view in driving():
+        printer.show([], view)
+    lines = stream.getvalue().splitlines()[len(FEED) :]
+    stamps = [line[:8] for line in lines]
+    assert stamps == ["03:12:10", "03:12:20", "03:12:30"]
+    assert lines[0] == (
+        "03:12:10  moving: driving to laboratory; 24 m to laboratory; leg 0:10 of 4:00; battery 83 %; "
+        "9 legs arrived, 1 incident"
+    )
+
+
+def test_no_progress_is_told_of_a_run_that_has_ended() -> None:
+    stream = io.StringIO()
+    PlainPrinter(stream).show([], ENDED)
+    assert stream.getvalue() == ""
+
+
+def test_a_closed_stream_is_no_error() -> None:
+    stream = io.StringIO()
+    stream.close()
+    printer = PlainPrinter(stream)
+    printer.show(FEED, MOVING)
+    printer.show(FEED, replace(MOVING, stamp=9000.0))
+    assert printer.gone
+
+
+def test_a_reader_that_goes_away_stops_the_lines_but_not_the_program() -> None:
+    program = (
+        "import sys\n"
+        "from runner.screen.plain import PlainPrinter\n"
+        "from tests.screen.scripted import FEED\n"
+        "printer = PlainPrinter(sys.stdout)\n"
+        "while not printer.gone:\n"
+        "    printer.show(FEED, None)\n"
+        "sys.exit(7)\n"
+    )
+    with subprocess.Popen(
+        [sys.executable, "-c", program], stdout=subprocess.PIPE, stderr=subprocess.PIPE, text=True
+    ) as process:
+        assert process.stdout is not None
+        assert process.stderr is not None
+        assert process.stdout.readline() == "03:10:40  Began lap 2 of repeat until 05:30.\n"
+        process.stdout.close()
+        assert process.stderr.read() == ""
+        assert process.wait(timeout=20) == 7

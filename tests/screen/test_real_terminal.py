@@ -1,0 +1,149 @@
+"""The screen as a real process on a real pseudo-terminal, read by a terminal emulator."""
+
+from __future__ import annotations
+
+import fcntl
+import os
+import pty
+import re
+import select
+import signal
+import struct
+import subprocess
+import sys
+import termios
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+
+import pyte
+import pytest
+
+SGR_COLORS = re.compile(rb"\x1b\[([0-9;]*)m")
+
+
+class Terminal:
+    """A pseudo-terminal of a size, with what was written to it and how it looks now."""
+
+    def __init__(self, columns: int, rows: int) -> None:
+        self.here, self.there = pty.openpty()
+        fcntl.ioctl(self.there, termios.TIOCSWINSZ, struct.pack("HHHH", rows, columns, 0, 0))
+        self._screen = pyte.Screen(columns, rows)
+        self._stream = pyte.ByteStream(self._screen)
+        self.written = b""
+
+    def text(self) -> str:
+        return "\n".join(self._screen.display)
+
+    def type(self, keys: bytes) -> None:
+        os.write(self.here, keys)
+
+    def read_until(self, wanted: str, seconds: float = 15.0) -> str:
+        """Read until the text is on the screen. Fails with what is there instead."""
+        end = time.monotonic() + seconds
+        while wanted not in self.text():
+            assert time.monotonic() < end, f"{wanted!r} did not appear:\n{self.text()}"
+            self.read(0.1)
+        return self.text()
+
+    def read(self, seconds: float) -> None:
+        if select.select([self.here], [], [], seconds)[0]:
+            try:
+                data = os.read(self.here, 65536)
+            except OSError:  # the other side has closed
+                return
+            self.written += data
+            # pyte takes the private answers that are asked for here as text
+            self._stream.feed(re.sub(rb"\x1b\[[<>=?][0-9;]*[a-zA-Z$]+p?", b"", data))
+
+
+@contextmanager
+def _watching(
+    scene: str, columns: int = 80, rows: int = 24, **environment: str
+) -> Iterator[tuple[Terminal, subprocess.Popen[bytes]]]:
+    terminal = Terminal(columns, rows)
+    kept = {name: value for name, value in os.environ.items() if name not in ("NO_COLOR", "TRUNDLE_ASCII", "LC_ALL")}
+    process = subprocess.Popen(
+        [sys.executable, "-m", "tests.screen.scripted", scene],
+        stdin=terminal.there,
+        stdout=terminal.there,
+        stderr=terminal.there,
+        env={**kept, "TERM": "xterm-256color", "LANG": "C.UTF-8", "LC_CTYPE": "C.UTF-8", **environment},
+        start_new_session=True,
+    )
+    os.close(terminal.there)
+    try:
+        yield terminal, process
+    finally:
+        if process.poll() is None:
+            process.send_signal(signal.SIGKILL)
+        process.wait(timeout=10)
+        os.close(terminal.here)
+
+
+def _ended(terminal: Terminal, process: subprocess.Popen[bytes]) -> int:
+    end = time.monotonic() + 10
+    while process.poll() is None and time.monotonic() < end:
+        terminal.read(0.1)
+    return process.wait(timeout=1)
+
+
+def test_a_run_is_watched_held_aborted_and_left_by_keys() -> None:
+    with _watching("driving") as (terminal, process):
+        terminal.read_until("M O V I N G")
+        terminal.read_until("go to laboratory")
+        terminal.type(b"h")
+        terminal.read_until("H E L D")
+        terminal.type(b"r")
+        terminal.read_until("M O V I N G")
+        terminal.type(b"\x03")
+        terminal.read_until("Abort the run?")
+        terminal.type(b"\x03")
+        terminal.read_until("E N D E D   aborted")
+        terminal.type(b"q")
+        assert _ended(terminal, process) == 0
+
+
+def test_no_color_means_none_at_all() -> None:
+    with _watching("recovering", NO_COLOR="1") as (terminal, process):
+        terminal.read_until("R E C O V E R I N G")
+        terminal.read_until("q  leave")
+        terminal.type(b"qy")
+        assert _ended(terminal, process) == 0
+    codes = {code for group in SGR_COLORS.findall(terminal.written) for code in group.split(b";")}
+    assert codes <= {b"", b"0", b"1", b"2", b"4", b"7", b"39", b"49"}
+    assert b"7" in codes
+
+
+def test_with_color_only_the_terminals_own_sixteen_are_used() -> None:
+    with _watching("recovering") as (terminal, process):
+        terminal.read_until("q  leave")
+        terminal.type(b"qy")
+        assert _ended(terminal, process) == 0
+    codes = {code for group in SGR_COLORS.findall(terminal.written) for code in group.split(b";")}
+    assert b"43" in codes
+    assert not codes & {b"38", b"48"}
+
+
+@pytest.mark.parametrize("environment", [{"TRUNDLE_ASCII": "1"}, {"LC_ALL": "C"}], ids=["by wish", "by locale"])
+def test_ascii_terminals_get_ascii_only(environment: dict[str, str]) -> None:
+    with _watching("moving", **environment) as (terminal, process):
+        text = terminal.read_until("q  leave")
+        assert "laboratory" in text
+        terminal.type(b"qy")
+        assert _ended(terminal, process) == 0
+    assert terminal.written.isascii()
+
+
+def test_at_60_by_20_nothing_essential_is_missing() -> None:
+    with _watching("held", 60, 20) as (terminal, _):
+        text = terminal.read_until("q  leave")
+    for wanted in (
+        "HELD",
+        "to laboratory, 14 m to go",
+        "your turn: r releases",
+        "03:12:22",
+        "try 1 of 3",
+        "r  release",
+    ):
+        assert wanted in text
