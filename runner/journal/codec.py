@@ -38,6 +38,8 @@ CLASSES: Mapping[tuple[str, str], type] = MappingProxyType(_classes())
 
 KEYS: Mapping[type, tuple[str, str]] = MappingProxyType({cls: key for key, cls in CLASSES.items()})
 
+_ENCODE = msgspec.json.Encoder().encode
+
 _DECODERS: Mapping[tuple[str, str], msgspec.json.Decoder[Any]] = MappingProxyType(
     {key: msgspec.json.Decoder(cls) for key, cls in CLASSES.items()}
 )
@@ -49,12 +51,12 @@ def encode(value: Value) -> tuple[str, str, str]:
     The body is read back and written again: an integer in a float field becomes a float, and a value that would not
     read back (an infinite stamp) is a ValueError here instead of a hole in the record.
     """
-    kind, name = KEYS[type(value)]
+    key = KEYS[type(value)]
     try:
-        body = msgspec.json.encode(_DECODERS[kind, name].decode(msgspec.json.encode(value)))
+        body = _ENCODE(_DECODERS[key].decode(_ENCODE(value)))
     except msgspec.ValidationError as error:
         raise ValueError(f"{value!r} cannot be recorded: {error}") from error
-    return kind, name, body.decode()
+    return (*key, body.decode())
 
 
 def decode(kind: str, name: str, body: str) -> Value:

@@ -16,8 +16,7 @@ from __future__ import annotations
 import fcntl
 import os
 import sqlite3
-from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
+from collections.abc import Sequence
 from datetime import datetime
 from pathlib import Path
 from types import TracebackType
@@ -38,6 +37,10 @@ TRACK_SECONDS_AT_MOST = 10.0
 
 CHECKPOINT_PAGES = 1000
 """Pages of 4 KiB in the write-ahead log before they are moved into the file: a pause of some 20 ms every 4 MB."""
+
+LOG_BYTES_MOST = 16 * 2**20
+"""A log that grew beyond this while a reader held it is cut back. Far above an ordinary one: to cut and grow the file
+at every checkpoint would cost a tenth of the speed."""
 
 BUSY_S = 5.0
 
@@ -76,8 +79,10 @@ class JournalWriter:
         try:
             if path.exists():
                 raise JournalError(f"{folder} holds the record of a run already. Start the run in a folder of its own.")
-            with _in_words(path):
-                connection = _new_file(path, header, sources, machine_json)
+            connection = _new_file(path, header, sources, machine_json)
+        except sqlite3.Error as error:
+            os.close(lock)
+            raise _said(error, path) from error
         except BaseException:
             os.close(lock)
             raise
@@ -116,10 +121,12 @@ class JournalWriter:
             return
         try:
             self._commit([])
-            with _in_words(self.path):
-                closing = [("closed", datetime.now().astimezone().isoformat()), ("trouble", trouble)]
+            closing = [("closed", datetime.now().astimezone().isoformat()), ("trouble", trouble)]
+            with _Transaction(self._connection):
                 self._connection.executemany("INSERT OR REPLACE INTO run VALUES (?, ?)", closing)
-                _into_one_file(self._connection)
+            _into_one_file(self._connection)
+        except sqlite3.Error as error:
+            raise _said(error, self.path) from error
         finally:
             self._closed = True
             self._connection.close()
@@ -170,9 +177,14 @@ class JournalWriter:
     def _commit(self, entries: Sequence[Row]) -> None:
         if not entries and not self._waiting:
             return
-        with _in_words(self.path), _transaction(self._connection):
-            self._connection.executemany(_INSERT_TRACK, self._waiting)
-            self._connection.executemany(_INSERT_ENTRY, entries)
+        connection = self._connection
+        try:
+            with _Transaction(connection):
+                if self._waiting:
+                    connection.executemany(_INSERT_TRACK, self._waiting)
+                connection.executemany(_INSERT_ENTRY, entries)
+        except sqlite3.Error as error:
+            raise _said(error, self.path) from error
         self._waiting.clear()
 
 
@@ -212,7 +224,7 @@ def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_
         # The marks go into the file itself before the write-ahead log exists, so that any tool finds them there.
         connection.execute(f"PRAGMA application_id = {schema.APPLICATION_ID}")
         connection.execute(f"PRAGMA user_version = {schema.FORMAT}")
-        with _transaction(connection):
+        with _Transaction(connection):
             for table in schema.TABLES:
                 connection.execute(table)
             connection.executemany("INSERT INTO run VALUES (?, ?)", run_header.to_rows(header))
@@ -222,7 +234,7 @@ def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_
         connection.execute("PRAGMA journal_mode = WAL")
         connection.execute("PRAGMA synchronous = FULL")
         connection.execute(f"PRAGMA wal_autocheckpoint = {CHECKPOINT_PAGES}")
-        connection.execute(f"PRAGMA journal_size_limit = {CHECKPOINT_PAGES * 4096}")
+        connection.execute(f"PRAGMA journal_size_limit = {LOG_BYTES_MOST}")
     except BaseException:
         connection.close()
         raise
@@ -238,25 +250,30 @@ def _into_one_file(connection: sqlite3.Connection) -> None:
         connection.execute("PRAGMA wal_checkpoint(PASSIVE)")
 
 
-@contextmanager
-def _transaction(connection: sqlite3.Connection) -> Iterator[None]:
-    connection.execute("BEGIN IMMEDIATE")
-    try:
-        yield
-        connection.execute("COMMIT")
-    except BaseException:
-        if connection.in_transaction:
-            connection.execute("ROLLBACK")
-        raise
+class _Transaction:
+    """A transaction as a `with`; not a generator, because this is what every entry waits for."""
+
+    __slots__ = ("_connection",)
+
+    def __init__(self, connection: sqlite3.Connection) -> None:
+        self._connection = connection
+
+    def __enter__(self) -> None:
+        self._connection.execute("BEGIN IMMEDIATE")
+
+    def __exit__(
+        self, kind: type[BaseException] | None, error: BaseException | None, trace: TracebackType | None
+    ) -> None:
+        try:
+            if kind is None:
+                self._connection.execute("COMMIT")
+        finally:
+            if self._connection.in_transaction:
+                self._connection.execute("ROLLBACK")
 
 
-@contextmanager
-def _in_words(path: Path) -> Iterator[None]:
-    """SQLite's errors as a JournalError; wrong use of it is a fault of ours and stays what it is."""
-    try:
-        yield
-    except sqlite3.ProgrammingError:
-        raise
-    except sqlite3.Error as error:
-        message = f"The record {path} cannot be written: {cause(error)}. What was recorded before is safe."
-        raise JournalError(message) from error
+def _said(error: sqlite3.Error, path: Path) -> Exception:
+    """SQLite's error as a JournalError; wrong use of it is a fault of ours and stays what it is."""
+    if isinstance(error, sqlite3.ProgrammingError):
+        return error
+    return JournalError(f"The record {path} cannot be written: {cause(error)}. What was recorded before is safe.")
