@@ -88,9 +88,9 @@ def test_a_reader_sees_each_entry_once_it_is_written_and_may_stay_open_meanwhile
         for number in range(1, 6):
             writer.write(float(number), [Tick(float(number))])
             assert [entry.seq for entry in record.entries(after=number - 1)] == [number]
-        assert record.status is Status.RUNNING
+        before = record.status
         writer.write(6.0, [Ended(Ending.COMPLETED, "all steps done")])
-        assert record.status is Status.ENDED
+        assert (before, record.status) == (Status.RUNNING, Status.ENDED)
 
 
 def test_a_closed_record_can_be_read_where_nothing_may_be_written(folder: Path) -> None:

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import sqlite3
 from pathlib import Path
+from typing import Any
 
 import pytest
 
@@ -21,7 +22,7 @@ def writer(tmp_path: Path) -> JournalWriter:
     return JournalWriter.create(tmp_path / "run", header(), SOURCES, MACHINE)
 
 
-def rows_in(writer: JournalWriter, table: str) -> list[tuple[object, ...]]:
+def rows_in(writer: JournalWriter, table: str) -> list[tuple[Any, ...]]:
     """What another program finds in the file at this moment."""
     with sqlite3.connect(f"file:{writer.path}?mode=ro", uri=True) as connection:
         return connection.execute(f"SELECT * FROM {table} ORDER BY seq").fetchall()  # noqa: S608

@@ -189,7 +189,7 @@ def command(*words: str) -> int:
     for module in (report_command, runs_command):
         module.add_parser(subparsers)
     arguments = parser.parse_args(words)
-    return {"report": report_command, "runs": runs_command}[arguments.command].run(arguments)
+    return report_command.run(arguments) if arguments.command == "report" else runs_command.run(arguments)
 
 
 def test_report_shows_the_latest_run(runs: Path, capsys: pytest.CaptureFixture[str]) -> None:
