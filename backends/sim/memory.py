@@ -22,7 +22,7 @@ TRUST_M = 5.0
 """Returns from farther away are not remembered: a small error in heading would put them in the wrong place."""
 TOLERANCE_M = 0.1
 """A return this near a mapped cell (and 1 % of its range more, and four deviations of noise at least) is the map's."""
-LONGEST_MEMORY_S = 12.0
+LONGEST_MEMORY_S = 30.0
 """Evidence is capped at so many seconds of scans: what stood long is forgotten after this long in plain view."""
 PAINT_M = 0.35
 """How far beyond the circumscribed radius remembered cells show in the distance field."""

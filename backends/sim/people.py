@@ -13,11 +13,12 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels.crowd import step
 from backends.sim.kernels.errands import NOBODY, in_sight, next_due, pulled_straight
+from backends.sim.kernels.grid import nearest_finite
 from backends.sim.outline import Outline
 from backends.sim.world import World
 from runner.site.floor import cell_of
 from runner.site.routes import find_route, weight_from_clearance
-from runner.site.values import Point, Site, Walkers
+from runner.site.values import CELL_M, Point, Site, Walkers
 
 RADIUS_LEAST_M, RADIUS_MOST_M = 0.25, 0.35
 """Body radius, drawn evenly: 2r of 0.5 to 0.7 m (Helbing, Farkas and Vicsek, Nature 407, 2000)."""
@@ -34,6 +35,10 @@ PASS_M, ARRIVE_M = 0.5, 0.2
 PATIENCE_S = 15.0
 """After this long on the way to one bend a person looks for another way, or gives up."""
 START_OFF_ROBOT_M = 1.0
+ROBOT_BERTH_M = 0.6
+"""Somebody stuck looks for a way that keeps this far from the robot's middle."""
+START_REACH_CELLS = 14
+"""How far off their own cell a route may begin for somebody who stands in a tight spot."""
 
 
 class People:
@@ -52,6 +57,7 @@ class People:
         self._routes: dict[tuple[int, int, frozenset[str]], NDArray[np.float64] | None] = {}
         self._ways: list[NDArray[np.float64]] = [np.empty((0, 2))] * count
         self._at = [self._draw(between) for between in self._between]
+        self._from = list(self._at)
         self.bodies = np.zeros((count, 3))
         self.bodies[:, 2] = generator.uniform(RADIUS_LEAST_M, RADIUS_MOST_M, count)
         self.velocity = np.zeros((count, 2))
@@ -71,7 +77,7 @@ class People:
         )  # fmt: skip
         one = next_due(0, self.bodies, self._target, self._wished, self._wake, now)
         while one != NOBODY:
-            self._decide(one, now)
+            self._decide(one, now, robot)
             one = next_due(one + 1, self.bodies, self._target, self._wished, self._wake, now)
 
     def _draw(self, places: Sequence[int]) -> int:
@@ -86,11 +92,11 @@ class People:
             self._at[one] = self._draw(self._between[one])
         self.bodies[one, :2] = spot
 
-    def _decide(self, one: int, now: float) -> None:
+    def _decide(self, one: int, now: float, robot: NDArray[np.float64]) -> None:
         if self._wished[one] == 0.0:
             self._set_off(one, now)
         elif now >= self._wake[one]:
-            self._look_again(one, now)
+            self._look_again(one, now, robot)
         elif len(self._ways[one]):
             self._next_bend(one, now)
         else:
@@ -104,13 +110,17 @@ class People:
             self._stay(one, now)
             return
         goal = self._draw(others)
+        self._from[one] = start
         self._walk(one, goal, self._route_between(start, goal), now)
 
-    def _look_again(self, one: int, now: float) -> None:
-        """Plan from where the person stands; if even that fails, wait."""
-        goal = self._at[one]
+    def _look_again(self, one: int, now: float, robot: NDArray[np.float64]) -> None:
+        """Plan anew from here round the robot; where that leaves no way, turn back."""
         here = (float(self.bodies[one, 0]), float(self.bodies[one, 1]))
-        self._walk(one, goal, self._find(here, self._spots[goal]), now)
+        goal, back = self._at[one], self._from[one]
+        route = self._find(here, self._spots[goal], robot)
+        if route is None:
+            goal, route = back, self._find(here, self._spots[back], robot)
+        self._walk(one, goal, route, now)
 
     def _walk(self, one: int, goal: int, route: NDArray[np.float64] | None, now: float) -> None:
         if route is None:
@@ -154,10 +164,29 @@ class People:
             self._routes[key] = self._find(self._spots[start], self._spots[goal])
         return self._routes[key]
 
-    def _find(self, start: Point, goal: Point) -> NDArray[np.float64] | None:
+    def _find(self, start: Point, goal: Point, robot: NDArray[np.float64] | None = None) -> NDArray[np.float64] | None:
+        """The way over what is there now, doors included; with `robot`, round it."""
         weight = weight_from_clearance(self._world.distance, KEEP_OFF_M, KEEP_OFF_SOFT_M, KEEP_OFF_STRENGTH)
-        route = find_route(weight, cell_of(start), cell_of(goal))
+        if robot is not None:
+            _close_around(weight, float(robot[0]), float(robot[1]))
+        row, column = cell_of(start)
+        first = nearest_finite(weight, row, column, START_REACH_CELLS)
+        route = find_route(weight, first, cell_of(goal))
         return None if route is None else route.points()
+
+
+def _close_around(weight: NDArray[np.float32], x: float, y: float) -> None:
+    """Make a disc around the robot impassable."""
+    row, column = cell_of((x, y))
+    reach = round(ROBOT_BERTH_M / CELL_M)
+    rows = slice(max(row - reach, 0), row + reach + 1)
+    columns = slice(max(column - reach, 0), column + reach + 1)
+    part = weight[rows, columns]
+    off = np.hypot(
+        np.arange(rows.start, rows.start + part.shape[0])[:, None] - row,
+        np.arange(columns.start, columns.start + part.shape[1])[None, :] - column,
+    )
+    part[off <= reach] = np.inf
 
 
 def _places_of(group: Walkers, site: Site) -> Sequence[int]:

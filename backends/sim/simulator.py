@@ -54,6 +54,7 @@ class Simulator:
 
     def __init__(self, setup: Setup) -> None:
         """ValueError, with a sentence, where the robot cannot stand at its start."""
+        self.setup = setup
         streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(3)]
         floor = rasterize(setup.site)
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
+import numpy as np
 from numpy.typing import NDArray
 
 from runner.site.compiled import kernel_compiler
@@ -38,6 +39,20 @@ def nearest_open(field: NDArray[Any], row: int, column: int, least: float, reach
         for c in range(max(column - reach, 0), min(column + reach + 1, field.shape[1])):
             square = (r - row) * (r - row) + (c - column) * (c - column)
             if square < best and field[r, c] >= least:
+                best = square
+                found = (r, c)
+    return found
+
+
+@kernel
+def nearest_finite(weight: NDArray[Any], row: int, column: int, reach: int) -> tuple[int, int]:
+    """As `nearest_open`, for the nearest cell whose weight is not infinite."""
+    best = (reach + 1) * (reach + 1) * 2
+    found = (-1, -1)
+    for r in range(max(row - reach, 0), min(row + reach + 1, weight.shape[0])):
+        for c in range(max(column - reach, 0), min(column + reach + 1, weight.shape[1])):
+            square = (r - row) * (r - row) + (c - column) * (c - column)
+            if square < best and weight[r, c] < np.inf:
                 best = square
                 found = (r, c)
     return found

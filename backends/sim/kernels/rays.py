@@ -12,14 +12,17 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.sim.kernels.grid import CELLS_PER_M
+from backends.sim.kernels import grid
+from backends.sim.kernels.grid import CELLS_PER_M, value_at
 from runner.site.compiled import kernel_compiler
 
-kernel = kernel_compiler(__file__)
+kernel = kernel_compiler(__file__, grid.__file__)
 
 CELL = 0.05
 SLACK = 1.5 * CELL  # a point lies within 0.71 cells of its cell's center, an obstacle within 0.71 of its own
 TURN = 2.0 * math.pi
+GRAZING = math.sin(math.radians(12.0))  # light that meets a wall flatter than this does not come back
+BEFORE_M = 2.0 * CELL
 
 
 @kernel
@@ -55,6 +58,21 @@ def cast(distance: NDArray[Any], x: float, y: float, angle: float, reach: float)
             travelled = max(travelled, side_y)
             row += 2 * up - 1
     return np.inf
+
+
+@kernel
+def grazes(distance: NDArray[Any], x: float, y: float, angle: float, reach: float) -> bool:
+    """Whether a ray of that range meets the wall too flatly for its light to come back.
+
+    The slope of the distance field a little before the hit tells how the wall lies.
+    """
+    along_x, along_y = math.cos(angle), math.sin(angle)
+    before = max(reach - BEFORE_M, 0.0)
+    at_x, at_y = x + before * along_x, y + before * along_y
+    slope_x = value_at(distance, at_x + CELL, at_y) - value_at(distance, at_x - CELL, at_y)
+    slope_y = value_at(distance, at_x, at_y + CELL) - value_at(distance, at_x, at_y - CELL)
+    steepness = math.sqrt(slope_x * slope_x + slope_y * slope_y)
+    return abs(along_x * slope_x + along_y * slope_y) < GRAZING * steepness
 
 
 @kernel
@@ -100,7 +118,9 @@ def scan(
 ) -> None:
     """Fill `ranges` with one scan: beam i points to `first` + i * `step`; infinity where nothing came back."""
     for beam in range(ranges.shape[0]):
-        ranges[beam] = cast(distance, x, y, first + beam * step, reach)
+        angle = first + beam * step
+        met = cast(distance, x, y, angle, reach)
+        ranges[beam] = np.inf if met < np.inf and grazes(distance, x, y, angle, met) else met
     for index in range(people.shape[0]):
         meet_person(ranges, x, y, first, step, people[index], reach)
     for beam in range(ranges.shape[0]):

@@ -1,0 +1,109 @@
+"""A simulated night: how many simulated seconds pass in one of the wall, and where the time of a tick goes.
+
+A scripted drive round the clinic with 20 people about, and the same floor with nothing to do. The parts of a tick are
+timed by a wrapper around each, which itself costs about a microsecond a call; the rate is taken without it.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Iterator
+from datetime import datetime
+from pathlib import Path
+from typing import Any
+
+from backends.contract import Goal, GoalReport, GoalStatus, Setup
+from backends.sim.simulator import TICKS_PER_S, Simulator
+from runner.language.reader import load_robot, load_site
+from runner.site.values import Conditions, Walkers
+from tests.bench.harness import Row
+
+MISSIONS = Path(__file__).parents[2] / "missions"
+BUSY_S, IDLE_S = 1800.0, 3600.0
+ENDS = (GoalStatus.ARRIVED, GoalStatus.NO_ROUTE, GoalStatus.REFUSED, GoalStatus.FAILED, GoalStatus.HALTED)
+STUCK_S = 60.0
+PEOPLE = 20
+
+
+def measure() -> Iterator[Row]:
+    prepare().open()
+    yield Row("first tick of a new simulator", 1e3 * seconds_of(lambda: rounds(prepare(), 0.1)), "ms")
+    for name, people, duration in (("busy", PEOPLE, BUSY_S), ("quiet", 0, BUSY_S)):
+        simulator = prepare(people)
+        spent = seconds_of(lambda: rounds(simulator, duration))  # noqa: B023
+        yield Row(f"{name} rounds", duration / spent, "times real time", goal="over 500" if people else "")
+        yield Row(f"{name} rounds: a tick", 1e6 * spent / (duration * TICKS_PER_S), "us")
+    spent = seconds_of(lambda: idle(prepare(PEOPLE)))
+    yield Row("nothing to do, 20 people", IDLE_S / spent, "times real time")
+    yield from by_part()
+
+
+def by_part() -> Iterator[Row]:
+    """Time of a tick of the busy rounds by part, without what is under a part already counted."""
+    simulator = prepare(PEOPLE)
+    parts: dict[str, float] = {}
+    for name, holder, method in (
+        ("world events", simulator.world, "advance"),
+        ("people", simulator.people, "advance"),
+        ("localization", simulator._localization, "estimate"),
+        ("lidar", simulator._scanner, "look"),
+        ("memory", simulator.memory, "take"),
+        ("planning", simulator.robot._planner, "plan"),
+        ("following", simulator.robot.follower, "steer"),
+        ("supervising", simulator.robot, "think"),
+        ("driving", simulator.body, "advance"),
+        ("telemetry", simulator, "_telemetry"),
+    ):
+        timed(holder, method, name, parts)
+    spent = seconds_of(lambda: rounds(simulator, BUSY_S))
+    parts["supervising"] -= parts["planning"] + parts["following"]
+    parts["the rest"] = spent - sum(parts.values())
+    for name, seconds in parts.items():
+        yield Row(f"busy rounds by part: {name}", 1e6 * seconds / (BUSY_S * TICKS_PER_S), "us a tick")
+
+
+def prepare(people: int = 0) -> Simulator:
+    conditions = Conditions(walkers=(Walkers(people),) if people else ())
+    site = load_site(MISSIONS / "sites/harbour-clinic.yaml")
+    robot = load_robot(MISSIONS / "robots/small-cart.yaml")
+    return Simulator(Setup(site, robot, site.places[0].pose, conditions, 3, datetime(2026, 1, 5, 18, 0)))
+
+
+def rounds(simulator: Simulator, until: float) -> None:
+    """Drive from place to place, over and over; where there is no route or no progress, clear and go to the next."""
+    places = simulator.setup.site.places
+    number = 0
+    while simulator.clock.now() < until:
+        number += 1
+        simulator.clear(number, 3.0)
+        simulator.go(Goal(number, places[number % len(places)].pose, 0.8))
+        leave_at = simulator.clock.now() + STUCK_S
+        while simulator.clock.now() < min(until, leave_at):
+            news = simulator.reports(min(until, leave_at))
+            if any(isinstance(report, GoalReport) and report.status in ENDS for report in news):
+                break
+
+
+def idle(simulator: Simulator) -> None:
+    while simulator.clock.now() < IDLE_S:
+        simulator.reports(IDLE_S)
+
+
+def seconds_of(action: Callable[[], object]) -> float:
+    begun = time.perf_counter()
+    action()
+    return time.perf_counter() - begun
+
+
+def timed(holder: Any, method: str, name: str, parts: dict[str, float]) -> None:
+    """Replace a method of one object by itself with a watch."""
+    original = getattr(holder, method)
+    parts[name] = 0.0
+
+    def watched(*arguments: Any) -> Any:
+        begun = time.perf_counter()
+        result = original(*arguments)
+        parts[name] += time.perf_counter() - begun
+        return result
+
+    setattr(holder, method, watched)
