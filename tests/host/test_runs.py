@@ -122,7 +122,7 @@ from runner.host.launch import RunError
 from tests.host.test_runs import limit_files, order, run, visit, FAR, HOME
 from runner.language.mission import Repeat
 from tests.builders import repeat
-limit_files(200_000)
+limit_files(400_000)
 try:
     run(order(repeat(visit([FAR, HOME]), times=500)), Path(sys.argv[1]))
 except RunError as error:
