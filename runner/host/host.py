@@ -46,6 +46,7 @@ from runner.host.board import Board
 from runner.host.pacing import Pacer
 from runner.host.viewing import clock_text, view_of
 from runner.host.wording import feed_line
+from runner.journal.codec import as_recorded
 from runner.journal.writer import JournalWriter
 from runner.machine.table import Ending, Event, Machine
 
@@ -170,7 +171,8 @@ def _input(report: Report) -> Input:
 
 
 def _seen(report: Telemetry) -> Seen:
-    return Seen(
+    """Telemetry as the record keeps it, so that the engine is told what a replay will tell it."""
+    seen = Seen(
         stamp=report.stamp,
         pose=report.pose,
         spread=report.spread,
@@ -182,6 +184,7 @@ def _seen(report: Telemetry) -> Seen:
         route=report.route,
         obstacles=report.obstacles,
     )
+    return as_recorded(seen)
 
 
 def _go(backend: Backend, command: Go) -> None:

@@ -145,7 +145,7 @@ def _how_ended(incident: Incident) -> str:
     after = f"after {span(incident.seconds)}"
     if incident.recovered:
         return f"by {incident.ended_by}, {after}"
-    return f"by no recovery, {after}: {incident.ended_by}"
+    return f"without the robot getting on, {after} ({incident.ended_by})"
 
 
 def _interventions(summary: Summary) -> list[str]:
@@ -171,7 +171,7 @@ def _totals(totals: Totals) -> list[str]:
     ]
     lines = [
         ("  Legs", ", ".join(f"{count} {word}" for word, count in legs)),
-        ("  Incidents", f"{totals.incidents}, of which {totals.recovered} ended by a recovery"),
+        ("  Incidents", f"{totals.incidents}, of which the robot got out of {totals.recovered} by itself"),
         ("  Interventions", str(totals.interventions)),
         ("  Distance", way(totals.meters)),
         ("  Time", f"{span(totals.seconds)}: " + ", ".join(f"{word} {span(time)}" for word, time in times)),

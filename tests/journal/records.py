@@ -150,7 +150,10 @@ def leg_that_fails() -> list[Moment]:
         (220.0, [RecoveryBegan(2, 3, "replan", 1, 1, 1)]),
         (230.0, [TryFailed(3, 1, 20.0)]),
         (250.0, [RecoveryBegan(2, 3, "replan", 1, 2, 2)]),
-        (330.0, [IncidentEnded(2, 3, False, "the leg failed", 110.0, "route blocked", ("no route in 2 tries",))]),
+        (
+            330.0,
+            [IncidentEnded(2, 3, False, "nothing: the leg failed", 110.0, "route blocked", ("no route in 2 tries",))],
+        ),
         (330.0, [LegEnded(3, 3, "charging bay", Outcome.FAILED, "all 2 tries used", 125.0, 9.5, 2, 2)]),
     ]
 

@@ -88,7 +88,7 @@ def test_an_incident_says_which_recoveries_were_tried_and_which_one_ended_it(tmp
     assert mended.near is not None
     assert mended.near[0] == "ward east"
     assert mended.near[1] == pytest.approx(5.7617, abs=1e-4)  # from (24.26, 12.5) to (30, 12)
-    assert (given_up.recovered, given_up.ended_by) == (False, "the leg failed")
+    assert (given_up.recovered, given_up.ended_by) == (False, "nothing: the leg failed")
     assert [attempt.tries for attempt in given_up.attempts] == [1, 2]
 
 
