@@ -7,7 +7,7 @@ from types import NoneType
 from typing import Any, get_args, get_type_hints
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from runner.engine.values import Begin, Command, GoalNews, Halt, Input, LegEnded, Note, Seen, Tick
@@ -50,6 +50,7 @@ def anything_in(cls: type) -> st.SearchStrategy[Any]:
 
 
 @pytest.mark.parametrize("cls", list(KEYS), ids=lambda cls: cls.__name__)
+@settings(deadline=None)
 @given(data=st.data())
 def test_every_input_command_and_note_reads_back_as_it_was(cls: type, data: st.DataObject) -> None:
     value = data.draw(anything_in(cls))
@@ -92,6 +93,7 @@ def test_points_are_kept_as_little_endian_float32_pairs() -> None:
     assert pack_points(()) == b""
 
 
+@settings(deadline=None)
 @given(st.lists(st.tuples(st.floats(-1e6, 1e6), st.floats(-1e6, 1e6))).map(tuple))
 def test_rounding_for_the_record_is_done_once_and_then_changes_nothing(points: tuple[tuple[float, float], ...]) -> None:
     rounded = as_recorded(seen(1.0, route=points, obstacles=points))
