@@ -20,8 +20,9 @@ class Localization:
     def __init__(self, generator: np.random.Generator, tick: float) -> None:
         self._random = generator
         self._keep = math.exp(-tick / WANDER_S)
-        self._scale = np.array([POSITION_M, POSITION_M, HEADING]) * math.sqrt(1.0 - self._keep**2)
-        self._error = np.zeros(3)
+        renewed = math.sqrt(1.0 - self._keep**2)
+        self._along, self._turned = POSITION_M * renewed, HEADING * renewed
+        self._error = (0.0, 0.0, 0.0)
 
     @property
     def spread(self) -> float:
@@ -30,10 +31,12 @@ class Localization:
 
     def estimate(self, true: Pose) -> Pose:
         """The believed pose one tick on."""
-        self._error = self._keep * self._error + self._scale * self._random.standard_normal(3)
-        x, y, heading = self._error.tolist()
+        keep, (x, y, heading), (a, b, c) = self._keep, self._error, self._random.standard_normal(3).tolist()
+        x, y = keep * x + self._along * a, keep * y + self._along * b
+        heading = keep * heading + self._turned * c
+        self._error = (x, y, heading)
         return Pose(true.x + x, true.y + y, true.heading + heading)
 
     def begin_anew(self) -> None:
         """The robot finds out where it is: the error starts from nothing."""
-        self._error = np.zeros(3)
+        self._error = (0.0, 0.0, 0.0)

@@ -24,7 +24,7 @@ TOLERANCE_M = 0.1
 """A return this near a mapped cell (and 1 % of its range more, and four deviations of noise at least) is the map's."""
 LONGEST_MEMORY_S = 30.0
 """Evidence is capped at so many seconds of scans: what stood long is forgotten after this long in plain view."""
-PAINT_M = 0.35
+PAINT_M = 0.2
 """How far beyond the circumscribed radius remembered cells show in the distance field."""
 MOST_CELLS = 1 << 14
 SHOWN_M, SHOWN_MOST = 4.0, 64

@@ -22,8 +22,8 @@ SOFT_M = 0.3
 """Beyond the circumscribed radius, how much more clearance a route likes to have."""
 STRENGTH = 8.0
 """How much dearer the tightest cell is than an open one."""
-SMOOTH_CELLS = 6
-"""A route is smoothed over this many cells to each side."""
+EVERY_CELLS, SMOOTH_POINTS = 2, 3
+"""A route keeps every so many of its cells, smoothed over so many points to each side."""
 START_REACH_CELLS = 10
 """How far off its own cell the robot may begin a route where its own cell is too tight."""
 SLACK_M = 0.01
@@ -53,7 +53,7 @@ class Route:
         first = int(np.searchsorted(self.along, covered, side="right"))
         rest = self.points[first:]
         every = max(1, -(-len(rest) // (most - 2)))
-        points = [point_at(self.points, self.along, covered), *map(tuple, rest[::every].tolist())]
+        points = [point_at(self.points, self.along, covered), *[(x, y) for x, y in rest[::every].tolist()]]
         end = (float(self.points[-1, 0]), float(self.points[-1, 1]))
         return tuple(points if points[-1] == end else [*points, end])
 
@@ -74,8 +74,8 @@ class Planner:
         found = find_route(weight, first, cell_of((goal.x, goal.y)))
         if found is None:
             return None
-        raw = np.vstack([(start.x, start.y), found.points()[1:-1], (goal.x, goal.y)])
-        points = smoothed(raw, field, self.clearance_needed, SMOOTH_CELLS)
+        raw = np.vstack([(start.x, start.y), found.points()[1:-1:EVERY_CELLS], (goal.x, goal.y)])
+        points = smoothed(raw, field, self.clearance_needed, SMOOTH_POINTS)
         needs = clearances(points, field, self.clearance_needed) - SLACK_M
         return Route(points, lengths(points), needs)
 

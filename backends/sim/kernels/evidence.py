@@ -25,6 +25,14 @@ kernel = kernel_compiler(__file__, grid.__file__)
 CELL = 0.05
 BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center to have passed it
 TURN = 2.0 * math.pi
+TILE = 16
+
+
+@kernel
+def lower(target: NDArray[Any], source: NDArray[Any]) -> None:
+    """The smaller of two rows, into the first."""
+    for index in range(target.shape[0]):
+        target[index] = source[index] if source[index] < target[index] else target[index]
 
 
 @kernel
@@ -32,16 +40,45 @@ def paint(field: NDArray[Any], disc: NDArray[Any], row: int, column: int) -> Non
     """Lower the field around one remembered cell; `disc` holds the distances of a square patch around its middle."""
     reach = disc.shape[0] // 2
     first, last = max(column - reach, 0), min(column + reach + 1, field.shape[1])
+    shift = reach - column
     for r in range(max(row - reach, 0), min(row + reach + 1, field.shape[0])):
-        for c in range(first, last):
-            field[r, c] = min(field[r, c], disc[r - row + reach, c - column + reach])
+        lower(field[r, first:last], disc[r - row + reach, first + shift : last + shift])
 
 
 @kernel
 def repaint(
+    field: NDArray[Any], known: NDArray[Any], disc: NDArray[Any], cells: NDArray[Any], count: int, lost: NDArray[Any]
+) -> None:
+    """Make the field right after the cells in `lost` were forgotten: tile by tile, so that it costs by what is near.
+
+    A tile of `TILE` cells square is done over once, with all around it that a lost cell in it may have lowered.
+    """
+    columns = field.shape[1]
+    across = columns // TILE + 1
+    boxes = np.empty((lost.shape[0], 4), dtype=np.int64)
+    tiles = np.empty(lost.shape[0], dtype=np.int64)
+    used = 0
+    for index in range(lost.shape[0]):
+        row, column = lost[index] // columns, lost[index] % columns
+        tile = (row // TILE) * across + column // TILE
+        place = 0
+        while place < used and tiles[place] != tile:
+            place += 1
+        if place == used:
+            tiles[used] = tile
+            boxes[used, 0], boxes[used, 1], boxes[used, 2], boxes[used, 3] = row, column, row, column
+            used += 1
+        boxes[place, 0], boxes[place, 1] = min(boxes[place, 0], row), min(boxes[place, 1], column)
+        boxes[place, 2], boxes[place, 3] = max(boxes[place, 2], row), max(boxes[place, 3], column)
+    for place in range(used):
+        restore(field, known, disc, cells, count, boxes[place])
+
+
+@kernel
+def restore(
     field: NDArray[Any], known: NDArray[Any], disc: NDArray[Any], cells: NDArray[Any], count: int, box: NDArray[Any]
 ) -> None:
-    """Make the field right after cells inside `box` (low row, low column, high row, high column) were forgotten."""
+    """Do the field over where cells inside `box` (low row, low column, high row, high column) had lowered it."""
     reach = disc.shape[0] // 2
     rows, columns = field.shape
     low_row, high_row = max(box[0] - reach, 0), min(box[2] + reach + 1, rows)
@@ -49,8 +86,12 @@ def repaint(
     field[low_row:high_row, low_column:high_column] = known[low_row:high_row, low_column:high_column]
     for index in range(count):
         row, column = cells[index] // columns, cells[index] % columns
-        if low_row - reach <= row < high_row + reach and low_column - reach <= column < high_column + reach:
-            paint(field, disc, row, column)
+        first_row, last_row = max(row - reach, low_row), min(row + reach + 1, high_row)
+        first, last = max(column - reach, low_column), min(column + reach + 1, high_column)
+        shift = reach - column
+        if first < last:
+            for r in range(first_row, last_row):
+                lower(field[r, first:last], disc[r - row + reach, first + shift : last + shift])
 
 
 @kernel
@@ -137,8 +178,9 @@ def fade(
     disc: NDArray[Any],
 ) -> int:
     """Take evidence from the cells that this scan saw through; the new number of remembered cells."""
-    rows, columns = field.shape
-    box = np.array([rows, columns, -1, -1])
+    columns = field.shape[1]
+    lost = np.empty(count, dtype=np.int64)
+    gone = 0
     index = 0
     while index < count:
         row, column = cells[index] // columns, cells[index] % columns
@@ -147,21 +189,15 @@ def fade(
         ):
             evidence[row, column] -= 1
             if evidence[row, column] == 0:
+                lost[gone] = cells[index]
+                gone += 1
                 count -= 1
                 cells[index] = cells[count]
-                widen(box, row, column)
                 continue
         index += 1
-    if box[2] >= 0:
-        repaint(field, known, disc, cells, count, box)
+    if gone:
+        repaint(field, known, disc, cells, count, lost[:gone])
     return count
-
-
-@kernel
-def widen(box: NDArray[Any], row: int, column: int) -> None:
-    """Let the box hold a cell too."""
-    box[0], box[1] = min(box[0], row), min(box[1], column)
-    box[2], box[3] = max(box[2], row), max(box[3], column)
 
 
 @kernel
@@ -177,21 +213,23 @@ def forget(
     disc: NDArray[Any],
 ) -> int:
     """Forget the cells within `radius` of a point; the new number of remembered cells."""
-    rows, columns = field.shape
-    box = np.array([rows, columns, -1, -1])
+    columns = field.shape[1]
+    lost = np.empty(count, dtype=np.int64)
+    gone = 0
     index = 0
     while index < count:
         row, column = cells[index] // columns, cells[index] % columns
         off_x, off_y = (column + 0.5) * CELL - x, (row + 0.5) * CELL - y
         if off_x * off_x + off_y * off_y <= radius * radius:
             evidence[row, column] = 0
+            lost[gone] = cells[index]
+            gone += 1
             count -= 1
             cells[index] = cells[count]
-            widen(box, row, column)
             continue
         index += 1
-    if box[2] >= 0:
-        repaint(field, known, disc, cells, count, box)
+    if gone:
+        repaint(field, known, disc, cells, count, lost[:gone])
     return count
 
 

@@ -26,12 +26,11 @@ BEFORE_M = 2.0 * CELL
 
 
 @kernel
-def cast(distance: NDArray[Any], x: float, y: float, angle: float, reach: float) -> float:
-    """Range from (x, y) to the first solid cell in that direction; infinity where it is farther than `reach`.
+def cast(distance: NDArray[Any], x: float, y: float, along_x: float, along_y: float, reach: float) -> float:
+    """Range from (x, y) to the first solid cell along a unit direction; infinity where it is farther than `reach`.
 
     `distance` is 0 in solid cells and elsewhere at most the distance between cell centers to the nearest of them.
     """
-    along_x, along_y = math.cos(angle), math.sin(angle)
     per_x = 1.0 / along_x if along_x != 0.0 else np.inf
     per_y = 1.0 / along_y if along_y != 0.0 else np.inf
     rows, columns = distance.shape
@@ -61,12 +60,11 @@ def cast(distance: NDArray[Any], x: float, y: float, angle: float, reach: float)
 
 
 @kernel
-def grazes(distance: NDArray[Any], x: float, y: float, angle: float, reach: float) -> bool:
+def grazes(distance: NDArray[Any], x: float, y: float, along_x: float, along_y: float, reach: float) -> bool:
     """Whether a ray of that range meets the wall too flatly for its light to come back.
 
     The slope of the distance field a little before the hit tells how the wall lies.
     """
-    along_x, along_y = math.cos(angle), math.sin(angle)
     before = max(reach - BEFORE_M, 0.0)
     at_x, at_y = x + before * along_x, y + before * along_y
     slope_x = value_at(distance, at_x + CELL, at_y) - value_at(distance, at_x - CELL, at_y)
@@ -119,8 +117,9 @@ def scan(
     """Fill `ranges` with one scan: beam i points to `first` + i * `step`; infinity where nothing came back."""
     for beam in range(ranges.shape[0]):
         angle = first + beam * step
-        met = cast(distance, x, y, angle, reach)
-        ranges[beam] = np.inf if met < np.inf and grazes(distance, x, y, angle, met) else met
+        along_x, along_y = math.cos(angle), math.sin(angle)
+        met = cast(distance, x, y, along_x, along_y, reach)
+        ranges[beam] = np.inf if met < np.inf and grazes(distance, x, y, along_x, along_y, met) else met
     for index in range(people.shape[0]):
         meet_person(ranges, x, y, first, step, people[index], reach)
     for beam in range(ranges.shape[0]):

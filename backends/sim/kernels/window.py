@@ -18,7 +18,7 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels import grid, motion, path
 from backends.sim.kernels.grid import value_at
-from backends.sim.kernels.motion import admissible, arc, wrapped
+from backends.sim.kernels.motion import admissible
 from backends.sim.kernels.path import point_at, project
 from runner.site.compiled import kernel_compiler
 
@@ -42,10 +42,11 @@ def closeness(
     outer: float,
     x: float,
     y: float,
-    heading: float,
+    cosine: float,
+    sine: float,
     enough: float,
 ) -> float:
-    """The least clearance of the outline at a pose, as far as it is below `enough`.
+    """The least clearance of the outline, turned by an angle given as cosine and sine, as far as it is below `enough`.
 
     `inner` and `outer` are the inscribed and circumscribed radius, which spare looking at every point of the rim.
     """
@@ -54,7 +55,6 @@ def closeness(
         return enough
     if center < inner:
         return 0.0
-    cosine, sine = math.cos(heading), math.sin(heading)
     least = enough
     for index in range(rim.shape[0]):
         ahead, left = rim[index, 0], rim[index, 1]
@@ -75,10 +75,11 @@ def free_turn(
     margin: float,
 ) -> float:
     """How much of a turn in place by the angle `by` is free, at least 0, at most abs(by)."""
-    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
+    need = closeness(field, rim, inner, outer, x, y, math.cos(heading), math.sin(heading), margin)
     steps = max(1, math.ceil(abs(by) / 0.07))
     for step in range(1, steps + 1):
-        if closeness(field, rim, inner, outer, x, y, heading + by * step / steps, margin) < need:
+        angle = heading + by * step / steps
+        if closeness(field, rim, inner, outer, x, y, math.cos(angle), math.sin(angle), margin) < need:
             return abs(by) * (step - 1) / steps
     return abs(by)
 
@@ -96,14 +97,37 @@ def free_straight(
     margin: float,
 ) -> float:
     """How much of a straight drive by `by` (negative: backward) is free, at least 0, at most abs(by)."""
-    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
-    steps = max(1, math.ceil(abs(by) / 0.03))
     cosine, sine = math.cos(heading), math.sin(heading)
+    need = closeness(field, rim, inner, outer, x, y, cosine, sine, margin)
+    steps = max(1, math.ceil(abs(by) / 0.03))
     for step in range(1, steps + 1):
         part = by * step / steps
-        if closeness(field, rim, inner, outer, x + part * cosine, y + part * sine, heading, margin) < need:
+        if closeness(field, rim, inner, outer, x + part * cosine, y + part * sine, cosine, sine, margin) < need:
             return abs(by) * (step - 1) / steps
     return abs(by)
+
+
+@kernel
+def unit_arc(heading: float, turn: float, steps: int) -> NDArray[Any]:
+    """Where an arc at a speed of 1 m/s and a turn rate leads from the origin, every `STEP_S`: (x, y, cos, sin) a row.
+
+    At another speed the way is as many times as long, so one rolling out serves all speeds. By rotation of the last
+    step, exact up to rounding; row 0 is the start.
+    """
+    rows = np.empty((steps + 1, 4))
+    half = 0.5 * turn * STEP_S
+    chord = STEP_S if abs(half) < 1e-9 else STEP_S * math.sin(half) / half
+    cosine, sine = math.cos(heading + half), math.sin(heading + half)
+    rotate_cosine, rotate_sine = math.cos(2.0 * half), math.sin(2.0 * half)
+    half_cosine, half_sine = math.cos(half), math.sin(half)
+    rows[0, 0], rows[0, 1], rows[0, 2], rows[0, 3] = 0.0, 0.0, math.cos(heading), math.sin(heading)
+    for step in range(1, steps + 1):
+        rows[step, 0] = rows[step - 1, 0] + chord * cosine
+        rows[step, 1] = rows[step - 1, 1] + chord * sine
+        rows[step, 2] = cosine * half_cosine - sine * half_sine
+        rows[step, 3] = sine * half_cosine + cosine * half_sine
+        cosine, sine = cosine * rotate_cosine - sine * rotate_sine, sine * rotate_cosine + cosine * rotate_sine
+    return rows
 
 
 @kernel
@@ -133,22 +157,25 @@ def choose(
     `covered` is how far along the route the robot is; `window` the time in which candidates must be reachable;
     `horizon` the time an arc is looked at.
     """
-    need = min(margin, closeness(field, rim, inner, outer, x, y, heading, margin))
+    need = closeness(field, rim, inner, outer, x, y, math.cos(heading), math.sin(heading), margin)
     low_speed = max(0.0, speed - acceleration * window)
     high_speed = max(min(fastest, speed + acceleration * window), low_speed)
     low_turn = max(-turn_fastest, turn - turn_acceleration * window)
     high_turn = min(turn_fastest, turn + turn_acceleration * window)
+    steps = int(horizon / STEP_S + 0.5)
     best_speed, best_turn, best = 0.0, 0.0, -np.inf
-    for i in range(SPEEDS):
-        v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
-        for j in range(TURNS):
-            w = low_turn + (high_turn - low_turn) * j / (TURNS - 1)
-            free, clearance = rolled(field, rim, inner, outer, x, y, heading, v, w, margin, need, horizon)
-            if v > admissible(v * (free - REACTION_S), acceleration) + 1e-9:
+    for j in range(TURNS):
+        w = low_turn + (high_turn - low_turn) * j / (TURNS - 1)
+        way = unit_arc(heading, w, steps)
+        for i in range(SPEEDS):
+            v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
+            free, clearance = rolled(field, rim, inner, outer, x, y, way, v, margin, need)
+            left = free * STEP_S - REACTION_S
+            if v > admissible(v * left, acceleration) + 1e-9:
                 continue
-            if abs(w) > admissible(abs(w) * (free - REACTION_S), turn_acceleration) + 1e-9:
+            if abs(w) > admissible(abs(w) * left, turn_acceleration) + 1e-9:
                 continue
-            score = worth(points, along, covered, x, y, heading, v, w, free)
+            score = worth(points, along, covered, x, y, way[free], v, v * free * STEP_S)
             score -= WEIGHT_NEAR * max(0.0, 1.0 - (clearance - inner) / ROOMY_M)
             if score > best:
                 best_speed, best_turn, best = v, w, score
@@ -163,22 +190,22 @@ def rolled(
     outer: float,
     x: float,
     y: float,
-    heading: float,
+    way: NDArray[Any],
     speed: float,
-    turn: float,
     margin: float,
     need: float,
-    horizon: float,
-) -> tuple[float, float]:
-    """How long the arc is free, at most `horizon`, and the least clearance of the turning center on that part."""
-    steps = int(horizon / STEP_S + 0.5)
+) -> tuple[int, float]:
+    """How many steps of the arc are free, and the least clearance of the turning center on those."""
     clearance = value_at(field, x, y)
-    for step in range(1, steps + 1):
-        at_x, at_y, at_heading = arc(x, y, heading, speed, turn, step * STEP_S)
-        if closeness(field, rim, inner, outer, at_x, at_y, at_heading, margin) < need:
-            return (step - 1) * STEP_S, clearance
-        clearance = min(clearance, value_at(field, at_x, at_y))
-    return steps * STEP_S, clearance
+    for step in range(1, way.shape[0]):
+        at_x, at_y = x + speed * way[step, 0], y + speed * way[step, 1]
+        center = value_at(field, at_x, at_y)
+        if center < outer + margin:
+            near = closeness(field, rim, inner, outer, at_x, at_y, way[step, 2], way[step, 3], margin)
+            if near < need:
+                return step - 1, clearance
+        clearance = min(clearance, center)
+    return way.shape[0] - 1, clearance
 
 
 @kernel
@@ -188,18 +215,21 @@ def worth(
     covered: float,
     x: float,
     y: float,
-    heading: float,
+    end: NDArray[Any],
     speed: float,
-    turn: float,
-    time: float,
+    length: float,
 ) -> float:
-    """What driving an arc for a time is worth: way made along the route, less what it is off and points off it."""
-    end_x, end_y, end_heading = arc(x, y, heading, speed, turn, time)
-    reached, off = project(points, along, end_x, end_y, covered - 0.2, covered + speed * time + 0.3)
+    """What driving an arc is worth: way made along the route, less what its end is off the route and points off it.
+
+    `end` is the row of `unit_arc` where it ends, `length` how long it is.
+    """
+    end_x, end_y = x + speed * end[0], y + speed * end[1]
+    reached, off = project(points, along, end_x, end_y, covered - 0.2, covered + length + 0.3)
     from_x, from_y = point_at(points, along, reached)
     to_x, to_y = point_at(points, along, reached + POINT_AHEAD_M)
     score = reached - covered - WEIGHT_OFF * off
-    if to_x != from_x or to_y != from_y:
-        pointing = math.atan2(to_y - from_y, to_x - from_x)
-        score -= WEIGHT_POINTING * (1.0 - math.cos(wrapped(end_heading - pointing)))
+    way_x, way_y = to_x - from_x, to_y - from_y
+    size = math.sqrt(way_x * way_x + way_y * way_y)
+    if size > 0.0:
+        score -= WEIGHT_POINTING * (1.0 - (way_x * end[2] + way_y * end[3]) / size)
     return score
