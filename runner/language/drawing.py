@@ -203,7 +203,7 @@ def _solids(picture: _Picture) -> list[Solid]:
     finished: list[Solid] = []
     open_since: dict[tuple[int, int], int] = {}
     for row in range(len(picture.rows) + 1):
-        stretches = _stretches(picture.rows[row]) if row < len(picture.rows) else []
+        stretches = dict.fromkeys(_stretches(picture.rows[row]) if row < len(picture.rows) else [])
         ended = [stretch for stretch in open_since if stretch not in stretches]
         finished += [_block(picture, stretch, open_since.pop(stretch), row) for stretch in ended]
         for stretch in stretches:

@@ -21,6 +21,9 @@ from runner.language.quantities import PhraseError
 PROBLEMS_MOST = 100
 """Nobody reads more; reading stops there, which also bounds the time a hostile file can take."""
 
+PHRASE_MOST = 200
+"""Characters of a phrase; the longest sensible one has some fifty. Bounds what matching a hostile one can cost."""
+
 Value = TypeVar("Value")
 
 
@@ -126,6 +129,9 @@ class Page:
         """What `read` makes of a scalar; `stand_in` after a report, for reading to go on."""
         text = self.text(node, what, example)
         if text is None or not isinstance(node, Scalar):
+            return stand_in
+        if len(text) > PHRASE_MOST:
+            self.report(node, f"This is too long for {what}.", f"Write for example {example}.")
             return stand_in
         try:
             return read(text)

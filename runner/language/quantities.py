@@ -173,10 +173,5 @@ def _wrong_unit(number: str, unit: str, start: int, end: int, measure: Measure) 
     right = _MISSPELLED.get(unit, _MISSPELLED.get(unit.lower(), unit.lower()))
     if right in measure.units:
         return PhraseError(start, end, f"There is no unit {quoted(unit)}.", f"Write {number} {right}.")
-    return PhraseError(
-        start, end, f"{quoted(unit)} is not a unit of {_bare(measure)}.", f"Write {_choices(number, measure)}."
-    )
-
-
-def _bare(measure: Measure) -> str:
-    return measure.name.split(" ", 1)[1]
+    bare = measure.name.split(" ", 1)[1]
+    return PhraseError(start, end, f"{quoted(unit)} is not a unit of {bare}.", f"Write {_choices(number, measure)}.")
