@@ -55,7 +55,12 @@ def keys(view: View | None, question: Question | None, width: int, glyphs: Glyph
     """The keys that mean something now; or the open question with its two answers."""
     if question is not None:
         return _question(question, width, glyphs)
-    return crop(tuple(span for key, does in _offered(view) for span in _key(key, does)), width, glyphs.more)
+    offered = _offered(view)
+    for apart in (True, False):  # closer together where they would be cut
+        row = tuple(span for key, does in offered for span in _key(key, does, apart))
+        if row_width(row) <= width:
+            break
+    return crop(row, width, glyphs.more)
 
 
 def _offered(view: View | None) -> list[tuple[str, str]]:
@@ -65,8 +70,9 @@ def _offered(view: View | None) -> list[tuple[str, str]]:
     return [first, ("s", "skip"), ("a", "abort"), ("q", "leave")]
 
 
-def _key(key: str, does: str) -> Row:
-    return ((" ", Ink.TEXT), (f" {key} ", Ink.KEY), (f" {does} ", Ink.TEXT))
+def _key(key: str, does: str, apart: bool = True) -> Row:
+    gap = " " if apart else ""
+    return ((gap, Ink.TEXT), (f" {key} ", Ink.KEY), (f"{gap}{does} ", Ink.TEXT))
 
 
 def _question(question: Question, width: int, glyphs: Glyphs) -> Row:

@@ -62,7 +62,7 @@ def _figures(view: View, showing: Showing, width: int, glyphs: Glyphs) -> Row:
     parts = [legs_so_far(view), f"run {spell_seconds(view.stamp)}"]
     if view.battery is not None:
         parts.append(f"battery {view.battery * 100:.0f} %")
-    if view.pose is not None:
+    if view.pose is not None and view.outcome is None:
         parts.append(f"{abs(view.speed):.1f} m/s")
     while len(parts) > 1 and len("   ".join(parts)) + 1 > width:
         parts.pop()

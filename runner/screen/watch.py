@@ -17,8 +17,9 @@ from textual.app import App, ComposeResult
 from textual.binding import Binding, BindingType
 from textual.containers import Container
 from textual.events import Resize
+from textual.timer import Timer
 
-from runner.host.view import FeedLine, View
+from runner.host.view import FeedLine, Health, View
 from runner.machine.table import Event
 from runner.screen.arrangement import HEADER_ROWS, Arrangement, arrange
 from runner.screen.floor_drawing import FloorDrawing
@@ -34,7 +35,7 @@ PULL_S = 0.25
 FEED_KEPT = 500
 REMARK_S = 4.0
 OLD_AFTER_S = 5.0
-"""A view that has not changed for so long, while the run is under way, is said to be old."""
+"""A view that has not changed for so long is said to be old, while the run is under way (starting may take longer)."""
 
 
 def watch(showing: Showing, source: Source) -> bool:
@@ -78,6 +79,7 @@ class WatchApp(App[None]):
         self._remark, self._remark_until = "", 0.0
         self._changed_at = time.monotonic()
         self._aborting = self._leaving = False
+        self._pulling: Timer | None = None
         self._header, self._steps = Panel(looks, "header"), Panel(looks, "steps")
         self._rule, self._lines, self._keys = Panel(looks, "rule"), Panel(looks, "feed"), Panel(looks, "keys")
         self._floor = FloorPanel(looks)
@@ -87,9 +89,6 @@ class WatchApp(App[None]):
 
     def compose(self) -> ComposeResult:
         yield from (self._header, self._body, self._rule, self._lines, self._keys)
-
-    def on_mount(self) -> None:
-        self.set_interval(PULL_S, self.pull)
 
     def on_resize(self, event: Resize) -> None:
         self._arrangement = arranged = self._arrange(event.size.width, event.size.height)
@@ -110,6 +109,8 @@ class WatchApp(App[None]):
         if self._arrangement.floor_rows:
             self._drawing.resize(self._arrangement.floor_columns, self._arrangement.floor_rows)
         self.pull()
+        if self._pulling is None:  # nothing is shown before there is a place for it
+            self._pulling = self.set_interval(PULL_S, self.pull)
 
     # --- what is shown --------------------------------------------------------------------------------------
 
@@ -157,7 +158,7 @@ class WatchApp(App[None]):
         if self._ended:
             return ""
         old = time.monotonic() - self._changed_at
-        if old >= OLD_AFTER_S and self._view is not None:
+        if old >= OLD_AFTER_S and self._view is not None and self._view.health is not Health.STARTING:
             return f"OLD: no news for {old:.0f} s"
         return self._remark if time.monotonic() < self._remark_until else ""
 

@@ -59,12 +59,12 @@ class Terminal:
 
 @contextmanager
 def _watching(
-    scene: str, columns: int = 80, rows: int = 24, **environment: str
+    scene: str, columns: int = 80, rows: int = 24, program: str = "", **environment: str
 ) -> Iterator[tuple[Terminal, subprocess.Popen[bytes]]]:
     terminal = Terminal(columns, rows)
     kept = {name: value for name, value in os.environ.items() if name not in ("NO_COLOR", "TRUNDLE_ASCII", "LC_ALL")}
     process = subprocess.Popen(
-        [sys.executable, "-m", "tests.screen.scripted", scene],
+        [sys.executable, *(("-c", program) if program else ("-m", "tests.screen.scripted", scene))],
         stdin=terminal.there,
         stdout=terminal.there,
         stderr=terminal.there,
@@ -147,3 +147,17 @@ def test_at_60_by_20_nothing_essential_is_missing() -> None:
         "r  release",
     ):
         assert wanted in text
+
+
+def test_a_screen_that_breaks_says_so_to_its_caller_and_gives_the_terminal_back() -> None:
+    program = (
+        "from runner.screen.watch import watch\n"
+        "from tests.screen.scripted import MOVING, Replay, showing\n"
+        "class Broken(Replay):\n"
+        "    def feed(self):\n"
+        "        raise RuntimeError('no news any more')\n"
+        "print('went well:', watch(showing(), Broken([MOVING])))\n"
+    )
+    with _watching("", program=program) as (terminal, process):
+        terminal.read_until("went well: False")
+        assert _ended(terminal, process) == 0
