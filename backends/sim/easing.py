@@ -5,8 +5,6 @@ The lidar may not see backward, so this goes by memory and map; what they miss, 
 
 from __future__ import annotations
 
-import math
-
 import numpy as np
 from numpy.typing import NDArray
 
@@ -19,6 +17,9 @@ from runner.site.values import Pose
 SLOW_M_S = 0.2
 DONE_M = 0.02
 """This near to the distance asked for counts as all of it."""
+
+LITTLE_M = 0.05
+"""Less than this is as good as not having moved."""
 
 Answer = tuple[int, bool, str]
 """Action id, whether done, and the reason where not."""
@@ -74,6 +75,6 @@ class Easing:
         assert action is not None
         if done >= self._distance - 2.0 * DONE_M:
             return action, True, ""
-        if done < DONE_M:
+        if done < LITTLE_M:
             return action, False, "There is no room behind the robot."
-        return action, math.isfinite(done), f"Only {done:.2f} m were free behind the robot."
+        return action, True, f"Only {done:.2f} m were free behind the robot."

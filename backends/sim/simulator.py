@@ -79,6 +79,9 @@ class Simulator:
     def capabilities(self) -> frozenset[Capability]:
         return frozenset(Capability)
 
+    def preparation(self) -> str:
+        return ""
+
     def open(self) -> None:
         """Compile the kernels, which takes seconds after an installation and a fraction of one later."""
         from backends.sim.warming import warm_up
