@@ -11,12 +11,31 @@ Once the mission has ended, nothing has any effect.
 from __future__ import annotations
 
 from copy import copy
+from dataclasses import replace
 
 from runner.engine.actions import act, begin_recovery, begin_step
 from runner.engine.draft import Draft, EngineError, next_clock, without
 from runner.engine.progress import look
 from runner.engine.state import EngineState, Frame, Loop
-from runner.engine.values import ActionNews, Begin, Effect, GoalNews, Input, Operator, OperatorActed, Seen, Tick
+from runner.engine.values import (
+    ActionNews,
+    Begin,
+    ClockMoved,
+    ClockSet,
+    Effect,
+    GoalNews,
+    Input,
+    Operator,
+    OperatorActed,
+    PickedUp,
+    Remark,
+    Remarked,
+    Resumed,
+    Seen,
+    Tick,
+    Trouble,
+    TroubleNoted,
+)
 from runner.machine.table import TIMER_EVENTS, Address, Event, Exit, Guard, Machine, Row, Test, Timer
 
 ROWS_AT_ONCE_MOST = 10_000
@@ -52,6 +71,16 @@ def _take_in(draft: Draft, given: Input) -> None:
             _begin(draft, given)
         case Tick():
             pass
+        case Remark():
+            draft.effects.append(Remarked(given.who, given.text))
+        case Trouble():
+            _trouble(draft, given)
+        case ClockMoved():
+            _move_clock(draft, given.seconds)
+            draft.effects.append(ClockSet(given.seconds))
+        case PickedUp():
+            _move_clock(draft, given.clock - draft.state.clock)
+            draft.effects.append(Resumed(given.who, given.down))
 
 
 def _run_timers(draft: Draft, stamp: float) -> None:
@@ -104,6 +133,21 @@ def _operator(draft: Draft, given: Operator) -> None:
     accepted = _row(draft, given.event) is not None
     draft.effects.append(OperatorActed(given.event.value, given.who, accepted))
     _happen(draft, given.event)
+
+
+def _trouble(draft: Draft, given: Trouble) -> None:
+    """Hold the mission as a person would, but in nobody's name."""
+    held = draft.state.held is None and _row(draft, Event.HOLD) is not None
+    draft.effects.append(TroubleNoted(given.kind, given.detail, held))
+    _happen(draft, Event.HOLD)
+
+
+def _move_clock(draft: Draft, seconds: float) -> None:
+    """Move the clock by so much. Deadlines of the clock stay where they are; a loop that was to last a while still
+    does."""
+    draft.state.clock += seconds
+    loops = draft.state.loops
+    draft.state.loops = {number: replace(loop, ends=loop.ends + seconds) for number, loop in loops.items()}
 
 
 # --- the table ----------------------------------------------------------------------------------------------------

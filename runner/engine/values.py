@@ -74,7 +74,48 @@ class Operator:
     who: str
 
 
-Input = Begin | Seen | GoalNews | ActionNews | Tick | Operator
+@dataclass(frozen=True, slots=True)
+class Remark:
+    """A person leaves a remark in the record. It changes nothing."""
+
+    stamp: float
+    who: str
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class Trouble:
+    """Something outside the mission went wrong (the record, the robot, the program): the mission is to be held.
+
+    `kind` is a word or two that scripts may rely on, `detail` a sentence for people.
+    """
+
+    stamp: float
+    kind: str
+    detail: str
+
+
+@dataclass(frozen=True, slots=True)
+class ClockMoved:
+    """The wall clock was set by so many seconds (network time, daylight saving, a computer that slept)."""
+
+    stamp: float
+    seconds: float
+
+
+@dataclass(frozen=True, slots=True)
+class PickedUp:
+    """A run whose process had died goes on. Its stamps go on without a gap; `clock` is the time of day at stamp 0
+    that makes the clock right again, seconds since midnight."""
+
+    stamp: float
+    who: str
+    clock: float
+    down: float
+    """Wall seconds for which nobody was in charge; 0 where time is virtual."""
+
+
+Input = Begin | Seen | GoalNews | ActionNews | Tick | Operator | Remark | Trouble | ClockMoved | PickedUp
 
 # --- commands -------------------------------------------------------------------------------------------------
 
@@ -215,8 +256,52 @@ class Ended:
     reason: str
 
 
+@dataclass(frozen=True, slots=True)
+class Remarked:
+    """What a person wants to be read in the morning."""
+
+    who: str
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class TroubleNoted:
+    """Trouble outside the mission. `held` says whether the mission was held for it; it may have been held already."""
+
+    kind: str
+    detail: str
+    held: bool
+
+
+@dataclass(frozen=True, slots=True)
+class ClockSet:
+    """Clock conditions moved by so many seconds; durations did not."""
+
+    seconds: float
+
+
+@dataclass(frozen=True, slots=True)
+class Resumed:
+    """The run was picked up after its process had died, `down` seconds before."""
+
+    who: str
+    down: float
+
+
 Note = (
-    StepBegan | LegBegan | LegEnded | IncidentBegan | RecoveryBegan | IncidentEnded | TryFailed | OperatorActed | Ended
+    StepBegan
+    | LegBegan
+    | LegEnded
+    | IncidentBegan
+    | RecoveryBegan
+    | IncidentEnded
+    | TryFailed
+    | OperatorActed
+    | Remarked
+    | TroubleNoted
+    | ClockSet
+    | Resumed
+    | Ended
 )
 
 Effect = Command | Note
