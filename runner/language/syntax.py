@@ -74,6 +74,9 @@ def report_syntax(error: Exception, text: str, report: Report) -> None:
     _, at_beginning, sentence, help_text = row
     chosen = context if at_beginning and context is not None else place
     line, column = (chosen.line, chosen.column) if chosen is not None else (0, 0)
+    lines = source_lines(text)
+    if line >= len(lines):  # the end of a text without a last line end counts as a line for the parser
+        line, column = len(lines) - 1, len(lines[-1])
     report(line, column, 1, sentence, help_text)
 
 

@@ -14,6 +14,7 @@ from runner.site.values import Carton, DoorChange, Pose, Solid, Walkers
 from tests.language import texts
 
 FILES = (Path(runner.language.__file__).parent / "FILES.md").read_text()
+LEGEND = "legend: {a: {place: hall, facing: south}, D: {door: gate}}\n"
 EXAMPLES = re.findall(r"```yaml\n(.*?)```", FILES, flags=re.DOTALL)
 
 
@@ -83,15 +84,13 @@ def test_walls_of_a_drawing_cover_exactly_its_wall_squares() -> None:
 
 
 def test_a_door_drawn_between_walls_to_its_left_and_right_lies_flat() -> None:
-    text = (
-        "site: x\nsquare: 1 m\ndrawing: |\n  .a.\n  #D#\nlegend: {a: {place: hall, facing: south}, D: {door: gate}}\n"
-    )
+    text = "site: x\nsquare: 1 m\ndrawing: |\n  .a.\n  #D#\n" + LEGEND
     (door,) = read_site(text, "x.yaml").doors
     assert (door.start, door.end) == ((1.0, 0.5), (2.0, 0.5))
 
 
 def test_a_door_drawn_over_several_squares_is_one_door() -> None:
-    text = "site: x\nsquare: 1 m\ndrawing: |\n  #.a\n  D..\n  D..\n  #\nlegend: {a: {place: hall, facing: south}, D: {door: gate}}\n"
+    text = "site: x\nsquare: 1 m\ndrawing: |\n  #.a\n  D..\n  D..\n  #\n" + LEGEND
     (door,) = read_site(text, "x.yaml").doors
     assert (door.start, door.end) == ((0.5, 1.0), (0.5, 3.0))
 
