@@ -10,7 +10,8 @@ from runner.screen.words import NEXT_FOR_YOU, amount, legs_so_far, spell_seconds
 _SPACED_FROM = 72
 """Columns from which the word of health is spaced out to be read from farther away."""
 
-_BEFORE = View(0.0, "--:--:--", Health.STARTING, "making ready")
+BEFORE = View(0.0, "--:--:--", Health.STARTING, "making ready")
+"""What is shown before the first view."""
 
 
 def header(view: View | None, showing: Showing, width: int, glyphs: Glyphs, remark: str) -> tuple[Row, Row, Row]:
@@ -18,7 +19,7 @@ def header(view: View | None, showing: Showing, width: int, glyphs: Glyphs, rema
 
     `remark`, where not empty, stands in the place of what there is to do.
     """
-    seen = view or _BEFORE
+    seen = view or BEFORE
     ink = HEALTH_INK[seen.health]
     health = both_ends(_health(seen, ink, width, glyphs), ((f"{seen.clock} ", ink),), width, ink, glyphs.more)
     lines = wrap(glyphs.say(seen.reason), max(width - 2, 1), 2, glyphs.more)

@@ -27,6 +27,7 @@ class Ink(Enum):
     KEY = "key"
     QUESTION = "question"
     WALL = "wall"
+    FURNITURE = "furniture"
     DOOR = "door"
     PLACE = "place"
     GOAL = "goal"
@@ -56,6 +57,7 @@ class Glyphs:
     place: str
     goal: str
     sensed: str
+    furniture: str
     door_across: str
     door_upright: str
     route: str
@@ -79,6 +81,7 @@ DOTTED = Glyphs(
     place="◦",
     goal="●",
     sensed="\u00d7",  # a multiplication sign
+    furniture="⢕",
     door_across="╌",
     door_upright="┆",
     route="⠒",
@@ -97,6 +100,7 @@ ASCII = Glyphs(
     place="o",
     goal="@",
     sensed="x",
+    furniture="%",
     door_across="~",
     door_upright=":",
     route=".",

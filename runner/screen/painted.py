@@ -35,6 +35,7 @@ LOOKS: dict[Ink, Style] = {
         Ink.KEY: "bold reverse default on default",
         Ink.QUESTION: "bold reverse default on default",
         Ink.WALL: "default on default",
+        Ink.FURNITURE: "dim default on default",
         Ink.DOOR: "default on default",
         Ink.PLACE: "default on default",
         Ink.GOAL: "bold underline default on default",

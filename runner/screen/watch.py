@@ -11,6 +11,8 @@ import os
 import sys
 import time
 from collections import deque
+from collections.abc import Callable
+from dataclasses import replace
 from typing import ClassVar
 
 from textual.app import App, ComposeResult
@@ -24,7 +26,7 @@ from runner.machine.table import Event
 from runner.screen.arrangement import HEADER_ROWS, Arrangement, arrange
 from runner.screen.floor_drawing import FloorDrawing
 from runner.screen.footer import Question, feed, keys, rule
-from runner.screen.header import header
+from runner.screen.header import BEFORE, header
 from runner.screen.ink import ASCII, DOTTED, Glyphs, Ink, Row, cut
 from runner.screen.outline import outline, summary
 from runner.screen.painted import COLORLESS, LOOKS, FloorPanel, Panel
@@ -34,15 +36,20 @@ from runner.screen.terminal import ascii_only
 PULL_S = 0.25
 FEED_KEPT = 500
 REMARK_S = 4.0
+BROKE_OFF = "what ran it has failed; leave to read why"
 OLD_AFTER_S = 5.0
 """A view that has not changed for so long is said to be old, while the run is under way (starting may take longer)."""
 
 
-def watch(showing: Showing, source: Source) -> bool:
+def watch(showing: Showing, source: Source, over: Callable[[], bool] = lambda: False) -> bool:
     """Show the run until the person leaves. False where the screen itself broke, so that the caller can go on in
-    plain lines; the run is not touched by that."""
+    plain lines; the run is not touched by that.
+
+    `over` tells whether what runs it has come to an end, in whatever way: then no more views can come, and a run whose
+    last view does not say how it ended is shown as broken off.
+    """
     glyphs = ASCII if ascii_only(os.environ, sys.stderr.encoding) else DOTTED
-    app = WatchApp(showing, source, glyphs)
+    app = WatchApp(showing, source, glyphs, over)
     app.run(mouse=False)  # so that the terminal's own selecting and copying keep working
     return not app.return_code
 
@@ -67,8 +74,11 @@ class WatchApp(App[None]):
         Binding("escape,n", "dismiss", "no"),
     ]
 
-    def __init__(self, showing: Showing, source: Source, glyphs: Glyphs) -> None:
+    def __init__(
+        self, showing: Showing, source: Source, glyphs: Glyphs, over: Callable[[], bool] = lambda: False
+    ) -> None:
         super().__init__(ansi_color=True)
+        self._over = over
         looks = COLORLESS if self.no_color else LOOKS
         self._showing, self._source, self._glyphs = showing, source, glyphs
         self._drawing = FloorDrawing(showing.site, showing.robot, glyphs)
@@ -116,7 +126,10 @@ class WatchApp(App[None]):
 
     def pull(self) -> None:
         """Take what is new and show it."""
+        over = self._over()  # asked first: the last view is posted before the run is over
         view = self._source.view()
+        if over and (view is None or view.outcome is None):
+            view = replace(view or BEFORE, health=Health.ENDED, outcome="broke off", reason=BROKE_OFF)
         if view != self._view:
             self._view, self._changed_at = view, time.monotonic()
         self._feed.extend(self._source.feed())

@@ -10,10 +10,10 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from runner.screen.floor_drawing import FloorDrawing, fit, wall_dots
+from runner.screen.floor_dots import fit, furniture_dots, standing, wall_dots
+from runner.screen.floor_drawing import FloorDrawing
 from runner.screen.ink import ASCII, DOTTED, Glyphs, Ink
-from runner.site.floor import rasterize
-from runner.site.values import Place, Pose, Site, Wall
+from runner.site.values import Place, Pose, Site, Solid, Wall
 from tests.screen.scripted import MOVING, RECOVERING, cart, clinic
 
 
@@ -41,7 +41,7 @@ def test_the_outer_wall_is_one_unbroken_frame_of_the_right_aspect(
 ) -> None:
     site = _room(width, height)
     scale = fit(site, columns, rows)
-    dots = wall_dots(site, rasterize(site), scale)
+    dots = wall_dots(standing(site), scale)
     ys, xs = np.nonzero(dots)
     top, bottom, left, right = ys.min(), ys.max(), xs.min(), xs.max()
     assert dots[top, left : right + 1].all()
@@ -56,7 +56,7 @@ def test_the_outer_wall_is_one_unbroken_frame_of_the_right_aspect(
 def test_every_door_is_an_opening_in_the_walls(columns: int) -> None:
     site = clinic()
     scale = fit(site, columns, columns)
-    dots = wall_dots(site, rasterize(site), scale)
+    dots = wall_dots(standing(site), scale)
     for door in site.doors:
         row, column = scale.dot(((door.start[0] + door.end[0]) / 2, door.start[1]))
         assert not dots[row - 1 : row + 2, column].any(), door.name
@@ -106,3 +106,23 @@ def test_what_is_sensed_and_the_route_are_told_apart_from_walls() -> None:
 def test_points_off_the_floor_do_no_harm() -> None:
     view = replace(MOVING, pose=Pose(-50.0, 900.0, 0.0), route=((-9.0, -9.0), (99.0, 99.0)), obstacles=((1e6, -1e6),))
     assert {ink for _, ink in _drawing(54, 15, DOTTED).moving(view).values()} == {Ink.ROUTE}
+
+
+def test_furniture_is_lighter_than_a_wall_and_a_thin_solid_is_a_wall() -> None:
+    table = Solid(((2.0, 2.0), (4.0, 2.0), (4.0, 3.0), (2.0, 3.0)))
+    partition = Solid(((1.0, 4.5), (5.0, 4.5), (5.0, 4.75), (1.0, 4.75)))
+    site = replace(_room(6.0, 6.0), solids=(table, partition))
+    scale = fit(site, 60, 30)
+    walls, furniture = wall_dots(standing(site), scale), furniture_dots(standing(site), scale)
+    (top, left), (bottom, right) = scale.dot((2.1, 2.9)), scale.dot((3.9, 2.1))
+    assert 0.4 <= furniture[top:bottom, left:right].mean() <= 0.6
+    assert not walls[top:bottom, left:right].any()
+    row, first = scale.dot((1.1, 4.625))
+    assert walls[row, first : scale.dot((4.9, 4.625))[1]].all()
+
+
+def test_a_post_smaller_than_a_dot_is_not_lost_to_the_pattern() -> None:
+    for shift in range(4):
+        x = 10.0 + 0.5 * shift
+        site = replace(_room(30.0, 30.0), solids=(Solid(((x, 10.0), (x + 0.5, 10.0), (x + 0.5, 10.5), (x, 10.5))),))
+        assert furniture_dots(standing(site), fit(site, 30, 15)).any()

@@ -221,3 +221,14 @@ def test_old_news_is_said_to_be_old(monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr("runner.screen.watch.OLD_AFTER_S", 0.0)
     text, _ = _watched(Replay([MOVING]), _pressing(until="OLD"))
     assert "OLD: no news for" in text
+
+
+def test_a_run_whose_host_has_failed_is_not_shown_as_going_on() -> None:
+    async def run() -> str:
+        app = WatchApp(showing(), Replay([MOVING]), DOTTED, over=lambda: True)
+        async with app.run_test(size=(80, 24)) as pilot:
+            await _until(pilot, "E N D E D   broke off")
+            await pilot.press("a", "y")
+            return await _settled(pilot)
+
+    assert "what ran it has failed" in asyncio.run(run())
