@@ -156,7 +156,7 @@ def _on_screen(order: Order, folder: Path, board: Board) -> None:
     with ThreadPoolExecutor(max_workers=1, thread_name_prefix="host") as pool:
         running = pool.submit(carry_out, order, folder, board, lambda: None)
         try:
-            watch(showing, board)
+            watch(showing, board, running.done)
         finally:
             if not running.done():
                 _aborting(board, "the screen that was left")()
