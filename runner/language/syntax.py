@@ -44,7 +44,7 @@ _WORDINGS: tuple[tuple[str, bool, str, str], ...] = (
         "Begin it with a dash, or indent it like the keys above it.",
     ),
     (
-        "block sequence entries are not allowed",
+        "sequence entries are not allowed",
         False,
         "A list cannot begin here.",
         "Begin the dash on a line of its own, below the key.",
