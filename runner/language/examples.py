@@ -7,7 +7,6 @@ and `quiet` among conditions is `missions/conditions/quiet.yaml`.
 from __future__ import annotations
 
 import os
-from importlib import resources
 from pathlib import Path
 
 from runner.language.diagnostics import WHOLE_FILE, Diagnostic, LanguageError, nearest, quoted
@@ -56,4 +55,6 @@ def _resolve(argument: str, folder: str, kind: str) -> Path:
 
 def _folder(folder: str) -> Path:
     """A folder of the installed examples, which are plain files in an editable install and in a wheel."""
+    from importlib import resources
+
     return Path(str(resources.files("missions"))) / folder

@@ -8,7 +8,12 @@ import pytest
 
 from runner.language.diagnostics import LanguageError
 from tests.language import texts
-from tests.language.golden import IN_CONDITIONS, IN_MISSIONS, IN_SITES, Case
+from tests.language.golden import Case
+from tests.language.golden_missions import IN_RULES_AND_LIMITS, IN_STEPS
+from tests.language.golden_sites import IN_CONDITIONS, IN_SITES
+from tests.language.golden_yaml import IN_YAML
+
+IN_MISSIONS = IN_STEPS + IN_RULES_AND_LIMITS + IN_YAML
 
 
 def names(cases: tuple[Case, ...]) -> list[str]:
