@@ -75,14 +75,6 @@ def regions(free: NDArray[np.bool_]) -> NDArray[np.int32]:
     return np.asarray(label(free)[0], dtype=np.int32)
 
 
-def connected(weight: Weights, start: Cell, goal: Cell) -> bool:
-    """Whether there is a route. For many pairs on one grid, ask `regions` once."""
-    if not (_is_open(weight, start) and _is_open(weight, goal)):
-        return False
-    numbers = regions(np.isfinite(weight))
-    return bool(numbers[start] == numbers[goal])
-
-
 def _is_open(weight: Weights, cell: Cell) -> bool:
     rows, columns = weight.shape
     return 0 <= cell[0] < rows and 0 <= cell[1] < columns and math.isfinite(weight[cell])
