@@ -58,9 +58,12 @@ class Easing:
         done = self._body.driven - self._began_at
         left = self._distance - done
         self._hit = self._hit or (self._body.met != FREE and done > 0.0)
-        free = free_straight(
-            field, outline.rim, outline.inner, outline.outer, pose.x, pose.y, pose.heading, -left, MARGIN_M
-        ) if left > 0.0 else 0.0  # fmt: skip
+        free = 0.0
+        if left > 0.0:
+            free = free_straight(
+                field, outline.rim, outline.inner, outline.outer,
+                pose.x, pose.y, pose.heading, -left, MARGIN_M,
+            )  # fmt: skip
         if left > DONE_M and free > 0.0 and not self._hit:
             slow = min(
                 SLOW_M_S,

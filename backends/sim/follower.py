@@ -127,7 +127,15 @@ class Follower:
     def _is_free(self, field: NDArray[np.float32], pose: Pose, angle: float) -> bool:
         outline = self._outline
         free = free_turn(
-            field, outline.rim, outline.inner, outline.outer, pose.x, pose.y, pose.heading, angle, MARGIN_M
+            field,
+            outline.rim,
+            outline.inner,
+            outline.outer,
+            pose.x,
+            pose.y,
+            pose.heading,
+            angle,
+            MARGIN_M,
         )
         return bool(free >= abs(angle) - 1e-9)
 
@@ -146,8 +154,9 @@ class Follower:
         outline = self._outline
         fastest = min(fastest, limits.speed, float(admissible(left, EASY * limits.acceleration)))
         speed, turn, _ = choose(
-            field, outline.rim, outline.inner, outline.outer, MARGIN_M, route.points, route.along, self.covered,
-            pose.x, pose.y, pose.heading, self._drive.speed, self._drive.turn, fastest, limits.acceleration,
+            field, outline.rim, outline.inner, outline.outer, MARGIN_M,
+            route.points, route.along, self.covered, pose.x, pose.y, pose.heading,
+            self._drive.speed, self._drive.turn, fastest, limits.acceleration,
             limits.turn_speed, limits.turn_acceleration, WINDOW_S, self._horizon,
         )  # fmt: skip
         return Wish(speed, turn)

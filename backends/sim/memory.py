@@ -12,7 +12,7 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.sim.kernels.evidence import fade, forget, near, take_hits
+from backends.sim.kernels.evidence import fade, forget, near, repaint, take_hits
 from backends.sim.outline import Outline
 from backends.sim.sensing import Scan
 from runner.site.floor import clearance
@@ -27,6 +27,8 @@ LONGEST_MEMORY_S = 30.0
 PAINT_M = 0.2
 """How far beyond the circumscribed radius remembered cells show in the distance field."""
 MOST_CELLS = 1 << 14
+SCANS_PER_REPAINT = 4
+"""The distance field forgets what the memory forgot only every so many scans: together it costs less."""
 SHOWN_M, SHOWN_MOST = 4.0, 64
 """Obstacles reported in telemetry: how near, and how many at most."""
 
@@ -45,6 +47,8 @@ class Memory:
         self._cap = max(1, round(LONGEST_MEMORY_S * lidar.rate))
         self._tolerance = max(TOLERANCE_M, 4.0 * lidar.noise)
         self._reach = lidar.range_max
+        self._lost = np.zeros(MOST_CELLS, dtype=np.int64)
+        self._gone = 0
         self._scans = 0
         self.count = 0
 
@@ -57,13 +61,22 @@ class Memory:
             self._scans, self._cap, self._cells, self.count, self.field, self._disc,
         )  # fmt: skip
         if self.count:
-            self.count = fade(
-                scan.ranges, x, y, first, scan.step, self._reach, self.known, self._evidence, self._seen,
-                self._scans, self._cells, self.count, self.field, self._disc,
+            self.count, self._gone = fade(
+                scan.ranges, x, y, first, scan.step, self._reach, self._evidence, self._seen, self._scans,
+                self._cells, self.count, self._lost, self._gone,
             )  # fmt: skip
+        if self._gone and (self._scans % SCANS_PER_REPAINT == 0 or self._gone == len(self._lost)):
+            self._repaint()
+
+    def _repaint(self) -> None:
+        """Make the field right after cells were forgotten."""
+        repaint(self.field, self.known, self._disc, self._cells, self.count, self._lost[: self._gone])
+        self._gone = 0
 
     def forget(self, pose: Pose, radius: float) -> int:
         """Forget all within a radius of the robot; how many cells that were."""
+        if self._gone:
+            self._repaint()
         before = self.count
         self.count = forget(
             pose.x, pose.y, radius, self.known, self._evidence, self._cells, self.count, self.field, self._disc

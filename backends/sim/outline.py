@@ -19,8 +19,9 @@ RIM_SPACING_M = 0.1
 
 @dataclass(frozen=True, slots=True)
 class Outline:
-    """`hull` (n, 2): the convex hull of the footprint, counterclockwise, what is true. `rim` (m, 2): points along it,
-    what the follower looks at. `inner` and `outer`: inscribed and circumscribed radius, meters."""
+    """`hull` (n, 2): the convex hull of the footprint, counterclockwise, what is true. `rim` (m, 3): points along it
+    and the distance to the next, what the follower looks at. `inner` and `outer`: inscribed and circumscribed radius.
+    """
 
     hull: NDArray[np.float64]
     rim: NDArray[np.float64]
@@ -54,9 +55,11 @@ def _turn(a: Point, b: Point, c: Point) -> float:
     return (b[0] - a[0]) * (c[1] - a[1]) - (b[1] - a[1]) * (c[0] - a[0])
 
 
-def _rim(hull: Sequence[Point]) -> list[Point]:
-    rim: list[Point] = []
+def _rim(hull: Sequence[Point]) -> list[tuple[float, float, float]]:
+    rim: list[tuple[float, float, float]] = []
     for (x1, y1), (x2, y2) in pairwise([*hull, hull[0]]):
-        parts = max(1, math.ceil(math.hypot(x2 - x1, y2 - y1) / RIM_SPACING_M))
-        rim += [(x1 + (x2 - x1) * part / parts, y1 + (y2 - y1) * part / parts) for part in range(parts)]
+        side = math.hypot(x2 - x1, y2 - y1)
+        parts = max(1, math.ceil(side / RIM_SPACING_M))
+        step = side / parts
+        rim += [(x1 + (x2 - x1) * part / parts, y1 + (y2 - y1) * part / parts, step) for part in range(parts)]
     return rim

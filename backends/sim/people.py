@@ -13,11 +13,10 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels.crowd import step
 from backends.sim.kernels.errands import NOBODY, in_sight, next_due, pulled_straight
-from backends.sim.kernels.grid import nearest_finite
+from backends.sim.kernels.weights import halved
 from backends.sim.outline import Outline
+from backends.sim.planner import find_halved
 from backends.sim.world import World
-from runner.site.floor import cell_of
-from runner.site.routes import find_route, weight_from_clearance
 from runner.site.values import CELL_M, Point, Site, Walkers
 
 RADIUS_LEAST_M, RADIUS_MOST_M = 0.25, 0.35
@@ -37,10 +36,6 @@ PATIENCE_S = 15.0
 START_OFF_ROBOT_M = 1.0
 ROBOT_BERTH_M = 0.6
 """Somebody stuck looks for a way that keeps this far from the robot's middle."""
-COARSE = 2
-"""People plan on every second cell."""
-START_REACH_CELLS = 7
-"""How far off their own (coarse) cell a route may begin for somebody who stands in a tight spot."""
 
 
 class People:
@@ -168,27 +163,16 @@ class People:
 
     def _find(self, start: Point, goal: Point, robot: NDArray[np.float64] | None = None) -> NDArray[np.float64] | None:
         """The way over what is there now, doors included; with `robot`, round it."""
-        coarse = np.ascontiguousarray(self._world.distance[::COARSE, ::COARSE])
-        weight = weight_from_clearance(coarse, KEEP_OFF_M, KEEP_OFF_SOFT_M, KEEP_OFF_STRENGTH)
+        weight = halved(self._world.distance, KEEP_OFF_M, KEEP_OFF_SOFT_M, KEEP_OFF_STRENGTH)
         if robot is not None:
             _close_around(weight, float(robot[0]), float(robot[1]))
-        row, column = _coarse_cell(start)
-        first = nearest_finite(weight, row, column, START_REACH_CELLS)
-        route = find_route(weight, first, _coarse_cell(goal))
-        if route is None:
-            return None
-        return (route.cells[:, ::-1].astype(np.float64) * COARSE + 0.5) * CELL_M
-
-
-def _coarse_cell(point: Point) -> tuple[int, int]:
-    row, column = cell_of(point)
-    return row // COARSE, column // COARSE
+        return find_halved(weight, start, goal)
 
 
 def _close_around(weight: NDArray[np.float32], x: float, y: float) -> None:
     """Make a disc around the robot impassable."""
-    row, column = _coarse_cell((x, y))
-    reach = round(ROBOT_BERTH_M / CELL_M / COARSE)
+    row, column = int(y / CELL_M) // 2, int(x / CELL_M) // 2
+    reach = round(ROBOT_BERTH_M / CELL_M / 2.0)
     rows = slice(max(row - reach, 0), row + reach + 1)
     columns = slice(max(column - reach, 0), column + reach + 1)
     part = weight[rows, columns]

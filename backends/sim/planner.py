@@ -11,21 +11,22 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.sim.kernels.grid import nearest_open
+from backends.sim.kernels.grid import nearest_finite
 from backends.sim.kernels.path import CLEAR, clearances, lengths, obstructed, point_at, smoothed
+from backends.sim.kernels.weights import halved
 from backends.sim.outline import Outline
 from runner.site.floor import cell_of
-from runner.site.routes import find_route, weight_from_clearance
+from runner.site.routes import find_route
 from runner.site.values import CELL_M, Point, Pose
 
 SOFT_M = 0.3
 """Beyond the circumscribed radius, how much more clearance a route likes to have."""
 STRENGTH = 8.0
 """How much dearer the tightest cell is than an open one."""
-EVERY_CELLS, SMOOTH_POINTS = 2, 3
-"""A route keeps every so many of its cells, smoothed over so many points to each side."""
-START_REACH_CELLS = 10
-"""How far off its own cell the robot may begin a route where its own cell is too tight."""
+SMOOTH_POINTS = 3
+"""A route is smoothed over so many of its points, 0.1 m apart, to each side."""
+START_REACH_CELLS = 6
+"""How far off its own cell (of 10 cm) a route may begin where that is too tight."""
 SLACK_M = 0.01
 """A route counts as obstructed where its clearance fell by more than this below what it needs."""
 
@@ -58,6 +59,19 @@ class Route:
         return tuple(points if points[-1] == end else [*points, end])
 
 
+def find_halved(weight: NDArray[np.float32], start: Point, goal: Point) -> NDArray[np.float64] | None:
+    """The cheapest route on weights by `kernels.weights.halved`, as points (n, 2); None where there is none."""
+    row, column = _halved_cell(start)
+    first = nearest_finite(weight, row, column, START_REACH_CELLS)
+    found = find_route(weight, first, _halved_cell(goal))
+    return None if found is None else (found.cells[:, ::-1].astype(np.float64) + 0.5) * (2.0 * CELL_M)
+
+
+def _halved_cell(point: Point) -> tuple[int, int]:
+    row, column = cell_of(point)
+    return row // 2, column // 2
+
+
 class Planner:
     """Plans for one robot."""
 
@@ -68,13 +82,11 @@ class Planner:
 
     def plan(self, field: NDArray[np.float32], start: Pose, goal: Pose) -> Route | None:
         """The route where there is one. `field` is the distance to the nearest known or remembered obstacle."""
-        row, column = cell_of((start.x, start.y))
-        first = nearest_open(field, row, column, self.clearance_needed, START_REACH_CELLS)
-        weight = weight_from_clearance(field, self.clearance_needed, self._soft, STRENGTH)
-        found = find_route(weight, first, cell_of((goal.x, goal.y)))
-        if found is None:
+        weight = halved(field, self.clearance_needed, self._soft, STRENGTH)
+        inner = find_halved(weight, (start.x, start.y), (goal.x, goal.y))
+        if inner is None:
             return None
-        raw = np.vstack([(start.x, start.y), found.points()[1:-1:EVERY_CELLS], (goal.x, goal.y)])
+        raw = np.vstack([(start.x, start.y), inner[1:-1], (goal.x, goal.y)])
         points = smoothed(raw, field, self.clearance_needed, SMOOTH_POINTS)
         needs = clearances(points, field, self.clearance_needed) - SLACK_M
         return Route(points, lengths(points), needs)

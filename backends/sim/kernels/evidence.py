@@ -29,20 +29,36 @@ TILE = 16
 
 
 @kernel
-def lower(target: NDArray[Any], source: NDArray[Any]) -> None:
-    """The smaller of two rows, into the first."""
-    for index in range(target.shape[0]):
-        target[index] = source[index] if source[index] < target[index] else target[index]
+def lower(
+    field: NDArray[Any],
+    disc: NDArray[Any],
+    row: int,
+    column: int,
+    low_row: int,
+    high_row: int,
+    low_column: int,
+    high_column: int,
+) -> None:
+    """Lower the field around a remembered cell within bounds (high ones not included).
+
+    `disc` holds the distances of a square patch around its middle. Unsigned indices let the inner loop be vectorized.
+    """
+    reach = disc.shape[0] // 2
+    first, last = max(column - reach, low_column), min(column + reach + 1, high_column)
+    if first >= last:
+        return
+    length, target, source = np.uint64(last - first), np.uint64(first), np.uint64(first + reach - column)
+    for r in range(max(row - reach, low_row), min(row + reach + 1, high_row)):
+        field_row, disc_row = np.uint64(r), np.uint64(r - row + reach)
+        for index in range(length):
+            old, new = field[field_row, target + index], disc[disc_row, source + index]
+            field[field_row, target + index] = new if new < old else old
 
 
 @kernel
 def paint(field: NDArray[Any], disc: NDArray[Any], row: int, column: int) -> None:
-    """Lower the field around one remembered cell; `disc` holds the distances of a square patch around its middle."""
-    reach = disc.shape[0] // 2
-    first, last = max(column - reach, 0), min(column + reach + 1, field.shape[1])
-    shift = reach - column
-    for r in range(max(row - reach, 0), min(row + reach + 1, field.shape[0])):
-        lower(field[r, first:last], disc[r - row + reach, first + shift : last + shift])
+    """Lower the field around one newly remembered cell."""
+    lower(field, disc, row, column, 0, field.shape[0], 0, field.shape[1])
 
 
 @kernel
@@ -86,12 +102,8 @@ def restore(
     field[low_row:high_row, low_column:high_column] = known[low_row:high_row, low_column:high_column]
     for index in range(count):
         row, column = cells[index] // columns, cells[index] % columns
-        first_row, last_row = max(row - reach, low_row), min(row + reach + 1, high_row)
-        first, last = max(column - reach, low_column), min(column + reach + 1, high_column)
-        shift = reach - column
-        if first < last:
-            for r in range(first_row, last_row):
-                lower(field[r, first:last], disc[r - row + reach, first + shift : last + shift])
+        if low_row - reach <= row < high_row + reach:
+            lower(field, disc, row, column, low_row, high_row, low_column, high_column)
 
 
 @kernel
@@ -168,21 +180,22 @@ def fade(
     first: float,
     step: float,
     reach: float,
-    known: NDArray[Any],
     evidence: NDArray[Any],
     seen: NDArray[Any],
     number: int,
     cells: NDArray[Any],
     count: int,
-    field: NDArray[Any],
-    disc: NDArray[Any],
-) -> int:
-    """Take evidence from the cells that this scan saw through; the new number of remembered cells."""
-    columns = field.shape[1]
-    lost = np.empty(count, dtype=np.int64)
-    gone = 0
+    lost: NDArray[Any],
+    gone: int,
+) -> tuple[int, int]:
+    """Take evidence from the cells that this scan saw through; the new number of remembered cells.
+
+    Those forgotten are added to `lost`, of which `gone` are in use; the second number returned is how many then are.
+    The field still has to be made right (`repaint`). Where `lost` is full, no more are forgotten this time.
+    """
+    columns = evidence.shape[1]
     index = 0
-    while index < count:
+    while index < count and gone < lost.shape[0]:
         row, column = cells[index] // columns, cells[index] % columns
         if seen[row, column] != number and passes(
             ranges, x, y, first, step, (column + 0.5) * CELL, (row + 0.5) * CELL, reach
@@ -195,9 +208,7 @@ def fade(
                 cells[index] = cells[count]
                 continue
         index += 1
-    if gone:
-        repaint(field, known, disc, cells, count, lost[:gone])
-    return count
+    return count, gone
 
 
 @kernel

@@ -28,25 +28,11 @@ def value_at(field: NDArray[Any], x: float, y: float) -> float:
 
 
 @kernel
-def nearest_open(field: NDArray[Any], row: int, column: int, least: float, reach: int) -> tuple[int, int]:
-    """The cell nearest to (row, column), at most `reach` cells off by row and column, whose value is at least `least`.
+def nearest_finite(weight: NDArray[Any], row: int, column: int, reach: int) -> tuple[int, int]:
+    """The cell nearest to (row, column), at most `reach` cells off by row and column, whose weight is not infinite.
 
     (-1, -1) where there is none. Of equally near cells, the first by row, then by column.
     """
-    best = (reach + 1) * (reach + 1) * 2
-    found = (-1, -1)
-    for r in range(max(row - reach, 0), min(row + reach + 1, field.shape[0])):
-        for c in range(max(column - reach, 0), min(column + reach + 1, field.shape[1])):
-            square = (r - row) * (r - row) + (c - column) * (c - column)
-            if square < best and field[r, c] >= least:
-                best = square
-                found = (r, c)
-    return found
-
-
-@kernel
-def nearest_finite(weight: NDArray[Any], row: int, column: int, reach: int) -> tuple[int, int]:
-    """As `nearest_open`, for the nearest cell whose weight is not infinite."""
     best = (reach + 1) * (reach + 1) * 2
     found = (-1, -1)
     for r in range(max(row - reach, 0), min(row + reach + 1, weight.shape[0])):

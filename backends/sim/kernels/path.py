@@ -62,24 +62,29 @@ def index_at(along: NDArray[Any], length: float) -> int:
 def project(
     points: NDArray[Any], along: NDArray[Any], x: float, y: float, low: float, high: float
 ) -> tuple[float, float]:
-    """Where on the part of the route between two lengths a point is nearest: (length along, distance from it)."""
-    best, found = np.inf, low
-    count = points.shape[0]
-    index = index_at(along, low)
-    while index < count - 1 and along[index] <= high:
+    """Where on the part of the route between two lengths a point is nearest: (length along, distance from it).
+
+    By the nearest point of the route and the two sides that meet there, which is exact where a route does not come
+    back on itself within the part.
+    """
+    first, last = index_at(along, low), min(index_at(along, high) + 1, points.shape[0] - 1)
+    best, nearest = np.inf, first
+    for index in range(first, last + 1):
+        off_x, off_y = x - points[index, 0], y - points[index, 1]
+        square = off_x * off_x + off_y * off_y
+        if square < best:
+            best, nearest = square, index
+    found = along[nearest]
+    for index in range(max(nearest - 1, first), min(nearest + 1, last)):
         side_x, side_y = points[index + 1, 0] - points[index, 0], points[index + 1, 1] - points[index, 1]
-        square = side_x * side_x + side_y * side_y
         to_x, to_y = x - points[index, 0], y - points[index, 1]
-        share = min(max((to_x * side_x + to_y * side_y) / square, 0.0), 1.0) if square > 0.0 else 0.0
+        size = side_x * side_x + side_y * side_y
+        share = min(max((to_x * side_x + to_y * side_y) / size, 0.0), 1.0) if size > 0.0 else 0.0
         off_x, off_y = to_x - share * side_x, to_y - share * side_y
-        off = off_x * off_x + off_y * off_y
-        if off < best:
-            best = off
+        square = off_x * off_x + off_y * off_y
+        if square < best:
+            best = square
             found = along[index] + share * (along[index + 1] - along[index])
-        index += 1
-    if best == np.inf:
-        to_x, to_y = x - points[count - 1, 0], y - points[count - 1, 1]
-        return along[count - 1], math.sqrt(to_x * to_x + to_y * to_y)
     return found, math.sqrt(best)
 
 

@@ -4,7 +4,7 @@ Candidates are the speeds and turn rates that the drive can reach within a short
 it is admissible where the robot could stop before its outline comes too near to anything. Of the admissible ones
 the best makes most way along the route, stays near it, points along it and keeps off obstacles.
 
-The outline is given as `rim`, points on it no more than twice the margin apart, shape (n, 2), robot frame. `field` is
+The outline is given as `rim`, points on it with the distance to the next, shape (n, 3), robot frame. `field` is
 the believed distance to the nearest obstacle (see `evidence`).
 """
 
@@ -24,6 +24,7 @@ from runner.site.compiled import kernel_compiler
 
 kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, path.__file__)
 
+CELL_DIAGONAL = 0.0708
 STEP_S = 0.1  # time between two checks on an arc
 REACTION_S = 0.1  # one tick passes before a change of mind takes effect
 SPEEDS, TURNS = 7, 21  # candidates
@@ -36,6 +37,28 @@ POINT_AHEAD_M = 0.3  # where on the route its direction is taken
 
 @kernel
 def closeness(
+    field: NDArray[Any], rim: NDArray[Any], x: float, y: float, cosine: float, sine: float, enough: float
+) -> float:
+    """The least clearance of the outline, turned by an angle given as cosine and sine, as far as it is below `enough`.
+
+    `rim` has rows (x, y, distance to the next). Points so near to one with much clearance that they cannot have too
+    little are not looked at.
+    """
+    least = enough
+    spare = 0.0
+    for index in range(rim.shape[0]):
+        if spare > 0.0:
+            spare -= rim[index, 2]
+            continue
+        ahead, left = rim[index, 0], rim[index, 1]
+        free = value_at(field, x + ahead * cosine - left * sine, y + ahead * sine + left * cosine)
+        least = min(least, free)
+        spare = free - enough - CELL_DIAGONAL - rim[index, 2]
+    return least
+
+
+@kernel
+def fits(
     field: NDArray[Any],
     rim: NDArray[Any],
     inner: float,
@@ -44,22 +67,18 @@ def closeness(
     y: float,
     cosine: float,
     sine: float,
-    enough: float,
-) -> float:
-    """The least clearance of the outline, turned by an angle given as cosine and sine, as far as it is below `enough`.
+    need: float,
+) -> bool:
+    """Whether the outline at a pose has everywhere at least the clearance `need`.
 
-    `inner` and `outer` are the inscribed and circumscribed radius, which spare looking at every point of the rim.
+    `inner` and `outer` are the inscribed and circumscribed radius, which mostly settle it.
     """
     center = value_at(field, x, y)
-    if center >= outer + enough:
-        return enough
+    if center >= outer + need + CELL_DIAGONAL:
+        return True
     if center < inner:
-        return 0.0
-    least = enough
-    for index in range(rim.shape[0]):
-        ahead, left = rim[index, 0], rim[index, 1]
-        least = min(least, value_at(field, x + ahead * cosine - left * sine, y + ahead * sine + left * cosine))
-    return least
+        return False
+    return bool(closeness(field, rim, x, y, cosine, sine, need) >= need)
 
 
 @kernel
@@ -75,11 +94,11 @@ def free_turn(
     margin: float,
 ) -> float:
     """How much of a turn in place by the angle `by` is free, at least 0, at most abs(by)."""
-    need = closeness(field, rim, inner, outer, x, y, math.cos(heading), math.sin(heading), margin)
+    need = closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin)
     steps = max(1, math.ceil(abs(by) / 0.07))
     for step in range(1, steps + 1):
         angle = heading + by * step / steps
-        if closeness(field, rim, inner, outer, x, y, math.cos(angle), math.sin(angle), margin) < need:
+        if not fits(field, rim, inner, outer, x, y, math.cos(angle), math.sin(angle), need):
             return abs(by) * (step - 1) / steps
     return abs(by)
 
@@ -98,11 +117,11 @@ def free_straight(
 ) -> float:
     """How much of a straight drive by `by` (negative: backward) is free, at least 0, at most abs(by)."""
     cosine, sine = math.cos(heading), math.sin(heading)
-    need = closeness(field, rim, inner, outer, x, y, cosine, sine, margin)
+    need = closeness(field, rim, x, y, cosine, sine, margin)
     steps = max(1, math.ceil(abs(by) / 0.03))
     for step in range(1, steps + 1):
         part = by * step / steps
-        if closeness(field, rim, inner, outer, x + part * cosine, y + part * sine, cosine, sine, margin) < need:
+        if not fits(field, rim, inner, outer, x + part * cosine, y + part * sine, cosine, sine, need):
             return abs(by) * (step - 1) / steps
     return abs(by)
 
@@ -157,7 +176,7 @@ def choose(
     `covered` is how far along the route the robot is; `window` the time in which candidates must be reachable;
     `horizon` the time an arc is looked at.
     """
-    need = closeness(field, rim, inner, outer, x, y, math.cos(heading), math.sin(heading), margin)
+    need = closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin)
     low_speed = max(0.0, speed - acceleration * window)
     high_speed = max(min(fastest, speed + acceleration * window), low_speed)
     low_turn = max(-turn_fastest, turn - turn_acceleration * window)
@@ -169,7 +188,7 @@ def choose(
         way = unit_arc(heading, w, steps)
         for i in range(SPEEDS):
             v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
-            free, clearance = rolled(field, rim, inner, outer, x, y, way, v, margin, need)
+            free, clearance = rolled(field, rim, inner, outer, x, y, way, v, need)
             left = free * STEP_S - REACTION_S
             if v > admissible(v * left, acceleration) + 1e-9:
                 continue
@@ -192,19 +211,15 @@ def rolled(
     y: float,
     way: NDArray[Any],
     speed: float,
-    margin: float,
     need: float,
 ) -> tuple[int, float]:
     """How many steps of the arc are free, and the least clearance of the turning center on those."""
     clearance = value_at(field, x, y)
     for step in range(1, way.shape[0]):
         at_x, at_y = x + speed * way[step, 0], y + speed * way[step, 1]
-        center = value_at(field, at_x, at_y)
-        if center < outer + margin:
-            near = closeness(field, rim, inner, outer, at_x, at_y, way[step, 2], way[step, 3], margin)
-            if near < need:
-                return step - 1, clearance
-        clearance = min(clearance, center)
+        if not fits(field, rim, inner, outer, at_x, at_y, way[step, 2], way[step, 3], need):
+            return step - 1, clearance
+        clearance = min(clearance, value_at(field, at_x, at_y))
     return way.shape[0] - 1, clearance
 
 
