@@ -35,6 +35,26 @@ class Capability(Enum):
     EASE_BACK = "ease back"
     RELOCATE = "relocate"
     CHARGE = "charge"
+    RELATIVE = "relative moves"
+
+
+class BackendError(Exception):
+    """The robot is not to be had, or not any more, in a sentence. Raised by `capabilities`, `open` and `reports`."""
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """How a robot on a socket is reached. The files hold keys; the keys themselves are never passed on.
+
+    `session` names the run to the robot: the same again after a restart of the same run, and never that of another.
+    """
+
+    address: str
+    session: str = ""
+    key_file: str = ""
+    robot_key_file: str = ""
+    insecure: bool = False
+    """Plain text is allowed beyond this computer."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,15 +68,22 @@ class Setup:
     seed: int
     begins: datetime
     """Wall time at which a simulated run begins; local time of the site, without a zone."""
+    line: Line | None = None
+    """The way to a robot on a socket; None for a backend that needs none."""
 
 
 @dataclass(frozen=True, slots=True)
 class Goal:
-    """A pose to drive to. `speed` caps the robot's own limit, m/s."""
+    """A pose to drive to. `speed` caps the robot's own limit, m/s.
+
+    With `relative` the pose is seen from where the robot stands when it accepts the goal (x ahead, y to the left), and
+    the robot goes there by its odometry alone, with no map.
+    """
 
     id: int
     pose: Pose
     speed: float
+    relative: bool = False
 
 
 class GoalStatus(Enum):
@@ -140,6 +167,9 @@ class Backend(Protocol):
 
     @property
     def capabilities(self) -> frozenset[Capability]: ...
+
+    def preparation(self) -> str:
+        """What `open` is about to take time for, as a sentence for the person who waits; empty if nothing."""
 
     def open(self) -> None:
         """Make ready, before any other call. May take seconds the first time (compiling, connecting)."""

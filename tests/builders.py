@@ -5,18 +5,22 @@ from __future__ import annotations
 from collections.abc import Iterable
 from math import pi
 
+from runner.language.expressions import Condition, Expression, Kind, Operator, Quantity
 from runner.language.mission import (
     Go,
     Limits,
     Mark,
     Mission,
     Otherwise,
+    Overrun,
+    Prove,
     Recovery,
     RecoveryKind,
     Repeat,
     Rest,
     RetryRule,
     Source,
+    StandingOrder,
     Step,
     Visit,
     Wait,
@@ -92,10 +96,26 @@ def wait(seconds: float) -> Wait:
     return Wait(mark(), seconds)
 
 
+def compare(quantity: Quantity, operator: str, value: float, word: str = "") -> Expression:
+    return Expression(Kind.COMPARE, quantity=quantity, operator=Operator(operator), value=value, word=word)
+
+
+def condition(expression: Expression, lasting: float = 0.0) -> Condition:
+    return Condition(expression, lasting, "a condition")
+
+
 def repeat(
-    *steps: Step, times: int | None = None, seconds: float | None = None, until_clock: float | None = None
+    *steps: Step,
+    times: int | None = None,
+    seconds: float | None = None,
+    until_clock: float | None = None,
+    until: Condition | None = None,
+    every: float | None = None,
+    overrun: Overrun = Overrun.AT_ONCE,
 ) -> Repeat:
-    return Repeat(mark(), times, seconds, until_clock, steps)
+    if until_clock is not None:
+        until = condition(compare(Quantity.CLOCK, ">=", until_clock))
+    return Repeat(mark(), times, seconds, until, steps, every, overrun)
 
 
 def hall() -> Site:
@@ -104,7 +124,14 @@ def hall() -> Site:
     return Site("hall", 10.0, 3.0, (outline,), (), (), (HOME, FAR, SIDE))
 
 
-def mission(*steps: Step, end_by: float | None = None, speed: float | None = None, site: Site | None = None) -> Mission:
+def mission(
+    *steps: Step,
+    end_by: float | None = None,
+    speed: float | None = None,
+    site: Site | None = None,
+    orders: tuple[StandingOrder, ...] = (),
+    prove: Prove | None = None,
+) -> Mission:
     return Mission(
         name="test mission",
         site=site or hall(),
@@ -115,4 +142,6 @@ def mission(*steps: Step, end_by: float | None = None, speed: float | None = Non
         rules=(),
         steps=steps,
         sources=(Source(FILE, "mission: test mission\n"),),
+        prove=prove,
+        orders=orders,
     )

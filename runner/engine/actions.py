@@ -4,13 +4,18 @@ from __future__ import annotations
 
 from collections.abc import Callable
 from dataclasses import replace
+from hashlib import sha256
+from math import ceil, dist
 
 from runner.engine.diagnosis import Evidence, diagnose, near
-from runner.engine.draft import Draft, next_clock, without
+from runner.engine.draft import Draft, without
 from runner.engine.progress import Progress
-from runner.engine.state import Incident, Leg, Loop
+from runner.engine.state import INFINITE, Incident, Leg, Loop, Visiting
 from runner.engine.values import (
+    Answered,
+    Asked,
     Clear,
+    Counted,
     EaseBack,
     Ended,
     Go,
@@ -19,17 +24,21 @@ from runner.engine.values import (
     IncidentEnded,
     LegBegan,
     LegEnded,
+    Notified,
     RecoveryBegan,
     Relocate,
     Replan,
+    StartCharging,
     StepBegan,
     TryFailed,
 )
+from runner.language.mission import Order
 from runner.machine.table import Action, Ending, Event, Outcome, Register, State, Timer, Verb
 
 ENDING_REASONS: dict[Ending, str] = {
     Ending.COMPLETED: "all steps done",
     Ending.LEG_FAILED: "a leg failed, and the mission was to end in that case",
+    Ending.GIVEN_UP: "given up, as written",
     Ending.TIMED_OUT: "the end-by time came",
     Ending.ABORTED: "aborted by a person",
 }
@@ -38,6 +47,7 @@ _UNRECOVERED: dict[Outcome, str] = {
     Outcome.FAILED: "nothing: the leg failed",
     Outcome.SKIPPED: "nothing: a person skipped the leg",
     Outcome.ABORTED: "nothing: the mission ended",
+    Outcome.INTERRUPTED: "nothing: a standing order began the step anew",
 }
 
 
@@ -81,7 +91,7 @@ def _drive(draft: Draft, _: Action) -> None:
     target = draft.machine.places[place]
     state.goals_sent += 1
     state.goal = state.goals_sent
-    draft.effects.append(Go(state.goal, target.name, target.pose, draft.machine.speed))
+    draft.effects.append(Go(state.goal, target.name, target.pose, draft.machine.speed, draft.block().relative))
 
 
 def _halt(draft: Draft, _: Action) -> None:
@@ -160,19 +170,90 @@ def _add(draft: Draft, action: Action) -> None:
 
 
 def _enter_loop(draft: Draft, _: Action) -> None:
-    block, now = draft.block(), draft.stamp + draft.state.clock
-    ends = float("inf")
-    if block.clock is not None:
-        ends = next_clock(block.clock, now)
-    elif block.seconds is not None:
-        ends = now + block.seconds
-    draft.state.loops = {**draft.state.loops, draft.state.address[0]: Loop(0, ends)}
+    now, seconds = draft.clock(), draft.block().seconds
+    loop = Loop(entered=now, ends=INFINITE if seconds is None else now + seconds)
+    draft.state.loops = {**draft.state.loops, draft.state.address[0]: loop}
 
 
 def _count_lap(draft: Draft, _: Action) -> None:
     number = draft.state.address[0]
     loop = draft.state.loops[number]
-    draft.state.loops = {**draft.state.loops, number: replace(loop, laps=loop.laps + 1)}
+    due = draft.stamp + (draft.block().every or 0.0)
+    draft.state.loops = {**draft.state.loops, number: replace(loop, laps=loop.laps + 1, due=due)}
+
+
+def _start_lap(draft: Draft, action: Action) -> None:
+    """Wait until the next lap is due. One that is overdue begins at once, or at the next full interval."""
+    block, loop = draft.block(), draft.state.loops[draft.state.address[0]]
+    late = draft.stamp - loop.due
+    if block.wait_for_interval and late > 0.0 and block.every:
+        late -= ceil(late / block.every) * block.every
+    _set_timer(draft, action, max(0.0, -late))
+
+
+# --- visits, questions and other steps ----------------------------------------------------------------------------
+
+
+def _begin_visit(draft: Draft, _: Action) -> None:
+    number, block = draft.state.address[0], draft.block()
+    begun = draft.state.visits.get(number, Visiting()).begun + 1
+    left = tuple(range(len(block.branches)))
+    if block.order is Order.SHUFFLED:
+        left = tuple(sorted(left, key=lambda index: _lot(draft.state.seed, number, begun, index)))
+    draft.state.visits = {**draft.state.visits, number: Visiting(begun, left)}
+
+
+def _lot(*numbers: int) -> bytes:
+    """A number drawn by these numbers alone, so that the engine needs no source of chance."""
+    return sha256(",".join(map(str, numbers)).encode()).digest()
+
+
+def _pick_place(draft: Draft, _: Action) -> None:
+    number, block = draft.state.address[0], draft.block()
+    visit = draft.state.visits[number]
+    if not visit.left:
+        draft.state.visits = {**draft.state.visits, number: replace(visit, now=None)}
+        return
+    now = visit.left[0]
+    if block.order is Order.NEAREST:
+        now = min(visit.left, key=lambda index: (_way_to(draft, block.branch_places[index]), index))
+    left = tuple(index for index in visit.left if index != now)
+    draft.state.visits = {**draft.state.visits, number: replace(visit, left=left, now=now)}
+
+
+def _way_to(draft: Draft, place: int) -> float:
+    """Meters to a place: of route from the place last arrived at; else straight, from where the robot stands."""
+    state = draft.state
+    if state.here is not None:
+        return draft.machine.lengths[state.here][place]
+    pose = draft.machine.places[place].pose
+    return 0.0 if state.seen is None else dist((pose.x, pose.y), (state.seen.pose.x, state.seen.pose.y))
+
+
+def _ask(draft: Draft, _: Action) -> None:
+    block = draft.block()
+    draft.state.answer = ""
+    draft.effects.append(Asked(block.text, block.answers, block.seconds or 0.0, block.word))
+
+
+def _silence(draft: Draft, _: Action) -> None:
+    draft.state.answer = draft.block().word
+    draft.effects.append(Answered(draft.state.answer, ""))
+
+
+def _charge(draft: Draft, _: Action) -> None:
+    draft.effects.append(StartCharging())
+
+
+def _count(draft: Draft, _: Action) -> None:
+    block = draft.block()
+    value = draft.state.counts.get(block.word, 0) + block.by
+    draft.state.counts = {**draft.state.counts, block.word: value}
+    draft.effects.append(Counted(block.word, value))
+
+
+def _notify(draft: Draft, _: Action) -> None:
+    draft.effects.append(Notified(draft.block().text))
 
 
 # --- legs, incidents, the end -------------------------------------------------------------------------------------
@@ -190,14 +271,15 @@ def _begin_leg(draft: Draft, _: Action) -> None:
 
 def _end_leg(draft: Draft, action: Action) -> None:
     assert action.outcome is not None, "the compiler gives every end of a leg its outcome"
-    _finish_leg(draft, action.outcome, action.reason)
+    finish_leg(draft, action.outcome, action.reason)
 
 
 def _skip_leg(draft: Draft, _: Action) -> None:
-    _finish_leg(draft, Outcome.SKIPPED, "skipped by a person")
+    finish_leg(draft, Outcome.SKIPPED, "skipped by a person")
 
 
-def _finish_leg(draft: Draft, outcome: Outcome, reason: str) -> None:
+def finish_leg(draft: Draft, outcome: Outcome, reason: str) -> None:
+    """End the leg under way, if there is one, and the incident with it."""
     state, leg = draft.state, draft.state.leg
     if leg is None:
         return
@@ -211,6 +293,14 @@ def _finish_leg(draft: Draft, outcome: Outcome, reason: str) -> None:
     state.timers = {}
     state.legs_arrived += outcome is Outcome.ARRIVED
     state.legs_failed += outcome is Outcome.FAILED
+    state.here = _place_arrived_at(draft) if outcome is Outcome.ARRIVED else None
+    if outcome is not Outcome.INTERRUPTED:
+        state.last_leg = outcome
+
+
+def _place_arrived_at(draft: Draft) -> int | None:
+    block = draft.block()
+    return None if block.relative else block.place
 
 
 def _open_incident(draft: Draft, event: Event, detail: str) -> None:
@@ -245,8 +335,13 @@ def _finish_incident(draft: Draft, *, recovered: bool, ended_by: str) -> None:
 
 def _end_mission(draft: Draft, action: Action) -> None:
     assert action.ending is not None, "the compiler gives every end its kind"
-    reason = ENDING_REASONS[action.ending]
-    _finish_leg(draft, Outcome.ABORTED, reason)
+    reason = draft.block().text or ENDING_REASONS[action.ending]
+    finish_leg(draft, Outcome.ABORTED, reason)
+    interrupted = draft.state.interrupted
+    if interrupted is not None:
+        draft.state.leg, draft.state.incident = interrupted.leg, interrupted.incident
+        draft.state.registers = interrupted.registers
+        finish_leg(draft, Outcome.ABORTED, reason)
     draft.state.ended = action.ending
     draft.state.timers = {}
     draft.effects.append(Ended(action.ending, reason))
@@ -270,5 +365,13 @@ _VERBS: dict[Verb, Callable[[Draft, Action], None]] = {
     Verb.CLOSE_INCIDENT: _close_incident,
     Verb.ENTER_LOOP: _enter_loop,
     Verb.COUNT_LAP: _count_lap,
+    Verb.START_LAP: _start_lap,
+    Verb.BEGIN_VISIT: _begin_visit,
+    Verb.PICK_PLACE: _pick_place,
+    Verb.ASK: _ask,
+    Verb.SILENCE: _silence,
+    Verb.CHARGE: _charge,
+    Verb.COUNT: _count,
+    Verb.NOTIFY: _notify,
     Verb.END_MISSION: _end_mission,
 }

@@ -37,6 +37,10 @@ class Draft:
     def local(self) -> State:
         return self.fragment().states[self.state.address[1]]
 
+    def clock(self) -> float:
+        """The time by the clock, seconds since the midnight before the run."""
+        return self.stamp + self.state.clock
+
     def driven(self) -> float:
         """The robot's odometer, meters."""
         return self.state.seen.driven if self.state.seen else 0.0

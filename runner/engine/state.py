@@ -7,8 +7,11 @@ from dataclasses import dataclass, field
 
 from runner.engine.progress import Progress
 from runner.engine.values import Seen
-from runner.machine.table import Address, Ending, Event, Machine, Register, Timer
+from runner.machine.table import Address, Ending, Event, Machine, Outcome, Register, Timer
 from runner.site.values import Point
+
+INFINITE = 1e18
+"""Seconds that never come; a number that JSON can hold, since a state is kept in the record."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -38,61 +41,101 @@ class Incident:
 
 @dataclass(frozen=True, slots=True)
 class Loop:
-    """A loop's registers: laps begun; the clock (seconds since the first midnight) at which it ends, if timed."""
+    """A loop's registers. Clock times are seconds since the midnight before the run.
+
+    `laps` begun; `entered` and, if it is timed, `ends` by the clock; `due` is the stamp at which the next lap begins.
+    """
 
     laps: int = 0
-    ends: float = float("inf")
+    entered: float = 0.0
+    ends: float = INFINITE
+    due: float = 0.0
+
+
+@dataclass(frozen=True, slots=True)
+class Visiting:
+    """A visit's registers: how often it was begun, the branches still to come, and the one under way."""
+
+    begun: int = 0
+    left: tuple[int, ...] = ()
+    now: int | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class Frame:
-    """The return register: the place an interruption left, and the seconds its timers still had to run."""
+    """The return register of a hold: the place that was left, and the seconds its timers still had to run."""
 
     address: Address
     timers: Mapping[Timer, float]
+
+
+@dataclass(frozen=True, slots=True)
+class Interrupted:
+    """The return register of a standing order: the place, and the leg with its registers and its trouble."""
+
+    order: int
+    frame: Frame
+    step: int | None
+    registers: Mapping[Register, int]
+    leg: Leg | None
+    incident: Incident | None
+
+
+@dataclass(frozen=True, slots=True)
+class Lasting:
+    """Since when a condition has held without a break; `acted` once it has had its effect, until it is false again."""
+
+    since: float
+    acted: bool = False
 
 
 @dataclass(slots=True)
 class EngineState:
     """Everything the engine knows. Mappings are never changed in place, so a shallow copy is a snapshot.
 
-    `clock` is the time of day at stamp 0, seconds since midnight; `end_by` and loop ends are seconds since that same
-    midnight. `goal` and `action` are ids under way at the robot, None if none is. `timers` hold stamps.
+    `now` is the stamp of the last input. `clock` is the time of day at stamp 0, seconds since midnight; `began_clock`,
+    `end_by` and the ends of loops are seconds since that same midnight. `goal` and `action` are ids under way at the
+    robot, None if none is. `timers` hold stamps. `here` is the place last arrived at. `entered` is the stamp at which
+    the present state was entered; `met` is the register of the condition watched in it, `orders` those of the standing
+    orders, by their number.
     """
 
     address: Address
+    now: float = 0.0
     clock: float = 0.0
+    began: float = 0.0
+    began_clock: float = 0.0
+    seed: int = 0
     end_by: float | None = None
     step: int | None = None
+    entered: float = 0.0
     timers: Mapping[Timer, float] = field(default_factory=dict)
     registers: Mapping[Register, int] = field(default_factory=dict)
     loops: Mapping[int, Loop] = field(default_factory=dict)
+    visits: Mapping[int, Visiting] = field(default_factory=dict)
+    counts: Mapping[str, int] = field(default_factory=dict)
+    answer: str = ""
+    met: Lasting | None = None
+    orders: Mapping[int, Lasting] = field(default_factory=dict)
     goal: int | None = None
     goals_sent: int = 0
     action: int | None = None
     actions_asked: int = 0
     progress: Progress | None = None
     seen: Seen | None = None
+    here: int | None = None
     leg: Leg | None = None
+    last_leg: Outcome | None = None
     legs: int = 0
     legs_arrived: int = 0
     legs_failed: int = 0
     incident: Incident | None = None
     incidents: int = 0
     held: Frame | None = None
+    interrupted: Interrupted | None = None
     ended: Ending | None = None
 
 
 def initial_state(machine: Machine) -> EngineState:
     """The state before the run begins."""
-    return EngineState(address=machine.start)
-
-
-def next_deadline(state: EngineState) -> float | None:
-    """The stamp at which the engine wants a Tick, if nothing happens before; None if it waits for events alone."""
-    if state.ended is not None:
-        return None
-    deadlines = list(state.timers.values())
-    if state.end_by is not None:
-        deadlines.append(state.end_by - state.clock)
-    return min(deadlines, default=None)
+    return EngineState(address=machine.start, here=machine.home)

@@ -16,10 +16,11 @@ from runner.site.values import Point, Pose
 
 @dataclass(frozen=True, slots=True)
 class Begin:
-    """The run begins. `clock` is the time of day at stamp 0, seconds since midnight."""
+    """The run begins. `clock` is the time of day at stamp 0, seconds since midnight; `seed` orders shuffled visits."""
 
     stamp: float
     clock: float
+    seed: int = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -63,6 +64,15 @@ class Tick:
     """Time has come this far; timers may have run out."""
 
     stamp: float
+
+
+@dataclass(frozen=True, slots=True)
+class Answer:
+    """A person answers the question that is open."""
+
+    stamp: float
+    word: str
+    who: str
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,7 +125,7 @@ class PickedUp:
     """Wall seconds for which nobody was in charge; 0 where time is virtual."""
 
 
-Input = Begin | Seen | GoalNews | ActionNews | Tick | Operator | Remark | Trouble | ClockMoved | PickedUp
+Input = Begin | Seen | GoalNews | ActionNews | Tick | Answer | Operator | Remark | Trouble | ClockMoved | PickedUp
 
 # --- commands -------------------------------------------------------------------------------------------------
 
@@ -126,6 +136,7 @@ class Go:
     place: str
     pose: Pose
     speed: float
+    relative: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -155,7 +166,12 @@ class Relocate:
     action_id: int
 
 
-Command = Go | Halt | Clear | Replan | EaseBack | Relocate
+@dataclass(frozen=True, slots=True)
+class StartCharging:
+    pass
+
+
+Command = Go | Halt | Clear | Replan | EaseBack | Relocate | StartCharging
 
 # --- notes ----------------------------------------------------------------------------------------------------
 
@@ -251,6 +267,52 @@ class OperatorActed:
 
 
 @dataclass(frozen=True, slots=True)
+class Asked:
+    """A question is open; after `seconds` the answer will be `if_silent`."""
+
+    text: str
+    answers: tuple[str, ...]
+    seconds: float
+    if_silent: str
+
+
+@dataclass(frozen=True, slots=True)
+class Answered:
+    """`who` is empty where nobody answered in time."""
+
+    answer: str
+    who: str
+
+
+@dataclass(frozen=True, slots=True)
+class Notified:
+    """Something a person is to be told, in the author's words."""
+
+    text: str
+
+
+@dataclass(frozen=True, slots=True)
+class Counted:
+    name: str
+    value: int
+
+
+@dataclass(frozen=True, slots=True)
+class OrderBegan:
+    """A standing order interrupts the mission at a step."""
+
+    name: str
+    step: int | None
+
+
+@dataclass(frozen=True, slots=True)
+class OrderEnded:
+    """A standing order is over and the mission goes on."""
+
+    name: str
+
+
+@dataclass(frozen=True, slots=True)
 class Ended:
     ending: Ending
     reason: str
@@ -297,6 +359,12 @@ Note = (
     | IncidentEnded
     | TryFailed
     | OperatorActed
+    | Asked
+    | Answered
+    | Notified
+    | Counted
+    | OrderBegan
+    | OrderEnded
     | Remarked
     | TroubleNoted
     | ClockSet

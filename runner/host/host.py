@@ -25,7 +25,7 @@ from backends.contract import (
     Telemetry,
 )
 from runner.engine.advance import advance
-from runner.engine.state import EngineState, initial_state, next_deadline
+from runner.engine.state import EngineState, initial_state
 from runner.engine.values import (
     ActionNews,
     Begin,
@@ -40,8 +40,10 @@ from runner.engine.values import (
     Relocate,
     Replan,
     Seen,
+    StartCharging,
     Tick,
 )
+from runner.engine.watching import next_deadline
 from runner.host.board import Board
 from runner.host.pacing import Pacer
 from runner.host.viewing import clock_text, view_of
@@ -106,7 +108,7 @@ class Host:
         """One look at everything: wishes, reports up to the next deadline, timers."""
         self._wishes()
         clock = self.backend.clock
-        deadline = next_deadline(self.state)
+        deadline = next_deadline(self.machine, self.state)
         until = clock.now() + self._slice()
         if deadline is not None:
             until = min(until, deadline)
@@ -188,7 +190,7 @@ def _seen(report: Telemetry) -> Seen:
 
 
 def _go(backend: Backend, command: Go) -> None:
-    backend.go(Goal(command.goal_id, command.pose, command.speed))
+    backend.go(Goal(command.goal_id, command.pose, command.speed, command.relative))
 
 
 _COMMANDS: dict[type[Any], Callable[[Backend, Any], None]] = {
@@ -198,4 +200,5 @@ _COMMANDS: dict[type[Any], Callable[[Backend, Any], None]] = {
     Replan: lambda backend, command: backend.replan(command.action_id),
     EaseBack: lambda backend, command: backend.ease_back(command.action_id, command.distance),
     Relocate: lambda backend, command: backend.relocate(command.action_id, None),
+    StartCharging: lambda backend, _: backend.charge(),
 }

@@ -6,6 +6,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 
 from runner.language.diagnostics import nearest, quoted
+from runner.language.expressions import Condition, Expression, Kind, Operator, Quantity
 from runner.language.fields import Fields, Keys, amount, items, mapping
 from runner.language.mission import Go, Mark, Otherwise, Repeat, RetryRule, Step, Visit, Wait
 from runner.language.nodes import Mapping, Node, Scalar, Sequence
@@ -173,9 +174,15 @@ def _bounded(fields: Fields, mark: Mark, steps: tuple[Step, ...]) -> Repeat | No
         mark,
         times=fields.count("times", TIMES) if bound == "times" else None,
         seconds=fields.number("for", REPEAT_FOR) if bound == "for" else None,
-        until_clock=fields.phrase("until", parse_clock, 0.0) if bound == "until" else None,
+        until=_clock_reached(fields) if bound == "until" else None,
         steps=steps,
     )
+
+
+def _clock_reached(fields: Fields) -> Condition:
+    clock = fields.phrase("until", parse_clock, 0.0)
+    expression = Expression(Kind.COMPARE, quantity=Quantity.CLOCK, operator=Operator.AT_LEAST, value=clock)
+    return Condition(expression, text=f"{int(clock) // 3600:02d}:{int(clock) // 60 % 60:02d}")
 
 
 _VERBS: dict[str, Callable[[Scope, Mapping], Step | None]] = {

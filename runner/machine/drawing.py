@@ -73,6 +73,11 @@ def _wiring(machine: Machine) -> Iterator[str]:
     for number, block in enumerate(machine.blocks):
         yield f"  {number:>3} {_label(machine, block)}  [{block.fragment}]{_parameters(machine, block)}"
         yield from (f"        {exit_.value} -> {_where(machine, address)}" for exit_, address in block.exits)
+        yield from (f"        branch -> {_where(machine, address)}" for address in block.branches)
+    if machine.orders:
+        yield "[standing orders, the first that can act does]"
+    for order in machine.orders:
+        yield f"  {order.name}: when {order.condition.text} -> {_where(machine, order.entry)}"
 
 
 def _parameters(machine: Machine, block: Block) -> str:
@@ -80,7 +85,10 @@ def _parameters(machine: Machine, block: Block) -> str:
         f"to {machine.places[block.place].name}" if block.place is not None else "",
         say_seconds(block.seconds) if block.seconds is not None else "",
         f"{block.times} times" if block.times is not None else "",
-        f"until {say_clock(block.clock)}" if block.clock is not None else "",
+        f"every {say_seconds(block.every)}" if block.every is not None else "",
+        f"condition {block.condition.text}" if block.condition is not None else "",
+        f"text '{block.text}'" if block.text else "",
+        f"count {block.word} by {block.by}" if block.by else "",
     ]
     return "".join(f", {part}" for part in parts if part)
 
@@ -116,12 +124,20 @@ def _edges(machine: Machine) -> Iterator[Edge]:
         joined: dict[tuple[str, str], list[str]] = {}
         for local, state in enumerate(machine.fragments[block.fragment].states):
             for row in state.rows:
-                target = (number, row.target) if isinstance(row.target, int) else exits.get(row.target or Exit.HELD)
-                if target is not None:
+                for target in _targets(block, number, row, exits):
                     guard = "" if row.guard == ALWAYS else f" [{_guard(row.guard)}]"
                     ends = (f"b{number}s{local}", f"b{target[0]}s{target[1]}")
                     joined.setdefault(ends, []).append(row.event.value + guard)
         yield from ((start, end, ", ".join(labels)) for (start, end), labels in joined.items())
+
+
+def _targets(block: Block, number: int, row: Row, exits: dict[Exit, Address]) -> tuple[Address, ...]:
+    """Where a row can lead within the machine; nowhere for those that stay or return."""
+    if isinstance(row.target, int):
+        return ((number, row.target),)
+    if row.target is Exit.BRANCH:
+        return block.branches
+    return (exits[row.target],) if row.target in exits else ()
 
 
 def as_dot(machine: Machine) -> str:

@@ -12,7 +12,9 @@ How a table is read:
 - An event takes the first row of that event whose guard holds; if the state has none, the machine's `anywhere` rows
   are looked at. `target` is a local state, an exit of the block, or None: stay, without entering again.
 - `Exit.HELD` keeps the place in a return register and enters the held block; `Exit.RETURN` goes back to the
-  `resume` state of the place that was left.
+  `resume` state of the place that was left, `Exit.RETURN_SKIPPED` takes that place's own row for SKIP.
+- A standing order keeps the place in a return register of its own; `Exit.ORDER_RETURN` goes back to `resume`,
+  `Exit.ORDER_REPEAT` to `restart`.
 - A state without rows is an end.
 """
 
@@ -21,7 +23,8 @@ from __future__ import annotations
 from dataclasses import dataclass
 from enum import Enum
 
-from runner.language.mission import Mark
+from runner.language.expressions import Condition
+from runner.language.mission import Mark, Order, Prove
 from runner.site.values import Pose
 
 
@@ -45,6 +48,10 @@ class Event(Enum):
     LEG_TIME_OVER = "leg time over"
     GIVE_UP_TIME = "give-up time"
     END_BY_TIME = "end-by time"
+    UP_TO_OVER = "up-to time over"
+    LAP_DUE = "lap due"
+    CONDITION_MET = "condition met"
+    ANSWERED = "answered"
     HOLD = "hold"
     RELEASE = "release"
     SKIP = "skip"
@@ -59,6 +66,8 @@ class Timer(Enum):
     WAIT = "wait"
     LEG = "leg"
     GIVE_UP = "give up"
+    UP_TO = "up to"
+    LAP = "lap"
 
 
 TIMER_EVENTS: dict[Timer, Event] = {
@@ -67,6 +76,8 @@ TIMER_EVENTS: dict[Timer, Event] = {
     Timer.WAIT: Event.WAIT_OVER,
     Timer.LEG: Event.LEG_TIME_OVER,
     Timer.GIVE_UP: Event.GIVE_UP_TIME,
+    Timer.UP_TO: Event.UP_TO_OVER,
+    Timer.LAP: Event.LAP_DUE,
 }
 
 GOAL_ENDS = (Event.REFUSED, Event.NO_ROUTE, Event.FAILED, Event.HALTED)
@@ -90,9 +101,12 @@ class Exit(Enum):
     FAILED = "failed"
     SKIPPED = "skipped"
     BODY = "body"
+    BRANCH = "branch"
     HELD = "held"
     RETURN = "return"
     RETURN_SKIPPED = "return, skipped"
+    ORDER_RETURN = "return from order"
+    ORDER_REPEAT = "return from order, step anew"
     ABORTED = "aborted"
     TIMED_OUT = "timed out"
 
@@ -104,6 +118,7 @@ class Outcome(Enum):
     FAILED = "failed"
     SKIPPED = "skipped"
     ABORTED = "aborted"
+    INTERRUPTED = "interrupted"
 
 
 class Ending(Enum):
@@ -111,6 +126,7 @@ class Ending(Enum):
 
     COMPLETED = "completed"
     LEG_FAILED = "leg failed"
+    GIVEN_UP = "given up"
     TIMED_OUT = "timed out"
     ABORTED = "aborted"
 
@@ -136,6 +152,14 @@ class Verb(Enum):
     CLOSE_INCIDENT = "close incident"  # reason: a phrase
     ENTER_LOOP = "enter loop"  # laps 0; deadline from the block
     COUNT_LAP = "count lap"
+    START_LAP = "start lap"  # the timer to the next lap of a loop with an interval
+    BEGIN_VISIT = "begin visit"  # all places of the block are still to be visited
+    PICK_PLACE = "pick place"  # the next one, by the block's order
+    ASK = "ask"  # the block's text and answers
+    SILENCE = "silence"  # the answer is what the block says for silence
+    CHARGE = "charge"
+    COUNT = "count"  # the block's count, by its `by`
+    NOTIFY = "notify"  # the block's text
     END_MISSION = "end mission"  # ending; reason: a phrase
 
 
@@ -147,6 +171,8 @@ class Test(Enum):
     BELOW = "below"  # register < amount
     LAPS_LEFT = "laps left"  # laps of this loop < the block's `times`
     TIME_LEFT = "time left"  # the deadline of this loop has not come
+    CONDITION = "condition"  # the block's condition holds at this moment
+    PLACES_LEFT = "places left"  # the visit has a place picked
 
 
 @dataclass(frozen=True, slots=True)
@@ -183,14 +209,18 @@ class Row:
 class State:
     """`resume` is the local state in which the machine goes on when it was interrupted in this one.
 
-    `recovery` numbers the recoveries of a leg from 1, in the order of the rule; 0 for every other state.
+    `restart` is where it begins anew when the step is to be repeated. `recovery` numbers the recoveries of a leg from
+    1, in the order of the rule; 0 for every other state. In a state that `watches`, the block's condition is looked at
+    with every input, from WATCH_AFTER_S on.
     """
 
     name: str
     rows: tuple[Row, ...] = ()
     on_entry: tuple[Action, ...] = ()
     resume: int = 0
+    restart: int = 0
     recovery: int = 0
+    watches: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -212,6 +242,9 @@ class Fragment:
     recoveries_at_most: int = 0
 
 
+WATCH_AFTER_S = 1.0
+"""A condition is looked at from this long after its step began, so that waiting for what holds already takes time."""
+
 Address = tuple[int, int]
 """Block number, local state."""
 
@@ -221,17 +254,29 @@ class Block:
     """An instance of a fragment. `step` indexes `Machine.steps`, None for the held block and the ends; `place`
     indexes `Machine.places`.
 
-    `seconds`: a leg's time limit, a wait's length, a timed loop's length. `times`: laps. `clock`: the clock time that
-    ends a loop, seconds since midnight.
+    `seconds`: a leg's time limit, a wait's length, how long a loop, a question or a condition may take. `times`: laps.
+    `every`: seconds from one lap to the next, and whether a lap that overran waits for the next full interval.
+    `branches`: where each place of a visit begins. `text`: what is asked, told or given as a reason; `word`: the name
+    of a count, or the answer to silence.
     """
 
     fragment: str
     step: int | None
     exits: tuple[tuple[Exit, Address], ...] = ()
     place: int | None = None
+    relative: bool = False
     seconds: float | None = None
     times: int | None = None
-    clock: float | None = None
+    condition: Condition | None = None
+    every: float | None = None
+    wait_for_interval: bool = False
+    branches: tuple[Address, ...] = ()
+    branch_places: tuple[int, ...] = ()
+    order: Order = Order.LISTED
+    text: str = ""
+    answers: tuple[str, ...] = ()
+    word: str = ""
+    by: int = 0
 
 
 @dataclass(frozen=True, slots=True)
@@ -256,6 +301,15 @@ class Target:
 
 
 @dataclass(frozen=True, slots=True)
+class OrderEntry:
+    """A standing order: its steps begin at `entry`; they end in a return from the order or in an end."""
+
+    name: str
+    condition: Condition
+    entry: Address
+
+
+@dataclass(frozen=True, slots=True)
 class Machine:
     """A compiled mission. `exits` are those that belong to no block: held, aborted, timed out."""
 
@@ -271,3 +325,10 @@ class Machine:
     """Cap on the speed of every leg, m/s."""
     end_by: float | None = None
     """Clock time by which the mission ends, seconds since midnight; the first such time after it began."""
+    orders: tuple[OrderEntry, ...] = ()
+    """Standing orders; where several could act at once the first one does."""
+    prove: Prove | None = None
+    home: int | None = None
+    """The place at which the mission begins, if it is among `places`."""
+    lengths: tuple[tuple[float, ...], ...] = ()
+    """Route lengths between places, meters, row to column; only where a visit goes to the nearest place next."""

@@ -15,7 +15,6 @@ from collections.abc import Iterable, Iterator, Mapping
 from runner.language.diagnostics import WHOLE_FILE, Diagnostic
 from runner.language.mission import Mark
 from runner.machine.findings import Finding
-from runner.machine.regions import ENTER, HEAD
 from runner.machine.table import (
     ALWAYS,
     GOAL_ENDS,
@@ -47,18 +46,34 @@ _ENDS_ACTION = {Event.ACTION_DONE, Event.ACTION_FAILED}
 
 def check_table(machine: Machine) -> list[Finding]:
     """Every finding on the table; none means that each of the three properties holds."""
-    findings = [finding for fragment in machine.fragments.values() for finding in _check_fragment(machine, fragment)]
+    entered = entrances(machine)
+    findings = [
+        finding
+        for name, fragment in machine.fragments.items()
+        for finding in _check_fragment(machine, fragment, entered.get(name, {0}))
+    ]
     findings += _dangling_exits(machine)
     if not findings:
         findings += _unreachable_blocks(machine)
-        findings += _timeless_loops(machine)
+        findings += _timeless_loops(machine, entered)
     return findings
 
 
-def outstanding(fragment: Fragment) -> dict[int, Outstanding]:
+def entrances(machine: Machine) -> dict[str, set[int]]:
+    """For each fragment, the local states at which its blocks are entered from elsewhere."""
+    found: dict[str, set[int]] = {}
+    addresses = [machine.start, *(order.entry for order in machine.orders), *(to for _, to in machine.exits)]
+    for block in machine.blocks:
+        addresses += [*(to for _, to in block.exits), *block.branches]
+    for number, local in addresses:
+        found.setdefault(machine.blocks[number].fragment, set()).add(local)
+    return found
+
+
+def outstanding(fragment: Fragment, entered: Iterable[int]) -> dict[int, Outstanding]:
     """What may be going on in each state of a fragment, by going round its rows until nothing new turns up."""
     found: dict[int, Outstanding] = {}
-    waiting: list[tuple[int, Outstanding]] = [(entrance, frozenset()) for entrance in _entrances(fragment)]
+    waiting: list[tuple[int, Outstanding]] = [(entrance, frozenset()) for entrance in sorted(entered)]
     while waiting:
         number, before = waiting.pop()
         state = fragment.states[number]
@@ -74,8 +89,9 @@ def _followers(state: State, inside: Outstanding) -> Iterator[tuple[int, Outstan
     for row in state.rows:
         if isinstance(row.target, int):
             yield row.target, _after(row.actions, _happened(row.event, inside))
-    kept = frozenset(thing for thing in inside if thing in (Timer.LEG, Timer.GIVE_UP))
-    yield state.resume, kept
+    if state.rows and waits(state):
+        yield state.resume, frozenset(thing for thing in inside if thing in (Timer.LEG, Timer.GIVE_UP))
+        yield state.restart, frozenset()
 
 
 def _happened(event: Event, inside: Outstanding) -> Outstanding:
@@ -96,7 +112,7 @@ def _after(actions: Iterable[Action], inside: Outstanding) -> Outstanding:
                 inside -= {GOAL, ACTION, Timer.ACTION}
             case Verb.STOP:
                 inside -= {action.timer or ""}
-            case Verb.START | Verb.START_REST:
+            case Verb.START | Verb.START_REST | Verb.START_LAP:
                 inside |= {action.timer or ""}
             case Verb.END_LEG | Verb.SKIP_LEG | Verb.END_MISSION:
                 inside = frozenset()
@@ -115,24 +131,23 @@ def expected_events(state: State, inside: Outstanding) -> set[Event]:
         events |= _ENDS_ACTION
     if any(action.verb is Verb.DRIVE for action in state.on_entry):
         events |= {Event.STALLED, Event.SWAYING, Event.PROGRESSED}
+    if any(action.verb is Verb.ASK for action in state.on_entry):
+        events.add(Event.ANSWERED)
+    if state.watches:
+        events.add(Event.CONDITION_MET)
     return events
 
 
-def _entrances(fragment: Fragment) -> tuple[int, ...]:
-    looping = any(row.target is Exit.BODY for state in fragment.states for row in state.rows)
-    return (ENTER, HEAD) if looping else (0,)
-
-
-def _check_fragment(machine: Machine, fragment: Fragment) -> Iterator[Finding]:
+def _check_fragment(machine: Machine, fragment: Fragment, entered: Iterable[int]) -> Iterator[Finding]:
     anywhere = {row.event for row in machine.anywhere}
-    found = outstanding(fragment)
+    found = outstanding(fragment, entered)
     for number, state in enumerate(fragment.states):
         where = f"state '{state.name}' of '{fragment.name}'"
         if number not in found:
             yield _fault(machine, None, "unreachable-state", f"{where} can never be reached")
         elif not state.rows:
             continue
-        elif _waits(state):
+        elif waits(state):
             answered = {row.event for row in state.rows if row.guard == ALWAYS} | anywhere
             for event in sorted(expected_events(state, found[number]) - answered, key=lambda event: event.value):
                 yield _fault(machine, None, "no-way-out", f"{where} has no row for '{event.value}'")
@@ -140,21 +155,34 @@ def _check_fragment(machine: Machine, fragment: Fragment) -> Iterator[Finding]:
             yield _fault(machine, None, "no-way-out", f"{where} has no row for the case that none of its guards holds")
 
 
-def _waits(state: State) -> bool:
+def waits(state: State) -> bool:
+    """Whether time can pass in a state."""
     return all(row.event is not Event.AT_ONCE for row in state.rows)
 
 
+_RETURNS = {Exit.RETURN, Exit.RETURN_SKIPPED, Exit.ORDER_RETURN, Exit.ORDER_REPEAT}
+
+
 def _dangling_exits(machine: Machine) -> Iterator[Finding]:
-    shared = {exit_ for exit_, _ in machine.exits} | {Exit.RETURN, Exit.RETURN_SKIPPED}
+    shared = {exit_ for exit_, _ in machine.exits} | _RETURNS
     used = {name: _exits_used(fragment) for name, fragment in machine.fragments.items()}
+    skippable = {name: _skippable(fragment) for name, fragment in machine.fragments.items()}
     for block in machine.blocks:
-        wired = {exit_ for exit_, _ in block.exits}
+        wired = {exit_ for exit_, _ in block.exits} | ({Exit.BRANCH} if block.branches else set())
         for exit_ in sorted(used[block.fragment] - wired - shared, key=lambda exit_: exit_.value):
             yield _fault(
                 machine, block, "no-way-out", f"the exit '{exit_.value}' of {_name(machine, block)} leads nowhere"
             )
-        if block.step is not None and Exit.SKIPPED not in wired and used[block.fragment] & {Exit.FAILED}:
+        if Exit.SKIPPED not in wired and skippable[block.fragment]:
             yield _fault(machine, block, "no-way-out", f"{_name(machine, block)} cannot be skipped")
+
+
+def _skippable(fragment: Fragment) -> bool:
+    """Whether a person can skip while time passes in it, and so leave it through its exit for that."""
+    return any(
+        state.rows and waits(state) and all(row.event is not Event.SKIP for row in state.rows)
+        for state in fragment.states
+    )
 
 
 def _exits_used(fragment: Fragment) -> set[Exit]:
@@ -162,10 +190,11 @@ def _exits_used(fragment: Fragment) -> set[Exit]:
 
 
 def _unreachable_blocks(machine: Machine) -> Iterator[Finding]:
-    seen = {machine.start[0], *(address[0] for _, address in machine.exits)}
+    seen = {machine.start[0], *(to[0] for _, to in machine.exits), *(order.entry[0] for order in machine.orders)}
     waiting = list(seen)
     while waiting:
-        for _, (onward, _) in machine.blocks[waiting.pop()].exits:
+        block = machine.blocks[waiting.pop()]
+        for onward, _ in (*(to for _, to in block.exits), *block.branches):
             if onward not in seen:
                 seen.add(onward)
                 waiting.append(onward)
@@ -174,12 +203,15 @@ def _unreachable_blocks(machine: Machine) -> Iterator[Finding]:
             yield _fault(machine, block, "unreachable-step", f"{_name(machine, block)} can never be reached")
 
 
-def _timeless_loops(machine: Machine) -> Iterator[Finding]:
+def _timeless_loops(machine: Machine, entered: Mapping[str, set[int]]) -> Iterator[Finding]:
     """Follow rows taken at once from every entrance; coming back to a state on the way is a loop without time."""
-    passes = {name: _passes(fragment) for name, fragment in machine.fragments.items()}
+    passes = {
+        name: {entrance: frozenset(_crossed(fragment, entrance)) for entrance in entered.get(name, {0})}
+        for name, fragment in machine.fragments.items()
+    }
     done: set[Address] = set()
     for number in range(len(machine.blocks)):
-        for local in _entrances(machine.fragments[machine.blocks[number].fragment]):
+        for local in sorted(entered.get(machine.blocks[number].fragment, ())):
             looped = _loop_from(machine, passes, (number, local), done)
             if looped is not None:
                 culprit = machine.blocks[looped[0]]
@@ -214,12 +246,8 @@ def _loop_from(machine: Machine, passes: Mapping[str, Passes], start: Address, d
 def _onward(machine: Machine, passes: Mapping[str, Passes], address: Address) -> Iterator[Address]:
     block = machine.blocks[address[0]]
     crossed = passes[block.fragment].get(address[1], frozenset())
-    return iter([to for exit_, to in block.exits if exit_ in crossed])
-
-
-def _passes(fragment: Fragment) -> Passes:
-    """For each entrance, the exits that can be left through without waiting."""
-    return {entrance: frozenset(_crossed(fragment, entrance)) for entrance in _entrances(fragment)}
+    branches = block.branches if Exit.BRANCH in crossed else ()
+    return iter([*(to for exit_, to in block.exits if exit_ in crossed), *branches])
 
 
 def _crossed(fragment: Fragment, entrance: int) -> Iterator[Exit]:

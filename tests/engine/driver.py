@@ -6,8 +6,9 @@ from dataclasses import dataclass, field
 from typing import TypeVar
 
 from runner.engine.advance import advance
-from runner.engine.state import EngineState, initial_state, next_deadline
+from runner.engine.state import EngineState, initial_state
 from runner.engine.values import ActionNews, Begin, Effect, GoalNews, Input, Operator, Seen, Tick
+from runner.engine.watching import next_deadline
 from runner.language.mission import Step
 from runner.machine.compiler import compile_mission
 from runner.machine.table import Event, Machine
@@ -63,7 +64,7 @@ class Driver:
     def pass_time(self, seconds: float) -> list[Effect]:
         """Let time pass, with a tick at each deadline, as the host does."""
         end, new = self.now + seconds, []
-        while (deadline := next_deadline(self.state)) is not None and deadline <= end:
+        while (deadline := next_deadline(self.machine, self.state)) is not None and deadline <= end:
             self.now = max(self.now, deadline)
             new += self.give(Tick(self.now))
         self.now = end

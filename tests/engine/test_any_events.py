@@ -6,8 +6,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from runner.engine.advance import advance
-from runner.engine.state import initial_state, next_deadline
+from runner.engine.state import initial_state
 from runner.engine.values import ActionNews, Begin, Effect, Go, GoalNews, Halt, Input, Operator, Seen, Tick
+from runner.engine.watching import next_deadline
 from runner.language.mission import Otherwise, Recovery, RecoveryKind, Rest, RetryRule, Step
 from runner.machine.codec import from_json, to_json
 from runner.machine.compiler import compile_mission
@@ -112,7 +113,7 @@ def inputs(machine: Machine, chosen: list[tuple[str, int, float]]) -> tuple[list
                 people = (Event.HOLD, Event.RELEASE, Event.SKIP, Event.HOLD, Event.RELEASE, Event.ABORT)
                 give(Operator(now, people[number % len(people)], "someone"))
             case "tick":
-                give(Tick(max(now, next_deadline(state) or now)))
+                give(Tick(max(now, next_deadline(machine, state) or now)))
                 now = max(now, given[-1].stamp)
     return given, out
 
@@ -175,6 +176,6 @@ def test_a_robot_that_never_says_anything_but_no_comes_to_an_end(steps: tuple[St
         elif state.goal is not None:
             state, _ = advance(machine, state, GoalNews(now, state.goal, Event.REFUSED))
         else:
-            now = max(now, next_deadline(state) or now)
+            now = max(now, next_deadline(machine, state) or now)
             state, _ = advance(machine, state, Tick(now))
     raise AssertionError("the mission does not end")

@@ -65,15 +65,18 @@ def test_a_person_can_act_in_every_state_or_it_is_found() -> None:
 
 def test_an_exit_that_leads_nowhere_is_found_at_its_step() -> None:
     machine = machine_of_a_round()
-    broken = replace(machine.blocks[5], exits=tuple(pair for pair in machine.blocks[5].exits if pair[0] is Exit.NEXT))
-    findings = check_table(replace(machine, blocks=(*machine.blocks[:5], broken, *machine.blocks[6:])))
+    leg = machine.start[0]
+    broken = replace(
+        machine.blocks[leg], exits=tuple(pair for pair in machine.blocks[leg].exits if pair[0] is Exit.NEXT)
+    )
+    findings = check_table(replace(machine, blocks=(*machine.blocks[:leg], broken, *machine.blocks[leg + 1 :])))
     assert {finding.name for finding in findings} == {"no-way-out"}
     assert 'the step "go to far end"' in findings[0].diagnostic.sentence
 
 
 def test_a_step_that_nothing_leads_to_is_found() -> None:
     machine = machine_of_a_round()
-    stray = replace(machine.blocks[5], step=1)
+    stray = replace(machine.blocks[machine.start[0]], step=1)
     assert names(replace(machine, blocks=(*machine.blocks, stray))) == ["unreachable-step"]
 
 
