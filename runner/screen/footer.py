@@ -33,20 +33,17 @@ def feed(lines: Iterable[FeedLine], width: int, height: int, glyphs: Glyphs) -> 
     """The newest lines that fit, newest at the bottom; long ones go on below their beginning."""
     rows: list[Row] = []
     for line in reversed(list(lines)):
-        entry = _entry(line, width, glyphs)
-        if len(rows) + len(entry) > height:
-            if not rows:
-                rows = entry[:height]
+        if len(rows) >= height:
             break
-        rows = [*entry, *rows]
+        rows = [*_entry(line, width, min(height - len(rows), 3), glyphs), *rows]
     return rows
 
 
-def _entry(line: FeedLine, width: int, glyphs: Glyphs) -> list[Row]:
+def _entry(line: FeedLine, width: int, most: int, glyphs: Glyphs) -> list[Row]:
     mark = {Weight.PLAIN: " ", Weight.NOTICE: glyphs.notice, Weight.TROUBLE: glyphs.trouble}[line.weight]
     ink = _WEIGHT_INK[line.weight]
     lead = f" {line.clock} {mark} "
-    texts = wrap(glyphs.say(line.text), max(width - len(lead), 1), 3, glyphs.more)
+    texts = wrap(glyphs.say(line.text), max(width - len(lead), 1), most, glyphs.more)
     first: Row = ((f" {line.clock} ", Ink.FAINT), (f"{mark} {texts[0]}", ink))
     return [first, *(((" " * len(lead) + text, ink),) for text in texts[1:])]
 

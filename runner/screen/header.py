@@ -15,7 +15,8 @@ BEFORE = View(0.0, "--:--:--", Health.STARTING, "making ready")
 
 
 def header(view: View | None, showing: Showing, width: int, glyphs: Glyphs, remark: str) -> tuple[Row, Row, Row]:
-    """Health, reason and figures. A reason too long for its row takes that of the figures as well.
+    """Health, reason and figures. A reason too long for its row takes that of the figures as well; so does, at the end,
+    the command that shows the record.
 
     `remark`, where not empty, stands in the place of what there is to do.
     """
@@ -24,9 +25,10 @@ def header(view: View | None, showing: Showing, width: int, glyphs: Glyphs, rema
     health = both_ends(_health(seen, ink, width, glyphs), ((f"{seen.clock} ", ink),), width, ink, glyphs.more)
     lines = wrap(glyphs.say(seen.reason), max(width - 2, 1), 2, glyphs.more)
     advice: Row = ((f"{remark or _advice(seen, showing, glyphs)} ", ink),)
-    if len(lines) == 1:
+    whole = len(lines[-1]) + 2 + row_width(advice) <= width
+    if len(lines) == 1 and (whole or seen.health is not Health.ENDED):
         return health, _reason(lines[0], advice, seen, ink, width, glyphs), _figures(seen, showing, width, glyphs)
-    rest: Row = ((f" {lines[1]}", ink),)
+    rest: Row = ((f" {' '.join(lines[1:])}", ink),)
     first = both_ends(((f" {lines[0]}", ink),), (), width, ink, glyphs.more)
     return health, first, both_ends(rest, advice, width, ink, glyphs.more)
 

@@ -141,9 +141,10 @@ def row_width(row: Row) -> int:
 
 
 def both_ends(left: Row, right: Row, width: int, ink: Ink, more: str) -> Row:
-    """A row with one part at each end, exactly `width` cells. The left is cut first; a right that leaves less than
-    half of the width is dropped."""
-    if right and row_width(right) + 1 > width // 2:
+    """A row with one part at each end, exactly `width` cells. Where both do not fit, the left is cut, or the right is
+    dropped if it would leave less than half of the width."""
+    both = row_width(left) + row_width(right) + 1
+    if both > width and row_width(right) + 1 > width // 2:
         right = ()
     room = width - row_width(right) - (1 if right else 0)
     kept = crop(left, room, more)

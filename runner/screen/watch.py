@@ -130,6 +130,8 @@ class WatchApp(App[None]):
         view = self._source.view()
         if over and (view is None or view.outcome is None):
             view = replace(view or BEFORE, health=Health.ENDED, outcome="broke off", reason=BROKE_OFF)
+        if self._view is not None and view is not None and view.health is not self._view.health:
+            self._remark = ""  # what was asked for, or something else, has happened
         if view != self._view:
             self._view, self._changed_at = view, time.monotonic()
         self._feed.extend(self._source.feed())

@@ -38,7 +38,7 @@ class Terminal:
     def type(self, keys: bytes) -> None:
         os.write(self.here, keys)
 
-    def read_until(self, wanted: str, seconds: float = 15.0) -> str:
+    def read_until(self, wanted: str, seconds: float = 30.0) -> str:
         """Read until the text is on the screen. Fails with what is there instead."""
         end = time.monotonic() + seconds
         while wanted not in self.text():

@@ -63,6 +63,8 @@ def test_from_sixty_columns_on_the_whole_reason_and_place_are_read(width: int, g
 def test_a_held_run_says_that_it_is_your_turn_and_an_ended_one_where_its_record_is(width: int) -> None:
     assert "your turn: r releases" in " ".join(_text(header(HELD, showing(), width, ASCII, "")))
     hint = "trundle report evening-0312"
+    long = replace(showing(), report_hint="trundle report evening-specimen-20260312-031200")
+    assert any(long.report_hint in row for row in _text(header(ENDED, long, width, ASCII, "")))
     places = [*header(ENDED, showing(), width, ASCII, ""), *summary(ENDED, hint, 30, ASCII)]
     assert hint in " ".join(_text(places))
 
@@ -114,6 +116,7 @@ def test_the_newest_line_of_the_feed_is_always_there_and_long_ones_go_on_below(
     assert 1 <= len(rows) <= height
     assert all(row_width(row) <= width for row in rows)
     assert FEED[-1].clock in " ".join(_text(rows))
+    assert len(rows) == height or FEED[0].clock in _text(rows)[0]
 
 
 def test_trouble_is_marked_by_more_than_color() -> None:

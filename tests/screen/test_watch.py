@@ -97,6 +97,7 @@ def test_hold_release_and_skip_take_one_key(key: str, event: Event) -> None:
 
 def test_what_was_asked_for_is_seen_in_the_next_view() -> None:
     text, _ = _watched(Replay([MOVING]), _pressing("h", until="H E L D"))
+    assert "your turn: r releases" in text
     assert "H E L D" in text
     assert "r  release" in text
     assert "Operator: hold." in text
