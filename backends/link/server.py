@@ -1,0 +1,126 @@
+"""A robot on a socket: an adapter with its six methods, and everything else done for it.
+
+    server = RobotServer(MyAdapter(), Listening("tcp://127.0.0.1:7410"), clock=time.monotonic)
+    server.run(until=stopped)          # a threading.Event, or anything with is_set()
+
+One thread does all: it serves frames, asks the adapter for news, and stops the robot when its controller is silent. So
+an adapter's methods must return at once; one that hangs keeps the robot from being stopped by the link, and nothing but
+the robot's own protective stop is left.
+"""
+
+from __future__ import annotations
+
+import logging
+from collections.abc import Callable
+from dataclasses import dataclass, field
+from typing import Protocol
+
+import zmq
+
+from backends.link.adapter import Adapter
+from backends.link.gate import Gate
+from backends.link.ledger import Kept
+from backends.link.robot_side import RobotSide, Sent
+from backends.link.sockets import Keys, check_line, robot_socket
+
+TURN_MS = 10
+"""Longest time between two looks at the clock and the adapter."""
+FRAMES_A_TURN = 64
+"""Frames served before the clock is looked at again, however many wait."""
+
+log = logging.getLogger("trundle.link")
+
+
+class Stopped(Protocol):
+    """Something that says when to stop, such as a `threading.Event`."""
+
+    def is_set(self) -> bool: ...
+
+
+@dataclass(frozen=True, slots=True)
+class Listening:
+    """Where a robot is to be reached, and by whom. `allowed` are public keys and whose they are; without keys the
+    line is plain, which is for this computer only, unless `insecure`."""
+
+    address: str
+    keys: Keys | None = None
+    allowed: dict[bytes, str] = field(default_factory=dict)
+    insecure: bool = False
+
+
+class RobotServer:
+    """Serves one robot on one address. `keep` is called with what is worth keeping whenever that changed."""
+
+    def __init__(
+        self,
+        adapter: Adapter,
+        listening: Listening,
+        clock: Callable[[], float],
+        kept: Kept | None = None,
+        keep: Callable[[Kept], None] = lambda _: None,
+    ) -> None:
+        """BackendError where the address is none, is taken, or would let everybody in."""
+        check_line(listening.address, listening.keys is not None, listening.insecure)
+        self.side = RobotSide(adapter, clock, kept)
+        self._keep = keep
+        self._context: zmq.Context[zmq.Socket[bytes]] = zmq.Context()
+        self.gate = Gate(self._context, listening.allowed) if listening.keys is not None else None
+        try:
+            self._socket = robot_socket(self._context, listening.address, listening.keys)
+        except BaseException:
+            self.close()
+            raise
+
+    def run(self, until: Stopped) -> None:
+        """Serve until told to stop. Whatever ends it, the robot is stopped."""
+        poller = zmq.Poller()
+        poller.register(self._socket, zmq.POLLIN)
+        if self.gate is not None:
+            poller.register(self.gate.socket, zmq.POLLIN)
+        try:
+            while not until.is_set():
+                poller.poll(TURN_MS)
+                self.turn()
+        finally:
+            self.side.stop()
+            self.close()
+
+    def turn(self) -> None:
+        """Serve what waits, and look at the clock once."""
+        if self.gate is not None:
+            self.gate.turn()
+        for _ in range(FRAMES_A_TURN):
+            try:
+                parts = self._socket.recv_multipart(zmq.NOBLOCK, copy=False)
+            except zmq.Again:
+                break
+            self._serve(parts)
+        self._send(self.side.turn())
+        self._keep_what_changed()
+
+    def _serve(self, parts: list[zmq.Frame]) -> None:
+        if len(parts) != 2:
+            self.side.counts.malformed += 1
+            return
+        person = str(parts[1].get("User-Id")) if self.gate is not None else ""
+        answers = self.side.receive(parts[0].bytes, person, parts[1].bytes)
+        self._keep_what_changed()
+        self._send(answers)
+
+    def _keep_what_changed(self) -> None:
+        """Written before an answer is sent: what was promised outlives this process."""
+        if (kept := self.side.worth_keeping()) is not None:
+            self._keep(kept)
+
+    def _send(self, frames: Sent) -> None:
+        for peer, frame in frames:
+            try:
+                self._socket.send_multipart((peer, frame), zmq.NOBLOCK)
+            except zmq.ZMQError as error:
+                log.debug("a frame was dropped: %s", error.strerror)
+
+    def close(self) -> None:
+        """Stop listening."""
+        if self.gate is not None:
+            self.gate.close()
+        self._context.destroy(linger=0)
