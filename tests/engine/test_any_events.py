@@ -119,7 +119,7 @@ def inputs(machine: Machine, chosen: list[tuple[str, int, float]]) -> tuple[list
 
 
 @given(steps=missions, chosen=happenings)
-@settings(max_examples=400, deadline=None)
+@settings(max_examples=100, deadline=None)
 def test_any_order_of_events_keeps_the_bounds_and_the_same_inputs_give_the_same_effects(
     steps: tuple[Step, ...], chosen: list[tuple[str, int, float]]
 ) -> None:
@@ -133,7 +133,7 @@ def test_any_order_of_events_keeps_the_bounds_and_the_same_inputs_give_the_same_
 
 
 @given(steps=missions, chosen=happenings)
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=100, deadline=None)
 def test_a_goal_is_never_sent_while_another_is_under_way_and_ids_rise(
     steps: tuple[Step, ...], chosen: list[tuple[str, int, float]]
 ) -> None:
@@ -153,7 +153,7 @@ def test_a_goal_is_never_sent_while_another_is_under_way_and_ids_rise(
 
 
 @given(steps=missions)
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=100, deadline=None)
 def test_every_mission_compiles_to_a_table_that_passes_the_checks_and_round_trips(steps: tuple[Step, ...]) -> None:
     machine = compile_mission(mission(*steps))
     assert check_table(machine) == []
