@@ -49,6 +49,7 @@ class Body:
         self.met = FREE
         driving = not self.drive.still
         if driving:
+            self.charge.charging = False
             self._move(world, people, time)
         self.charge.spend(driving, time)
 

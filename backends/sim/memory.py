@@ -79,7 +79,7 @@ class Memory:
             self._repaint()
         before = self.count
         self.count = forget(
-            pose.x, pose.y, radius, self.known, self._evidence, self._cells, self.count, self.field, self._disc
+            pose.x, pose.y, float(radius), self.known, self._evidence, self._cells, self.count, self.field, self._disc
         )
         return before - self.count
 

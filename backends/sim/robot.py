@@ -85,9 +85,7 @@ class Robot:
         """End the goal and any action, and stop."""
         if easing := self._easing.stop():
             self.news.append(ActionReport(now, easing, False, "The robot was halted."))
-        if self._replan_asked is not None:
-            self.news.append(ActionReport(now, self._replan_asked, False, "The robot was halted."))
-            self._replan_asked = None
+        self._answer_replan(now, False, "The robot was halted.")
         if self._goal is not None:
             self._ending = _Ending(GoalStatus.HALTED, "")
             self._end_when_still(now)
@@ -102,8 +100,7 @@ class Robot:
         if self._goal is None or self._ending is not None:
             self.news.append(ActionReport(now, action_id, True))
             return
-        if self._replan_asked is not None:
-            self.news.append(ActionReport(now, self._replan_asked, False, "Another new route was asked for."))
+        self._answer_replan(now, False, "Another new route was asked for.")
         self._replan_asked = action_id
 
     def ease_back(self, action_id: int, distance: float, now: float) -> None:
@@ -125,8 +122,15 @@ class Robot:
         if self._easing.active:
             return self._ease(now)
         if self._goal is None:
+            self._answer_replan(now, True, "")
             return STAND
         return self._pursue(self._goal, now)
+
+    def _answer_replan(self, now: float, done: bool, reason: str) -> None:
+        """Answer the new route asked for, if one was."""
+        if self._replan_asked is not None:
+            self.news.append(ActionReport(now, self._replan_asked, done, reason))
+            self._replan_asked = None
 
     def _ease(self, now: float) -> Wish:
         speed, answer = self._easing.advance(self.memory.field, self.pose)
@@ -150,12 +154,12 @@ class Robot:
         """Keep the route fit to be followed: plan where there is none, where it is obstructed, or where asked."""
         if self.route is not None:
             self.follower.locate(self.route, self.pose)
-        asked, self._replan_asked = self._replan_asked, None
-        if asked is None and not (self._wants_plan(now) and now >= self._next_attempt):
+        asked = self._replan_asked is not None
+        if not asked and not (self._wants_plan(now) and now >= self._next_attempt):
             return
-        found = self._attempt(goal, now, anew=asked is not None)
-        if asked is not None:
-            self.news.append(ActionReport(now, asked, found, "" if found else self._why_no_route(goal)))
+        found = self._attempt(goal, now, anew=asked)
+        if asked:
+            self._answer_replan(now, found, "" if found else self._why_no_route(goal))
 
     def _wants_plan(self, now: float) -> bool:
         if self.route is None:
@@ -195,8 +199,7 @@ class Robot:
         if self._ending is None or self._goal is None or not self._body.drive.still:
             return
         self.news.append(GoalReport(now, self._goal.id, self._ending.status, self._ending.reason))
-        if self._replan_asked is not None:
-            self.news.append(ActionReport(now, self._replan_asked, False, "The goal has ended."))
+        self._answer_replan(now, False, "The goal has ended.")
         self._drop_goal()
 
     def _drop_goal(self) -> None:

@@ -63,7 +63,7 @@ class Simulator:
         start = (setup.start.x, setup.start.y)
         self.people = People(setup.conditions.walkers, setup.site, self.world, start, streams[0])
         self.memory = Memory(floor.blocked(), self.body.outline, setup.robot.lidar)
-        self.robot = Robot(self.body, self.memory, setup.start)
+        self.robot = Robot(self.body, self.memory, self.body.pose)
         self._scanner = Scanner(setup.robot.lidar, streams[1])
         self._localization = Localization(streams[2], TICK_S)
         self._clock = VirtualClock(setup.begins)

@@ -39,7 +39,9 @@ class World:
     """`blocked` and `distance` are the truth now. `distance` is 0 in blocked cells and at most `FIELD_REACH_M`."""
 
     def __init__(self, site: Site, floor: Floor, conditions: Conditions, begins: float) -> None:
-        """`begins` is the time of day at which the run begins, seconds since midnight."""
+        """`begins` is the time of day at which the run begins, in seconds. ValueError on an unknown door."""
+        if unknown := [change.door for change in conditions.doors if change.door not in floor.doors]:
+            raise ValueError(f'The conditions change a door that the site does not have: "{unknown[0]}".')
         self._site = site
         self._floor = floor
         self._begins = begins

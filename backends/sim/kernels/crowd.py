@@ -121,10 +121,10 @@ def step(
     force = np.zeros((count, 2))
     for one in range(count):
         if wished[one] > 0.0:
-            force[one] = force_on(one, people, velocity, target, wished, distance, robot)
+            force[one, 0], force[one, 1] = force_on(one, people, velocity, target, wished, distance, robot)
     for one in range(count):
         if wished[one] == 0.0:
-            velocity[one] = 0.0
+            velocity[one, 0] = velocity[one, 1] = 0.0
             continue
         vx, vy = velocity[one, 0] + force[one, 0] * time, velocity[one, 1] + force[one, 1] * time
         speed = math.sqrt(vx * vx + vy * vy)
@@ -159,7 +159,7 @@ def move(
             people[one, 0], people[one, 1] = new_x, new_y
             velocity[one, 0], velocity[one, 1] = step_x, step_y
             return
-    velocity[one] = 0.0
+    velocity[one, 0] = velocity[one, 1] = 0.0
 
 
 @kernel

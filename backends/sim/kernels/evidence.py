@@ -99,7 +99,9 @@ def restore(
     rows, columns = field.shape
     low_row, high_row = max(box[0] - reach, 0), min(box[2] + reach + 1, rows)
     low_column, high_column = max(box[1] - reach, 0), min(box[3] + reach + 1, columns)
-    field[low_row:high_row, low_column:high_column] = known[low_row:high_row, low_column:high_column]
+    for r in range(low_row, high_row):
+        for c in range(low_column, high_column):
+            field[r, c] = known[r, c]
     for index in range(count):
         row, column = cells[index] // columns, cells[index] % columns
         if low_row - reach <= row < high_row + reach:

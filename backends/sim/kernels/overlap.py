@@ -57,8 +57,10 @@ def apart(corners: NDArray[Any], row: int, column: int) -> bool:
 def covers_solid(blocked: NDArray[Any], outline: NDArray[Any], x: float, y: float, heading: float) -> bool:
     """Whether the outline at a pose overlaps a blocked cell or reaches beyond the floor."""
     corners = placed(outline, x, y, heading)
-    low_x, low_y = corners[:, 0].min(), corners[:, 1].min()
-    high_x, high_y = corners[:, 0].max(), corners[:, 1].max()
+    low_x, low_y, high_x, high_y = np.inf, np.inf, -np.inf, -np.inf
+    for index in range(corners.shape[0]):
+        low_x, high_x = min(low_x, corners[index, 0]), max(high_x, corners[index, 0])
+        low_y, high_y = min(low_y, corners[index, 1]), max(high_y, corners[index, 1])
     rows, columns = blocked.shape
     if low_x < 0.0 or low_y < 0.0 or high_x > columns * CELL or high_y > rows * CELL:
         return True

@@ -54,8 +54,14 @@ def lengths(points: NDArray[Any]) -> NDArray[Any]:
 @kernel
 def index_at(along: NDArray[Any], length: float) -> int:
     """The last point at or before a length along the route."""
-    last = int(np.searchsorted(along, length, side="right")) - 1
-    return int(max(0, min(last, along.shape[0] - 1)))
+    low, high = 0, along.shape[0]
+    while high - low > 1:
+        middle = (low + high) // 2
+        if along[middle] <= length:
+            low = middle
+        else:
+            high = middle
+    return low
 
 
 @kernel

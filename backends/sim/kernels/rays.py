@@ -83,7 +83,8 @@ def meet_person(
     if apart > reach + radius:
         return
     if apart <= radius:
-        ranges[:] = 0.0
+        for beam in range(ranges.shape[0]):
+            ranges[beam] = 0.0
         return
     half = math.asin(radius / apart)
     bearing = math.atan2(to_y, to_x) - first

@@ -207,3 +207,24 @@ def test_an_empty_battery_ends_the_drive_and_charging_fills_it() -> None:
     drive.simulator.charge()
     drive.until(end.stamp + 5.0)
     assert drive.telemetry()[-1].battery == 1.0
+
+
+def test_driving_off_ends_charging() -> None:
+    tiny = replace(CART, battery=Battery(capacity=100.0, idle=2000.0, driving=2000.0, charging=2000.0))
+    drive = start(HALL, Pose(2.0, 4.0, 0.0), robot=tiny)
+    drive.until(10.0)
+    drive.simulator.charge()
+    drive.until(12.0)
+    charged = drive.telemetry()[-1].battery
+    go(drive, 1, Pose(10.0, 4.0, 0.0))
+    drive.until_end(60.0)
+    assert charged > drive.telemetry()[-1].battery
+
+
+def test_a_new_route_asked_for_before_a_goal_that_is_refused_is_still_answered() -> None:
+    drive = start(HALL, Pose(2.0, 4.0, 0.0))
+    go(drive, 1, Pose(10.0, 4.0, 0.0))
+    drive.simulator.replan(1)
+    go(drive, 2, Pose(-5.0, 4.0, 0.0))
+    answer = drive.until_answer(1, 1.0)
+    assert answer is not None

@@ -108,3 +108,8 @@ def test_sight_ends_at_walls() -> None:
     assert in_sight(distance, 5.0, 2.1, 9.0, 2.1, 0.3)
     assert not in_sight(distance, 5.0, 4.0, 9.0, 4.0, 0.3)
     assert not in_sight(distance, 5.0, 2.1, 9.0, 2.1, 0.7)
+
+
+def test_a_change_of_a_door_that_is_not_there_is_refused() -> None:
+    with pytest.raises(ValueError, match='a door that the site does not have: "trap"'):
+        start(TWO_ROOMS, Pose(2.0, 2.0, 0.0), doors=[DoorChange("trap", 1.0, True)])
