@@ -10,10 +10,10 @@ import os
 import sys
 from collections.abc import Sequence
 
-from runner.cli import check, machine, report, run, runs
+from runner.cli import check, link, machine, report, run, runs
 from runner.cli.exits import MEANINGS, Exit
 
-COMMANDS = {"check": check, "machine": machine, "run": run, "runs": runs, "report": report}
+COMMANDS = {"check": check, "machine": machine, "run": run, "runs": runs, "report": report, "link": link}
 
 _DESCRIPTION = "Scripted rounds for one indoor mobile robot: run them, watch them, and argue from the record."
 

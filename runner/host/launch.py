@@ -8,7 +8,7 @@ from datetime import datetime, time, timedelta
 from importlib.metadata import entry_points, version
 from pathlib import Path
 
-from backends.contract import Backend, Setup
+from backends.contract import Backend, BackendError, Line, Setup
 from runner.host.board import Board
 from runner.host.host import Host
 from runner.host.view import Health, View
@@ -44,6 +44,8 @@ class Order:
     seed: int
     pace: float | None
     backend: str = "sim"
+    line: Line | None = None
+    """The way to a robot on a socket, for a backend that needs one."""
 
 
 def make_backend(order: Order, begins: datetime) -> Backend:
@@ -53,9 +55,13 @@ def make_backend(order: Order, begins: datetime) -> Backend:
         known = ", ".join(sorted(point.name for point in entry_points(group=BACKENDS)))
         raise LaunchError(f'There is no backend "{order.backend}". Installed: {known}.')
     mission = order.mission
-    setup = Setup(mission.site, mission.robot, mission.start.pose, order.conditions, order.seed, begins)
-    backend: Backend = next(iter(found)).load()(setup)
-    lacking = abilities_needed(order.machine) - {ability.value for ability in backend.capabilities}
+    setup = Setup(mission.site, mission.robot, mission.start.pose, order.conditions, order.seed, begins, order.line)
+    try:
+        backend: Backend = next(iter(found)).load()(setup)
+        able = {ability.value for ability in backend.capabilities}
+    except BackendError as error:
+        raise LaunchError(str(error)) from error
+    lacking = abilities_needed(order.machine) - able
     if lacking:
         raise LaunchError(f"The robot cannot do what the retry rules ask for: {', '.join(sorted(lacking))}.")
     return backend
@@ -74,11 +80,10 @@ def carry_out(order: Order, folder: Path, board: Board, after_turn: Callable[[],
     """
     created = datetime.now().astimezone()
     begins = begins_at(order.conditions, created)
-    backend = make_backend(order, begins)
+    header = _header(order, folder, created, begins)
+    backend = make_backend(with_session(order, header), begins)
     try:
-        with JournalWriter.create(
-            folder, _header(order, folder, created, begins), _sources(order), to_json(order.machine)
-        ) as journal:
+        with JournalWriter.create(folder, header, _sources(order), to_json(order.machine)) as journal:
             backend.open()
             try:
                 return Host(order.machine, backend, journal, board, order.pace, after_turn).run()
@@ -86,9 +91,19 @@ def carry_out(order: Order, folder: Path, board: Board, after_turn: Callable[[],
                 backend.close()
     except JournalError as error:
         raise _trouble(board, f"The record cannot be written: {error}") from error
+    except BackendError as error:
+        raise _trouble(board, str(error)) from error
     except Exception as error:
         _trouble(board, f"{type(error).__name__}: {error}")
         raise
+
+
+def with_session(order: Order, header: RunHeader) -> Order:
+    """The order with the run's own name on its line: the same after a restart of this run, and that of no other."""
+    if order.line is None:
+        return order
+    session = f"{header.run_id} on {header.host} at {header.created.isoformat()}"
+    return replace(order, line=replace(order.line, session=session))
 
 
 def _trouble(board: Board, sentence: str) -> RunError:
