@@ -43,7 +43,7 @@ class FeedLine:
 
 @dataclass(frozen=True, slots=True)
 class View:
-    """A run at one moment.
+    """A run at one moment. `question` is open if it is not None, and `answers` are the words that answer it.
 
     `clock` is the time of day as HH:MM:SS. `reason` says in words why the health is what it is. `step` indexes the
     machine's steps, None before the first and after the last. `laps` are those of the loops around the step,
@@ -74,5 +74,9 @@ class View:
     legs_arrived: int = 0
     legs_failed: int = 0
     incidents: int = 0
+    question: str | None = None
+    answers: tuple[str, ...] = ()
+    order: str | None = None
+    """The standing order that acts, if one does."""
     outcome: str | None = None
     """Set when the run has ended: how, in words."""

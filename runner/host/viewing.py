@@ -5,8 +5,14 @@ from __future__ import annotations
 from runner.engine.state import EngineState
 from runner.host.view import Health, View
 from runner.host.wording import SIGNS
-from runner.machine.table import Machine, Register, Timer
+from runner.machine.table import Block, Machine, Register, Timer
 from runner.machine.wording import say_seconds
+
+
+_RESTS = (Timer.REST, Timer.WAIT, Timer.UP_TO, Timer.LAP)
+
+_WAITS = {"wait until": "waiting for a condition", "charge": "charging", "until the next lap": "until the next lap"}
+"""What is said of states in which nothing moves, by their names."""
 
 
 def clock_text(seconds: float) -> str:
@@ -21,6 +27,7 @@ def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
     seen, leg = state.seen, state.leg
     fragment = machine.fragments[machine.blocks[_place_in_machine(state)[0]].fragment]
     limit = state.timers.get(Timer.LEG)
+    asked = _asked(machine, state)
     return View(
         stamp=stamp,
         clock=clock_text(state.clock + stamp),
@@ -45,6 +52,9 @@ def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
         legs_arrived=state.legs_arrived,
         legs_failed=state.legs_failed,
         incidents=state.incidents,
+        question=asked.text if asked else None,
+        answers=asked.answers if asked else (),
+        order=machine.orders[state.interrupted.order].name if state.interrupted else None,
         outcome=state.ended.value if state.ended else None,
     )
 
@@ -52,6 +62,12 @@ def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
 def _place_in_machine(state: EngineState) -> tuple[int, int]:
     """Where the mission is; while held, where it was left."""
     return state.held.address if state.held else state.address
+
+
+def _asked(machine: Machine, state: EngineState) -> Block | None:
+    """The block whose question is open, if there is one."""
+    block = machine.blocks[state.address[0]]
+    return block if block.answers and state.ended is None else None
 
 
 def _laps(machine: Machine, state: EngineState) -> tuple[int, ...]:
@@ -68,19 +84,21 @@ def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health,
     block, local = state.address
     name = machine.fragments[machine.blocks[block].fragment].states[local].name
     rest = _rest(state, stamp)
+    if (asked := _asked(machine, state)) is not None:
+        return Health.WAITING, f"question: {asked.text}{rest}"
     if state.incident is not None:
         doing = f", {name}{rest}" if name != "drive" else ", driving on"
         return Health.RECOVERING, SIGNS[state.incident.sign] + doing
     if state.leg is not None:
         return (Health.WAITING, name + rest) if rest else (Health.MOVING, f"on the way to {state.leg.place}")
-    if rest:
-        return Health.WAITING, f"waiting{rest}"
+    if rest or name in _WAITS:
+        return Health.WAITING, _WAITS.get(name, "waiting") + rest
     return Health.STARTING, "starting"
 
 
 def _rest(state: EngineState, stamp: float) -> str:
     """How long a rest or wait still takes, where there is one."""
-    deadline = min((state.timers[timer] for timer in (Timer.REST, Timer.WAIT) if timer in state.timers), default=None)
+    deadline = min((state.timers[timer] for timer in _RESTS if timer in state.timers), default=None)
     if deadline is None:
         return ""
     return f", {say_seconds(float(round(max(0.0, deadline - stamp))))} left"

@@ -6,15 +6,25 @@ from collections.abc import Callable
 from typing import Any
 
 from runner.engine.values import (
+    Answered,
+    Asked,
+    ClockSet,
+    Counted,
     Effect,
     Ended,
     IncidentBegan,
     IncidentEnded,
     LegBegan,
     LegEnded,
+    Notified,
     OperatorActed,
+    OrderBegan,
+    OrderEnded,
     RecoveryBegan,
+    Remarked,
+    Resumed,
     StepBegan,
+    TroubleNoted,
     TryFailed,
 )
 from runner.host.view import FeedLine, Weight
@@ -90,6 +100,27 @@ def _ended(note: Ended) -> Told:
     return weight, f"mission ended: {note.reason}"
 
 
+def _asked(note: Asked) -> Told:
+    silence = f"; after {say_seconds(note.seconds)} it counts as {note.if_silent}"
+    return Weight.NOTICE, f"question: {note.text} ({' / '.join(note.answers)}){silence}"
+
+
+def _answered(note: Answered) -> Told:
+    return Weight.NOTICE, f"answer: {note.answer}, {f'by {note.who}' if note.who else 'nobody spoke'}"
+
+
+def _trouble(note: TroubleNoted) -> Told:
+    return Weight.TROUBLE, f"trouble, {note.kind}: {note.detail}{'; held' if note.held else ''}"
+
+
+def _clock_set(note: ClockSet) -> Told:
+    return Weight.NOTICE, f"the clock was set by {note.seconds:+.0f} s"
+
+
+def _resumed(note: Resumed) -> Told:
+    return Weight.NOTICE, f"picked up by {note.who}, {note.down:.0f} s after its process had died"
+
+
 _WORDS: dict[type[Any], Callable[[Any], Told]] = {
     StepBegan: _step,
     LegBegan: lambda _: None,
@@ -99,5 +130,15 @@ _WORDS: dict[type[Any], Callable[[Any], Told]] = {
     IncidentEnded: _incident_ended,
     TryFailed: _try_failed,
     OperatorActed: _acted,
+    Asked: _asked,
+    Answered: _answered,
+    Notified: lambda note: (Weight.NOTICE, f"notice: {note.text}"),
+    Counted: lambda note: (Weight.PLAIN, f"{note.name}: {note.value}"),
+    OrderBegan: lambda note: (Weight.NOTICE, f"standing order: {note.name}"),
+    OrderEnded: lambda note: (Weight.PLAIN, f"standing order over: {note.name}"),
+    Remarked: lambda note: (Weight.NOTICE, f"{note.who}: {note.text}"),
+    TroubleNoted: _trouble,
+    ClockSet: _clock_set,
+    Resumed: _resumed,
     Ended: _ended,
 }
