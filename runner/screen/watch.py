@@ -1,8 +1,9 @@
 """The Textual program that shows a run while it goes on.
 
 It pulls its source four times a second and shows what it is told. A key becomes an event that is handed to the source
-at once; what comes of it is seen in the next view. Aborting takes two keystrokes. The run lives in the same process, so
-leaving while it is under way means aborting it, and that is asked, never done in silence.
+at once; what comes of it is seen in the next view. Aborting takes two keystrokes. A run that has a process of
+its own goes on when the screen is left. Where it lives in the screen's process, leaving means aborting it, and that is
+asked, never done in silence.
 """
 
 from __future__ import annotations
@@ -41,15 +42,16 @@ OLD_AFTER_S = 5.0
 """A view that has not changed for so long is said to be old, while the run is under way (starting may take longer)."""
 
 
-def watch(showing: Showing, source: Source, over: Callable[[], bool] = lambda: False) -> bool:
+def watch(showing: Showing, source: Source, over: Callable[[], bool] = lambda: False, outlives: bool = False) -> bool:
     """Show the run until the person leaves. False where the screen itself broke, so that the caller can go on in
     plain lines; the run is not touched by that.
 
     `over` tells whether what runs it has come to an end, in whatever way: then no more views can come, and a run whose
-    last view does not say how it ended is shown as broken off.
+    last view does not say how it ended is shown as broken off. A run that `outlives` its screen goes on when the
+    screen is left.
     """
     glyphs = ASCII if ascii_only(os.environ, sys.stderr.encoding) else DOTTED
-    app = WatchApp(showing, source, glyphs, over)
+    app = WatchApp(showing, source, glyphs, over, outlives)
     app.run(mouse=False)  # so that the terminal's own selecting and copying keep working
     return not app.return_code
 
@@ -75,10 +77,15 @@ class WatchApp(App[None]):
     ]
 
     def __init__(
-        self, showing: Showing, source: Source, glyphs: Glyphs, over: Callable[[], bool] = lambda: False
+        self,
+        showing: Showing,
+        source: Source,
+        glyphs: Glyphs,
+        over: Callable[[], bool] = lambda: False,
+        outlives: bool = False,
     ) -> None:
         super().__init__(ansi_color=True)
-        self._over = over
+        self._over, self._outlives = over, outlives
         looks = COLORLESS if self.no_color else LOOKS
         self._showing, self._source, self._glyphs = showing, source, glyphs
         self._drawing = FloorDrawing(showing.site, showing.robot, glyphs)
@@ -195,7 +202,7 @@ class WatchApp(App[None]):
             self._ask(Question.ABORT)
 
     def action_leave(self) -> None:
-        if self._ended:
+        if self._ended or self._outlives:
             self.exit()
         else:
             self._ask(Question.LEAVE_ANYWAY if self._aborting else Question.LEAVE)
