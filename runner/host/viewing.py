@@ -8,7 +8,6 @@ from runner.host.wording import SIGNS
 from runner.machine.table import Block, Machine, Register, Timer
 from runner.machine.wording import say_seconds
 
-
 _RESTS = (Timer.REST, Timer.WAIT, Timer.UP_TO, Timer.LAP)
 
 _WAITS = {"wait until": "waiting for a condition", "charge": "charging", "until the next lap": "until the next lap"}
@@ -84,13 +83,19 @@ def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health,
     block, local = state.address
     name = machine.fragments[machine.blocks[block].fragment].states[local].name
     rest = _rest(state, stamp)
-    if (asked := _asked(machine, state)) is not None:
-        return Health.WAITING, f"question: {asked.text}{rest}"
     if state.incident is not None:
         doing = f", {name}{rest}" if name != "drive" else ", driving on"
         return Health.RECOVERING, SIGNS[state.incident.sign] + doing
+    if state.leg is not None and not rest:
+        return Health.MOVING, f"on the way to {state.leg.place}"
+    return _waiting(machine, state, name, rest)
+
+
+def _waiting(machine: Machine, state: EngineState, name: str, rest: str) -> tuple[Health, str]:
+    if (asked := _asked(machine, state)) is not None:
+        return Health.WAITING, f"question: {asked.text}{rest}"
     if state.leg is not None:
-        return (Health.WAITING, name + rest) if rest else (Health.MOVING, f"on the way to {state.leg.place}")
+        return Health.WAITING, name + rest
     if rest or name in _WAITS:
         return Health.WAITING, _WAITS.get(name, "waiting") + rest
     return Health.STARTING, "starting"
