@@ -1,20 +1,25 @@
-"""Mission files: the keys at the top, the retry rules, the limits, and the files of the site and the robot."""
+"""Mission files: the keys at the top, the limits, and the files of the site, the robot and what is shared."""
 
 from __future__ import annotations
 
+import re
 from dataclasses import dataclass
 from pathlib import Path
 
 from runner.language.diagnostics import quoted
 from runner.language.fields import Fields, Keys, mapping
-from runner.language.mission import Limits, Mission, RetryRule, Step
+from runner.language.includes import Shelf, collect
+from runner.language.mission import Limits, Mission, Step
 from runner.language.nodes import Node
+from runner.language.orders import read_orders, read_prove
 from runner.language.pages import Page, Reading
 from runner.language.quantities import SPEED, Amount, parse_clock
 from runner.language.robot_file import read_robot_page
-from runner.language.rules import DEFAULT_RULE, read_rule
+from runner.language.routines import Library, draft_all
+from runner.language.rules import DEFAULT_RULE
+from runner.language.scope import NOWHERE, Ledger, Scope, read_place
 from runner.language.site_file import read_site_page
-from runner.language.steps import NOWHERE, Scope, read_place, read_steps
+from runner.language.steps import read_steps
 from runner.site.values import RobotDescription, Site
 
 SPEED_LIMIT = Amount("The speed limit", SPEED, "0.05 m/s", "3 m/s")
@@ -24,10 +29,16 @@ MISSION_KEYS: Keys = {
     "site": "sites/harbour-clinic.yaml",
     "robot": "robots/small-cart.yaml",
     "start": "charging bay",
+    "include": "[shared.yaml]",
+    "silence": "[place-never-visited]",
     "retry rules": "{patient: {tries: 3}}",
     "limits": "{speed: 0.8 m/s, end by: 06:00}",
+    "prove": "{legs arrive: 95 %, confidence: 90 %}",
+    "standing orders": "[{name: low battery, when: battery < 20 %, do: [go: charging bay]}]",
+    "routines": "{hand over: {given: [room], steps: [go: room]}}",
     "steps": "[go: ward east]",
 }
+_FINDING = re.compile(r"[a-z]+(-[a-z]+)*")
 LIMIT_KEYS: Keys = {"speed": "0.8 m/s", "end by": "06:00"}
 
 
@@ -51,18 +62,48 @@ def read_mission_page(page: Page, ground: Ground | None = None) -> Mission | Non
     site_node, robot_node = fields.need("site"), fields.need("robot")
     if ground is None:
         ground = Ground(_read_site(page, site_node), _read_robot(page, robot_node))
-    rules = _read_rules(fields)
-    places = None if ground.site is None else {place.name: place for place in ground.site.places}
-    scope = Scope(page, places, {DEFAULT_RULE.name: DEFAULT_RULE, **rules})
+    shelf = Shelf()
+    collect(shelf, fields)
+    limits = _read_limits(fields)
+    scope = _scope(page, ground, shelf, limits, proves="prove" in page.root.pairs)
     start_node, steps_node = fields.need("start"), fields.need("steps")
     start = NOWHERE if start_node is None else read_place(scope, start_node)
     start_mark = page.mark(page.root if start_node is None else start_node)
-    limits = _read_limits(fields)
+    prove, silenced = read_prove(fields), _read_silenced(fields)
+    draft_all(scope)
+    orders = read_orders(scope, fields)
     steps: tuple[Step, ...] = () if steps_node is None else read_steps(scope, steps_node)
+    scope.ledger.close()
     if ground.site is None or ground.robot is None:
         return None
-    kept = tuple(scope.rules.values())
-    return Mission(name, ground.site, ground.robot, start, start_mark, limits, kept, steps, tuple(page.reading.sources))
+    return Mission(
+        name=name,
+        site=ground.site,
+        robot=ground.robot,
+        start=start,
+        start_mark=start_mark,
+        limits=limits,
+        rules=tuple(scope.rules.values()),
+        steps=steps,
+        sources=tuple(page.reading.sources),
+        prove=prove,
+        orders=orders,
+        silenced=silenced,
+    )
+
+
+def _scope(page: Page, ground: Ground, shelf: Shelf, limits: Limits, proves: bool) -> Scope:
+    return Scope(
+        page=page,
+        site=ground.site,
+        places=None if ground.site is None else {place.name: place for place in ground.site.places},
+        rules={DEFAULT_RULE.name: DEFAULT_RULE, **shelf.rules},
+        library=Library(shelf.routines),
+        ledger=Ledger(),
+        read_steps=read_steps,
+        endless=limits.end_by is not None,
+        proves=proves,
+    )
 
 
 def _read_site(page: Page, node: Node | None) -> Site | None:
@@ -84,8 +125,16 @@ def _open_named(page: Page, node: Node | None, example: str) -> Page | None:
     return reading.open(Path(page.file).parent / text, blame=(page, node))
 
 
-def _read_rules(fields: Fields) -> dict[str, RetryRule]:
-    return {key.text: read_rule(fields.page, key, node) for key, node in fields.pairs("retry rules")}
+def _read_silenced(fields: Fields) -> tuple[str, ...]:
+    """Names of findings, as `trundle check` prints them."""
+    found = []
+    for node in fields.items("silence"):
+        text = fields.page.text(node, "the name of a finding", "place-never-visited")
+        if text is not None and not _FINDING.fullmatch(text):
+            help_text = "Write it as check prints it, for example place-never-visited."
+            fields.page.report(node, f"{quoted(text)} is not the name of a finding.", help_text)
+        found.append(text or "")
+    return tuple(found)
 
 
 def _read_limits(fields: Fields) -> Limits:

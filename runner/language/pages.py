@@ -136,12 +136,14 @@ class Page:
         try:
             return read(text)
         except PhraseError as error:
-            self.report(self._part_mark(node, error.start, error.end), error.sentence, error.help)
+            self.report(self.part_mark(node, error.start, error.end), error.sentence, error.help)
             return stand_in
 
-    def _part_mark(self, node: Scalar, start: int, end: int) -> Mark:
+    def part_mark(self, node: Node, start: int, end: int) -> Mark:
         """The mark of some characters of a scalar; of all of it where escapes or line breaks hide their place."""
         mark = self.mark(node)
+        if not isinstance(node, Scalar):
+            return mark
         quotes = 1 if node.style in ("'", '"') else 0
         if node.start.line != node.end.line or mark.width != len(node.text) + 2 * quotes:
             return mark

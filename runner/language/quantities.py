@@ -118,7 +118,7 @@ def parse_quantity(text: str, measure: Measure) -> float:
     number, unit = match.groups()
     factor = measure.units.get(unit)
     if factor is not None:
-        return float(number) * factor
+        return _scaled(float(number), factor)
     if not unit:
         raise PhraseError(
             0, len(text), f"{measure.name.capitalize()} needs a unit.", f"Write {_choices(number, measure)}."
@@ -130,10 +130,16 @@ def format_quantity(value: float, measure: Measure) -> str:
     """A value in the largest unit that leaves a whole number, else in the first; reads back as the same value."""
     for unit, factor in sorted(measure.units.items(), key=lambda pair: -pair[1]):
         count = round(value / factor)
-        if abs(count) >= 1 and count * factor == value:
+        if abs(count) >= 1 and _scaled(count, factor) == value:
             return f"{count} {unit}"
     unit, factor = next(iter(measure.units.items()))
     return f"{value / factor:.17g} {unit}"
+
+
+def _scaled(number: float, factor: float) -> float:
+    """A number times its unit. Hundredths and thousandths are divided, so that 70 % is 0.7 and not a little more."""
+    parts = 1.0 / factor
+    return number / parts if parts.is_integer() else number * factor
 
 
 def parse_clock(text: str) -> float:

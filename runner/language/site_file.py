@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 from dataclasses import dataclass
 
-from runner.language.diagnostics import quoted
+from runner.language.diagnostics import nearest, quoted
 from runner.language.drawing import Drawn, read_drawing
 from runner.language.fields import Fields, Keys, mapping, name
 from runner.language.geometry import (
@@ -33,6 +33,7 @@ SITE_KEYS: Keys = {
     "site": "Harbour clinic",
     "floor": "45 m x 25 m",
     "coordinates": "in meters",
+    "time zone": "Europe/Berlin",
     "wall thickness": "15 cm",
     "walls": "[[[0 m, 0 m], [45 m, 0 m]]]",
     "solids": "[{rectangle: [[2 m, 2 m], [3 m, 4 m]]}]",
@@ -92,7 +93,24 @@ def read_site_page(page: Page) -> Site | None:
     places = [*drawn.places, *_read_places(plan, fields, {place.name for place in drawn.places})]
     if not places and "legend" not in page.root.pairs:
         fields.need("places")
-    return Site(site_name, width, height, walls, (*drawn.solids, *solids), tuple(doors), tuple(places))
+    zone = _read_time_zone(fields)
+    return Site(site_name, width, height, walls, (*drawn.solids, *solids), tuple(doors), tuple(places), zone)
+
+
+def _read_time_zone(fields: Fields) -> str | None:
+    """A time zone this computer knows; None where nothing is written, or after a report."""
+    node = fields.get("time zone")
+    text = None if node is None else fields.page.text(node, "a time zone", SITE_KEYS["time zone"])
+    if node is None or text is None:
+        return None
+    from zoneinfo import ZoneInfo, available_timezones
+
+    try:
+        return ZoneInfo(text).key
+    except (OSError, ValueError, LookupError):
+        help_text = nearest(text, sorted(available_timezones()), "time zone")
+        fields.page.report(node, f"There is no time zone called {quoted(text)}.", help_text)
+        return None
 
 
 def _read_size(fields: Fields) -> tuple[float, float]:

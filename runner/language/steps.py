@@ -1,61 +1,48 @@
-"""The steps of a mission: go, visit, wait and repeat, each in a function and a table of its keys."""
+"""The steps of a mission: which there are, and the readers of those that have no steps inside and do not drive."""
 
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass
+from dataclasses import replace
 
 from runner.language.diagnostics import nearest, quoted
-from runner.language.expressions import Condition, Expression, Kind, Operator, Quantity
-from runner.language.fields import Fields, Keys, amount, items, mapping
-from runner.language.mission import Go, Mark, Otherwise, Repeat, RetryRule, Step, Visit, Wait
-from runner.language.nodes import Mapping, Node, Scalar, Sequence
+from runner.language.expression_reader import RESERVED
+from runner.language.fields import Fields, Keys, amount, items, mapping, name
+from runner.language.legs import read_charge, read_go, read_otherwise, read_visit
+from runner.language.mission import Ask, End, Notify, Step, Wait
+from runner.language.mission import Count as CountStep
+from runner.language.nested import read_repeat, read_when
+from runner.language.nodes import Mapping, Node, Scalar
 from runner.language.pages import Page
-from runner.language.quantities import DURATION, Amount, Count, parse_clock
-from runner.language.rules import DEFAULT_RULE
-from runner.site.values import Place, Pose
+from runner.language.quantities import DURATION, Amount, Count, PhraseError, parse_clock
+from runner.language.routines import NESTING_MOST, read_run, report_nesting
+from runner.language.scope import Scope, read_condition, read_text
 
-WITHIN = Amount("The time for a leg", DURATION, "1 s", "24 h")
 WAIT = Amount("A wait", DURATION, "1 s", "24 h")
-REPEAT_FOR = Amount("The time to repeat for", DURATION, "1 s", "168 h")
-TIMES = Count("The number of laps", 1, 100_000)
+ASK_UP_TO = Amount("The time for an answer", DURATION, "1 s", "24 h")
+COUNT_BY = Count("What is counted at once", 1, 1000)
+ANSWERS_MOST = 8
 
-GO_KEYS: Keys = {"go": "ward east", "rule": "patient", "within": "4 min", "otherwise": "skip"}
-VISIT_KEYS: Keys = {"visit": "[ward east, laboratory]", "rule": "patient", "within": "4 min", "otherwise": "skip"}
 WAIT_KEYS: Keys = {"wait": "2 min"}
-REPEAT_KEYS: Keys = {"repeat": "{times: 3, steps: [go: ward east]}"}
-REPEAT_BODY_KEYS: Keys = {"times": "3", "for": "2 h", "until": "05:30", "steps": "[go: ward east]"}
-BOUNDS = ("times", "for", "until")
-
-NOWHERE = Place("", Pose(0.0, 0.0, 0.0))
-"""Stands in for a place that was reported, until reading ends."""
-
-
-@dataclass(frozen=True, slots=True)
-class Scope:
-    """What the steps of a mission may name. `places` is None where the site could not be read."""
-
-    page: Page
-    places: dict[str, Place] | None
-    rules: dict[str, RetryRule]
+WAIT_BODY_KEYS: Keys = {"until": "battery >= 50 %", "up to": "10 min", "otherwise": "skip"}
+ASK_KEYS: Keys = {"ask": "Tray taken?", "answers": "[yes, no]", "up to": "90 s", "if silent": "no"}
+COUNT_KEYS: Keys = {"count": "trays", "by": "2"}
+NOTIFY_KEYS: Keys = {"notify": "The round is done."}
+END_KEYS: Keys = {"end": "completed", "because": "nothing is left to do"}
+ENDS = {"completed": True, "failed": False}
 
 
 def read_steps(scope: Scope, node: Node, what: str = "steps") -> tuple[Step, ...]:
     """A list of steps; those at fault are left out after a report."""
-    found = (_read_step(scope, item) for item in items(scope.page, node, what, "- go: ward east"))
+    depth = scope.depth + 1
+    if depth > NESTING_MOST:
+        report_nesting(scope.page, node)
+        return ()
+    scope.ledger.deepest = max(scope.ledger.deepest, depth)
+    inner = replace(scope, depth=depth)
+    found = [_read_step(inner, item) for item in items(scope.page, node, what, "- go: ward east")]
+    scope.ledger.steps += len(found)
     return tuple(step for step in found if step is not None)
-
-
-def read_place(scope: Scope, node: Node) -> Place:
-    """The place a scalar names."""
-    text = scope.page.text(node, "a place", "ward east")
-    if text is None or scope.places is None:
-        return NOWHERE
-    place = scope.places.get(text)
-    if place is not None:
-        return place
-    scope.page.report(node, f"There is no place called {quoted(text)}.", nearest(text, scope.places, "place"))
-    return NOWHERE
 
 
 def _read_step(scope: Scope, node: Node) -> Step | None:
@@ -82,7 +69,7 @@ def _report_no_step(page: Page, node: Node) -> None:
 
 
 def _report_unknown_verb(page: Page, node: Mapping) -> None:
-    key = next((key for word, (key, _) in node.pairs.items() if word not in GO_KEYS), None)
+    key = next((key for word, (key, _) in node.pairs.items() if word not in _OPTIONS), None)
     if key is None:
         page.report(node, "This step does not say what to do.", f"Begin it with {_LISTED_VERBS}.")
     else:
@@ -90,112 +77,165 @@ def _report_unknown_verb(page: Page, node: Mapping) -> None:
         page.report(key, f"There is no step called {quoted(key.text)}.", help_text)
 
 
-def _read_go(scope: Scope, node: Mapping) -> Step:
-    fields = Fields(scope.page, node, "the step go", GO_KEYS)
-    place = read_place(scope, node.pairs["go"][1])
-    return Go(fields.pair_mark("go"), place, *_leg_options(scope, fields))
+# --- waits and questions ------------------------------------------------------------------------------------------
 
 
-def _read_visit(scope: Scope, node: Mapping) -> Step:
-    page = scope.page
-    fields = Fields(page, node, "the step visit", VISIT_KEYS)
-    listed = items(page, node.pairs["visit"][1], "places to visit", VISIT_KEYS["visit"])
-    places = tuple((page.mark(item), read_place(scope, item)) for item in listed)
-    return Visit(fields.pair_mark("visit"), places, *_leg_options(scope, fields))
-
-
-def _leg_options(scope: Scope, fields: Fields) -> tuple[RetryRule, float | None, Otherwise | tuple[Step, ...] | None]:
-    """Rule, time limit and what follows a failed leg."""
-    limit = fields.get("within")
-    return (
-        _read_rule_name(scope, fields.get("rule")),
-        None if limit is None else amount(scope.page, limit, WITHIN, GO_KEYS["within"]),
-        _read_otherwise(scope, fields.get("otherwise")),
-    )
-
-
-def _read_rule_name(scope: Scope, node: Node | None) -> RetryRule:
-    text = DEFAULT_RULE.name if node is None else scope.page.text(node, "a retry rule", "patient")
-    rule = DEFAULT_RULE if text is None else scope.rules.get(text)
-    if rule is not None:
-        return rule
-    if node is not None and text is not None:
-        help_text = nearest(text, scope.rules, "retry rule")
-        scope.page.report(node, f"There is no retry rule called {quoted(text)}.", help_text)
-    return DEFAULT_RULE
-
-
-def _read_otherwise(scope: Scope, node: Node | None) -> Otherwise | tuple[Step, ...] | None:
-    if node is None:
-        return None
-    if isinstance(node, Sequence):
-        return read_steps(scope, node, "otherwise")
-    help_text = "Write skip, end, or a list of steps, each with a dash."
-    if isinstance(node, Mapping):
-        scope.page.report(node, "What follows a failed leg is a word or a list of steps.", help_text)
-        return None
-    text = scope.page.text(node, "what follows a failed leg", GO_KEYS["otherwise"])
-    word = None if text is None else _OTHERWISE_WORDS.get(text)
-    if text is not None and word is None:
-        scope.page.report(node, f"{quoted(text)} does not say what follows a failed leg.", help_text)
-    return word
-
-
-def _read_wait(scope: Scope, node: Mapping) -> Step:
+def _read_wait(scope: Scope, node: Mapping) -> Step | None:
     fields = Fields(scope.page, node, "the step wait", WAIT_KEYS)
-    return Wait(fields.pair_mark("wait"), fields.number("wait", WAIT))
+    mark, value = fields.pair_mark("wait"), node.pairs["wait"][1]
+    if isinstance(value, Mapping):
+        return _read_wait_until(scope, fields, value)
+    return Wait(mark, scope.page.phrase(value, _parse_wait, WAIT.least, "a time", WAIT_KEYS["wait"]))
 
 
-def _read_repeat(scope: Scope, node: Mapping) -> Step | None:
+def _parse_wait(text: str) -> float:
+    try:
+        return WAIT.read(text)
+    except PhraseError as error:
+        try:
+            parse_clock(text)
+        except PhraseError:
+            raise error from None
+        help_text = f"Write wait: {{until: {text}}}"
+        raise PhraseError(0, len(text), "A wait lasts a time; this is a clock time.", help_text) from None
+
+
+def _read_wait_until(scope: Scope, outer: Fields, node: Mapping) -> Step | None:
     page = scope.page
-    mark = Fields(page, node, "the step repeat", REPEAT_KEYS).pair_mark("repeat")
-    body = mapping(page, node.pairs["repeat"][1], "repeat", REPEAT_KEYS["repeat"])
+    body = mapping(page, node, "wait", "{until: battery >= 50 %, up to: 10 min}")
     if body is None:
         return None
-    fields = Fields(page, body, "the step repeat", REPEAT_BODY_KEYS)
-    steps = fields.need("steps")
-    laps = () if steps is None else read_steps(scope, steps)
-    return _bounded(fields, mark, laps)
-
-
-def _bounded(fields: Fields, mark: Mark, steps: tuple[Step, ...]) -> Repeat | None:
-    """The loop with its one bound, or None after a report of none or several."""
-    bounds = [key for key in fields.mapping.pairs if key in BOUNDS]
-    if len(bounds) != 1:
-        if bounds:
-            sentence = f"A loop has one bound, but this has {' and '.join(bounds)}."
-            fields.page.report(fields.mapping.pairs[bounds[1]][0], sentence, "Keep one of them.")
-        else:
-            help_text = "Add times: 3, or for: 2 h, or until: 05:30."
-            fields.page.report(mark, "This loop does not say when it ends.", help_text)
-        return None
-    bound = bounds[0]
-    return Repeat(
-        mark,
-        times=fields.count("times", TIMES) if bound == "times" else None,
-        seconds=fields.number("for", REPEAT_FOR) if bound == "for" else None,
-        until=_clock_reached(fields) if bound == "until" else None,
-        steps=steps,
+    fields = Fields(page, body, "the step wait", WAIT_BODY_KEYS)
+    until, up_to, otherwise = fields.need("until"), fields.get("up to"), fields.get("otherwise")
+    if otherwise is not None and up_to is None:
+        sentence = '"otherwise" follows when a time is over, but there is none.'
+        page.report(node.pairs["otherwise"][0], sentence, "Add for example up to: 10 min")
+    return Wait(
+        outer.pair_mark("wait"),
+        None,
+        read_condition(scope, until, WAIT_BODY_KEYS["until"], until=True, lasting=True),
+        None if up_to is None else amount(page, up_to, WAIT, WAIT_BODY_KEYS["up to"]),
+        read_otherwise(scope, otherwise, "a wait in vain"),
     )
 
 
-def _clock_reached(fields: Fields) -> Condition:
-    clock = fields.phrase("until", parse_clock, 0.0)
-    expression = Expression(Kind.COMPARE, quantity=Quantity.CLOCK, operator=Operator.AT_LEAST, value=clock)
-    return Condition(expression, text=f"{int(clock) // 3600:02d}:{int(clock) // 60 % 60:02d}")
+def _read_ask(scope: Scope, node: Mapping) -> Step:
+    fields = Fields(scope.page, node, "the step ask", ASK_KEYS)
+    answers = _read_answers(scope, fields)
+    return Ask(
+        fields.pair_mark("ask"),
+        read_text(scope, node.pairs["ask"][1], "a question", '"Tray taken?"'),
+        answers,
+        fields.number("up to", ASK_UP_TO),
+        _read_if_silent(fields, answers),
+    )
 
+
+def _read_answers(scope: Scope, fields: Fields) -> tuple[str, ...]:
+    node = fields.need("answers")
+    listed = [] if node is None else items(fields.page, node, "answers", ASK_KEYS["answers"])
+    if node is not None and len(listed) > ANSWERS_MOST:
+        fields.page.report(
+            node, f"{len(listed)} answers are more than a person takes in.", f"Offer {ANSWERS_MOST} at most."
+        )
+    found: list[str] = []
+    for item in listed:
+        text = name(fields.page, item, "yes")
+        if text.casefold() in (answer.casefold() for answer in found):
+            fields.page.report(item, f"The answer {quoted(text)} is offered twice.", "Keep one of the two.")
+        found.append(text)
+    scope.ledger.offered.update(found)
+    return tuple(found)
+
+
+def _read_if_silent(fields: Fields, answers: tuple[str, ...]) -> str:
+    node = fields.need("if silent")
+    text = None if node is None else fields.page.text(node, "an answer", ASK_KEYS["if silent"])
+    if node is None or text is None:
+        return ""
+    if answers and text not in answers:
+        help_text = nearest(text, answers, "answer")
+        fields.page.report(node, f"{quoted(text)} is not among the answers.", help_text)
+    return text
+
+
+# --- steps that take no time --------------------------------------------------------------------------------------
+
+
+def _read_count(scope: Scope, node: Mapping) -> Step:
+    page = scope.page
+    fields = Fields(page, node, "the step count", COUNT_KEYS)
+    counted = fields.name("count")
+    if set(counted.split()) & set(RESERVED):
+        page.report(node.pairs["count"][1], f"A count cannot be called {quoted(counted)}.", _COUNT_HELP)
+    elif counted and not all(character.isalnum() or character in " -_" for character in counted):
+        page.report(node.pairs["count"][1], "The name of a count consists of letters.", _COUNT_HELP)
+    elif counted[:1].isdigit():
+        page.report(node.pairs["count"][1], "The name of a count begins with a letter.", _COUNT_HELP)
+    scope.ledger.counted.add(" ".join(counted.split()))
+    by = 1 if fields.get("by") is None else fields.count("by", COUNT_BY)
+    return CountStep(fields.pair_mark("count"), " ".join(counted.split()), by)
+
+
+def _read_notify(scope: Scope, node: Mapping) -> Step:
+    fields = Fields(scope.page, node, "the step notify", NOTIFY_KEYS)
+    return Notify(fields.pair_mark("notify"), read_text(scope, node.pairs["notify"][1], "a message", _MESSAGE))
+
+
+def _read_end(scope: Scope, node: Mapping) -> Step:
+    page = scope.page
+    fields = Fields(page, node, "the step end", END_KEYS)
+    value, because = node.pairs["end"][1], fields.get("because")
+    text = page.text(value, "completed or failed", END_KEYS["end"])
+    if text is not None and text not in ENDS:
+        page.report(value, f"A mission does not end {quoted(text)}.", "Write end: completed or end: failed")
+    reason = "" if because is None else read_text(scope, because, "a reason", END_KEYS["because"])
+    return End(fields.pair_mark("end"), ENDS.get(text or "", True), reason)
+
+
+_MESSAGE = '"The round is done."'
+_COUNT_HELP = "Write a word or two, for example trays."
 
 _VERBS: dict[str, Callable[[Scope, Mapping], Step | None]] = {
-    "go": _read_go,
-    "visit": _read_visit,
+    "go": read_go,
+    "visit": read_visit,
     "wait": _read_wait,
-    "repeat": _read_repeat,
+    "ask": _read_ask,
+    "charge": read_charge,
+    "repeat": read_repeat,
+    "when": read_when,
+    "run": read_run,
+    "count": _read_count,
+    "notify": _read_notify,
+    "end": _read_end,
 }
 _EXAMPLES = {
     "go": "go: ward east",
     "visit": "visit: [ward east, laboratory]",
     "wait": "wait: 2 min",
+    "ask": 'ask: "Tray taken?"',
+    "charge": "charge: {at: charging bay, until: battery >= 70 %}",
     "repeat": "repeat: {times: 3, steps: [go: ward east]}",
+    "when": "when: battery < 20 %",
+    "run": "run: hand over",
+    "count": "count: trays",
+    "notify": f"notify: {_MESSAGE}",
+    "end": "end: completed",
 }
-_OTHERWISE_WORDS = {word.value: word for word in Otherwise}
-_LISTED_VERBS = "go, visit, wait or repeat"
+_OPTIONS = {
+    "rule",
+    "within",
+    "otherwise",
+    "order",
+    "each",
+    "answers",
+    "up to",
+    "if silent",
+    "then",
+    "else",
+    "with",
+    "by",
+}
+"""Keys that belong to a step, but do not say which."""
+
+_LISTED_VERBS = f"{', '.join(list(_VERBS)[:-1])} or {list(_VERBS)[-1]}"

@@ -68,7 +68,10 @@ class Place:
 
 @dataclass(frozen=True, slots=True)
 class Site:
-    """One building floor of `width` x `height` meters."""
+    """One building floor of `width` x `height` meters.
+
+    `time_zone` is a name of the IANA time zone database; None for the zone of the computer that runs the mission.
+    """
 
     name: str
     width: float
@@ -77,6 +80,7 @@ class Site:
     solids: tuple[Solid, ...]
     doors: tuple[Door, ...]
     places: tuple[Place, ...]
+    time_zone: str | None = None
 
     def place(self, name: str) -> Place | None:
         """The place of that name, or None."""

@@ -108,7 +108,7 @@ IN_STEPS = (
         "steps:\n  - within: 3 s\n",
         (6, 5, 6),
         "This step does not say what to do.",
-        "Begin it with go, visit, wait or repeat.",
+        "Begin it with go, visit, wait, ask, charge, repeat, when, run, count, notify or end.",
     ),
     Case(
         "a step without what it is about",
@@ -171,7 +171,7 @@ IN_STEPS = (
         "steps:\n  - repeat:\n      steps:\n        - go: ward east\n",
         (6, 5, 6),
         "This loop does not say when it ends.",
-        "Add times: 3, or for: 2 h, or until: 05:30.",
+        "Add times: 3, or for: 2 h, or until: 05:30, or every: 30 min, or give the mission an end by.",
     ),
     Case(
         "a loop without steps",

@@ -54,13 +54,18 @@ def test_any_number_with_any_unit_is_the_number_times_the_factor(
 ) -> None:
     unit = data.draw(st.sampled_from(sorted(measure.units)))
     text = f"{number:.6f} {unit}"
-    assert parse_quantity(text, measure) == float(f"{number:.6f}") * measure.units[unit]
+    assert parse_quantity(text, measure) == pytest.approx(float(f"{number:.6f}") * measure.units[unit], rel=1e-14)
+
+
+@pytest.mark.parametrize("percent", range(101))
+def test_hundredths_are_the_nearest_there_are(percent: int) -> None:
+    assert parse_quantity(f"{percent} %", quantities.SHARE) == percent / 100
 
 
 @given(st.sampled_from(MEASURES), st.integers(min_value=-(10**6), max_value=10**6), st.sampled_from([1, 2, 4, 8, 16]))
 def test_a_quantity_that_is_written_out_reads_as_the_same_value(measure: Measure, number: int, part: int) -> None:
     value = number / part * next(iter(measure.units.values()))
-    assert parse_quantity(format_quantity(value, measure), measure) == pytest.approx(value, rel=1e-15)
+    assert parse_quantity(format_quantity(value, measure), measure) == pytest.approx(value, rel=1e-14)
 
 
 @given(st.text(max_size=20), st.sampled_from(MEASURES))
