@@ -8,12 +8,35 @@ from __future__ import annotations
 import argparse
 import os
 import sys
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
+from typing import Protocol
 
-from runner.cli import check, link, machine, report, run, runs
+from runner.cli import check, link, machine, pick_up, report, run, runs, verify, watch
+from runner.cli.deeds import DEEDS
 from runner.cli.exits import MEANINGS, Exit
 
-COMMANDS = {"check": check, "machine": machine, "run": run, "runs": runs, "report": report, "link": link}
+
+class Command(Protocol):
+    """One command: how it is written, and what it does."""
+
+    def add_parser(self, subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) -> None: ...
+
+    def run(self, arguments: argparse.Namespace) -> int:
+        """The exit code."""
+
+
+COMMANDS: Mapping[str, Command] = {
+    "check": check,
+    "machine": machine,
+    "run": run,
+    "runs": runs,
+    "watch": watch,
+    **{deed.name: deed for deed in DEEDS},
+    "pick-up": pick_up,
+    "report": report,
+    "verify": verify,
+    "link": link,
+}
 
 _DESCRIPTION = "Scripted rounds for one indoor mobile robot: run them, watch them, and argue from the record."
 

@@ -3,23 +3,20 @@
 from __future__ import annotations
 
 import argparse
-import signal
 import sys
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
+from runner.cli.care import add_care_options, care_of
 from runner.cli.exits import Exit
+from runner.cli.link import add_robot_options, area_is_clear, line_of
+from runner.cli.owning import Task, add_mode_options, carry, waits_for_person
 from runner.cli.reading import check_all, read, show_findings, show_problems
 
 if TYPE_CHECKING:
-    from collections.abc import Callable
     from pathlib import Path
 
-    from runner.host.board import Board
     from runner.host.launch import Order
-    from runner.journal.outcome import RunOutcome
-
-SIGNALS = {signal.SIGINT: "Ctrl-C", signal.SIGTERM: "SIGTERM", signal.SIGHUP: "the lost terminal"}
-"""Signals that abort a run in an orderly way, and who is named for them in the record."""
 
 
 def add_parser(subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
@@ -38,7 +35,9 @@ def add_parser(subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) 
         metavar="N",
         help="simulated seconds a second: 1, 10, ... or max (default: 1)",
     )
-    parser.add_argument("--plain", action="store_true", help="plain lines instead of a screen")
+    add_mode_options(parser)
+    add_robot_options(parser)
+    add_care_options(parser)
 
 
 def _pace(text: str) -> float | None:
@@ -57,26 +56,23 @@ def run(arguments: argparse.Namespace) -> int:
     order = _order(arguments)
     if order is None:
         return Exit.MISTAKE
-    from runner.host.board import Board
-    from runner.host.launch import LaunchError, RunError
+    from runner.host.launch import carry_out, planned
+    from runner.host.process import start
     from runner.journal.errors import JournalError
-    from runner.journal.header import person_and_host
 
-    board = Board(person_and_host()[0])
-    for number, who in SIGNALS.items():
-        signal.signal(number, _aborting(board, who))
     try:
         folder = _new_folder(order)
-        (_in_plain_lines if _plain(arguments) else _on_screen)(order, folder, board)
-    except (LaunchError, JournalError) as error:
+    except JournalError as error:
         print(error, file=sys.stderr)
         return Exit.MISTAKE
-    except RunError as error:
-        print(
-            f"{error}\nThe robot was told to halt. The record up to then: trundle report {folder.name}", file=sys.stderr
-        )
-        return Exit.TROUBLE
-    return _say_outcome(folder)
+    return carry(
+        arguments,
+        Task(
+            folder,
+            lambda board, after_turn: carry_out(order, folder, board, after_turn),
+            lambda: start(planned(order, folder.name), folder),
+        ),
+    )
 
 
 def _order(arguments: argparse.Namespace) -> Order | None:
@@ -102,7 +98,14 @@ def _order(arguments: argparse.Namespace) -> Order | None:
         except LanguageError as error:
             show_problems(error)
             return None
-    return Order(mission, machine, conditions, source, arguments.seed, arguments.pace)
+    care = care_of(arguments, waits_for_person(arguments))
+    order = Order(mission, machine, conditions, source, arguments.seed, arguments.pace, care=care)
+    if arguments.robot is None:
+        return order
+    if not area_is_clear(arguments.robot, arguments.area_clear):
+        print("Nothing was driven.", file=sys.stderr)
+        return None
+    return replace(order, backend="link", line=line_of(arguments, arguments.robot))
 
 
 def _new_folder(order: Order) -> Path:
@@ -111,69 +114,3 @@ def _new_folder(order: Order) -> Path:
     from runner.journal.runs import new_run, runs_folder
 
     return new_run(runs_folder(), order.mission.name, datetime.now())
-
-
-def _plain(arguments: argparse.Namespace) -> bool:
-    from runner.screen.terminal import suitable
-
-    return arguments.plain or not (suitable(sys.stdout) and sys.stdin.isatty())
-
-
-def _aborting(board: Board, who: str) -> Callable[..., None]:
-    from runner.machine.table import Event
-
-    return lambda *_: board.wish(Event.ABORT, who)
-
-
-def _in_plain_lines(order: Order, folder: Path, board: Board) -> None:
-    from runner.host.launch import carry_out
-    from runner.screen.plain import PlainPrinter
-
-    printer = PlainPrinter(sys.stdout)
-    try:
-        carry_out(order, folder, board, lambda: printer.show(board.feed(), board.view()))
-    finally:
-        printer.show(board.feed(), board.view())
-
-
-def _on_screen(order: Order, folder: Path, board: Board) -> None:
-    """The run in a thread of its own, the screen in this one; leaving the screen waits for the run to end."""
-    from concurrent.futures import ThreadPoolExecutor
-
-    from runner.host.launch import carry_out
-    from runner.screen.showing import Showing
-    from runner.screen.watch import watch
-
-    mission = order.mission
-    showing = Showing(
-        mission=mission.name,
-        run=folder.name,
-        site=mission.site,
-        robot=mission.robot,
-        steps=order.machine.steps,
-        report_hint=f"trundle report {folder.name}",
-    )
-    with ThreadPoolExecutor(max_workers=1, thread_name_prefix="host") as pool:
-        running = pool.submit(carry_out, order, folder, board, lambda: None)
-        try:
-            watch(showing, board, running.done)
-        finally:
-            if not running.done():
-                _aborting(board, "the screen that was left")()
-        running.result()
-
-
-def _say_outcome(folder: Path) -> int:
-    from runner.journal.outcome import RunOutcome, outcome_of
-    from runner.journal.reader import open_record
-
-    with open_record(folder) as record:
-        outcome = outcome_of(record)
-    print(f"{outcome.value}\nThe record: trundle report {folder.name}")
-    codes: dict[RunOutcome, Exit] = {
-        RunOutcome.ALL_ARRIVED: Exit.OK,
-        RunOutcome.SOME_MISSED: Exit.LEGS_MISSED,
-        RunOutcome.ENDED_EARLY: Exit.ENDED_EARLY,
-        RunOutcome.ABORTED: Exit.ABORTED,
-    }
-    return codes.get(outcome, Exit.TROUBLE)

@@ -1,29 +1,42 @@
 """Where the thread that owns a run and those that watch it meet. Neither ever waits for the other.
 
-The host posts views and feed lines; a screen takes them when it likes. A person's wishes go the other way.
+The host posts views and feed lines; screens take them when they like. A person's wishes go the other way, and each is
+answered once, when the engine has had it.
 """
 
 from __future__ import annotations
 
 import queue
 import threading
+import time
 from collections import deque
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from runner.host.view import FeedLine, View
 from runner.machine.table import Event
 
 FEED_LINES_MOST = 5_000
-"""Lines kept for a screen that does not fetch them; older ones are in the journal all the same."""
+"""Lines kept for screens that do not fetch them; older ones are in the journal all the same."""
+WISHES_MOST = 1_000
+"""Wishes that wait for the host. More than that is a flood; an abort is taken all the same."""
+
+
+def _unheard(_accepted: bool, _sentence: str) -> None:
+    """For wishes whose answer nobody waits for: the feed says what came of them."""
 
 
 @dataclass(frozen=True, slots=True)
 class Wish:
-    """What a person asks for: HOLD, RELEASE, SKIP or ABORT, and who it is."""
+    """What a person asks for, and who it is. Without an event it is a remark for the record, in `text`.
 
-    event: Event
+    `answered` is told, in the host's thread, whether the wish was taken, and in a sentence what came of it.
+    """
+
+    event: Event | None
     who: str
+    text: str = ""
+    answered: Callable[[bool, str], None] = _unheard
 
 
 class Board:
@@ -32,7 +45,10 @@ class Board:
     def __init__(self, who: str) -> None:
         self._who = who
         self._view: View | None = None
+        self._posted_at = time.monotonic()
         self._feed: deque[FeedLine] = deque(maxlen=FEED_LINES_MOST)
+        self._count = 0
+        self._taken = 0
         self._lock = threading.Lock()
         self._wishes: queue.SimpleQueue[Wish] = queue.SimpleQueue()
 
@@ -42,12 +58,20 @@ class Board:
         """The latest view, None before the first."""
         return self._view
 
+    def view_age(self) -> float:
+        """Wall seconds since the host last posted a view: the last sign of its life."""
+        return time.monotonic() - self._posted_at
+
     def feed(self) -> Sequence[FeedLine]:
-        """Lines that are new since the last call, oldest first."""
-        with self._lock:
-            lines = list(self._feed)
-            self._feed.clear()
+        """Lines that are new since the last call, oldest first. For the one screen in this process."""
+        lines, self._taken = self.lines_after(self._taken, FEED_LINES_MOST)
         return lines
+
+    def lines_after(self, number: int, most: int) -> tuple[list[FeedLine], int]:
+        """The newest lines after the `number`th, at most so many, and the number of the last of them."""
+        with self._lock:
+            new = min(self._count - number, len(self._feed), most)
+            return (list(self._feed)[-new:] if new > 0 else []), self._count
 
     def act(self, event: Event) -> None:
         """Pass on a wish of the person at this screen."""
@@ -57,14 +81,23 @@ class Board:
         """Pass on a wish of that person."""
         self._wishes.put(Wish(event, who))
 
+    def post_wish(self, wish: Wish) -> bool:
+        """Pass on a wish that wants an answer. False, and nothing happens, where too many are waiting already."""
+        if self._wishes.qsize() >= WISHES_MOST and wish.event is not Event.ABORT:
+            return False
+        self._wishes.put(wish)
+        return True
+
     # --- for the host
 
     def post_view(self, view: View) -> None:
         self._view = view
+        self._posted_at = time.monotonic()
 
     def post_line(self, line: FeedLine) -> None:
         with self._lock:
             self._feed.append(line)
+            self._count += 1
 
     def next_wish(self, seconds: float) -> Wish | None:
         """The next wish, waiting for one up to so many seconds of wall time."""

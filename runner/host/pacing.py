@@ -8,6 +8,10 @@ HELD_PACE = 1.0
 """While a person holds the robot, time runs no faster than theirs: nobody holds a robot for a night in a blink."""
 
 
+CATCH_UP_S = 1.0
+"""A host that was kept from working longer than this does not run faster to make up for it."""
+
+
 class Pacer:
     """Compares virtual time with wall time. `pace` is virtual seconds per wall second, None for no bound."""
 
@@ -32,4 +36,7 @@ class Pacer:
         """Wall seconds to wait until wall time has caught up with the virtual time `now`; 0 or less for none."""
         if self._pace is None:
             return 0.0
-        return (now - self._virtual) / self._pace - (time.monotonic() - self._wall)
+        ahead = (now - self._virtual) / self._pace - (time.monotonic() - self._wall)
+        if ahead < -CATCH_UP_S:
+            self._wall, self._virtual = time.monotonic(), now
+        return ahead

@@ -118,7 +118,8 @@ def _clock_set(note: ClockSet) -> Told:
 
 
 def _resumed(note: Resumed) -> Told:
-    return Weight.NOTICE, f"picked up by {note.who}, {note.down:.0f} s after its process had died"
+    after = f", {say_seconds(float(round(note.down)))} after its process had died" if note.down >= 1.0 else ""
+    return Weight.NOTICE, f"picked up by {note.who}{after}"
 
 
 _WORDS: dict[type[Any], Callable[[Any], Told]] = {

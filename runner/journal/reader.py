@@ -69,6 +69,16 @@ class TrackRow:
 
 
 @dataclass(frozen=True, slots=True)
+class Snapshot:
+    """The engine's state after entry `entry` and row `track` of the track (`runner.engine.codec`)."""
+
+    entry: int
+    track: int
+    stamp: float
+    state: bytes
+
+
+@dataclass(frozen=True, slots=True)
 class Reading:
     """The counters of the robot at one moment: battery as a fraction, path driven in meters."""
 
@@ -89,12 +99,13 @@ class Record:
             Source(*row) for row in self._rows("SELECT path, text FROM source ORDER BY rowid")
         )
         self.machine_json: str = next(iter(self._rows("SELECT json FROM machine")), ("",))[0]
+        self.plan_json: str = next(iter(self._rows("SELECT json FROM plan")), ("",))[0]
 
     @property
     def status(self) -> Status:
         """Ended where the mission has an end in the record; else running while a writer lives."""
         # Looked at first: a writer that ends the run between the two looks must not be taken for one that died.
-        running = _is_locked(self.path.parent)
+        running = is_owned(self.path.parent)
         if self._mission_ended():
             return Status.ENDED
         return Status.RUNNING if running and not self._run_value("closed") else Status.BROKEN_OFF
@@ -122,19 +133,35 @@ class Record:
                 yield Entry(*row)
             after = page[-1][0]
 
-    def track(self) -> Iterator[TrackRow]:
-        """The telemetry, in order, exactly as the engine was told it."""
+    def newest(self, names: Sequence[str]) -> Entry | None:
+        """The last entry with one of these names, if there is any."""
+        chosen = ",".join("?" * len(names))
+        query = (
+            f"SELECT seq, stamp, kind, name, body, digest FROM entry WHERE name IN ({chosen}) ORDER BY seq DESC LIMIT 1"  # noqa: S608
+        )
+        return next((Entry(*row) for row in self._rows(query, names)), None)
+
+    def track(self, after: int = 0) -> Iterator[TrackRow]:
+        """The telemetry, in order, exactly as the engine was told it; after a row that a snapshot names, if any."""
         query = (
             "SELECT seq, after_entry, stamp, x, y, heading, spread, speed, battery, driven, remaining, route_number,"
             " obstacles, route, route_kept FROM track WHERE seq > ? ORDER BY seq LIMIT ?"
         )
         route: tuple[Point, ...] = ()
-        after = 0
         while page := self._rows(query, (after, PAGE_ROWS)):
             for row in page:
                 route = _route_after(route, *row[13:])
                 yield TrackRow(row[0], row[1], _seen(row[2:13], route))
             after = page[-1][0]
+
+    def snapshots(self) -> list[Snapshot]:
+        """Those kept, oldest first."""
+        return [Snapshot(*row) for row in self._rows("SELECT entry, track, stamp, state FROM snapshot ORDER BY seq")]
+
+    def track_is_whole(self) -> bool:
+        """False where the track was bounded and its beginning dropped."""
+        first = self._rows("SELECT min(seq) FROM track")[0][0]
+        return first is None or first == 1
 
     def readings(self) -> tuple[Reading, Reading] | None:
         """The first and the last of the robot's counters; None without telemetry."""
@@ -246,7 +273,7 @@ def _check_marks(file: Path, connection: sqlite3.Connection) -> None:
         raise JournalError(f"{file} holds no run: it was cut off before the run began.")
 
 
-def _is_locked(folder: Path) -> bool:
+def is_owned(folder: Path) -> bool:
     """True while a writer in some process of this computer holds the folder's lock."""
     try:
         handle = os.open(folder, os.O_RDONLY | os.O_DIRECTORY)

@@ -7,6 +7,9 @@ A record is one SQLite file, readable with the stock `sqlite3` tool:
 - `run`: what the run is, key and value. The only table that holds wall time, names of people or machines.
 - `source`: every file the mission was read from, as it was read.
 - `machine`: the compiled machine, as JSON.
+- `plan`: all else that is needed to go on with the run after its process died, as JSON; empty where nobody can.
+- `snapshot`: the engine's state after entry `entry` and row `track` of the track, as MessagePack. Only a shortcut: the
+  entries and the track give the same state. The first row of the track after a snapshot has its whole route.
 - `entry`: inputs (but telemetry), commands and notes, in order. Two runs of the same mission and seed have the same
   bytes here.
 - `track`: telemetry. `after_entry` is the last entry before it, which puts both in one order. `route` is kept only
@@ -37,6 +40,14 @@ TABLES = (
     f"CREATE TABLE run (key TEXT PRIMARY KEY, value TEXT NOT NULL){_STRICT}",
     f"CREATE TABLE source (path TEXT PRIMARY KEY, text TEXT NOT NULL, sha256 TEXT NOT NULL){_STRICT}",
     f"CREATE TABLE machine (json TEXT NOT NULL){_STRICT}",
+    f"CREATE TABLE plan (json TEXT NOT NULL){_STRICT}",
+    f"""CREATE TABLE snapshot (
+        seq INTEGER PRIMARY KEY,
+        entry INTEGER NOT NULL,
+        track INTEGER NOT NULL,
+        stamp REAL NOT NULL,
+        state BLOB NOT NULL
+    ){_STRICT}""",
     f"""CREATE TABLE entry (
         seq INTEGER PRIMARY KEY,
         stamp REAL NOT NULL,

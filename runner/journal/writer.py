@@ -5,6 +5,8 @@ Rules:
   to 3.51.2 can damage a write-ahead log that two connections reset at once; sqlite.org/wal.html, "The WAL-Reset Bug".)
 - Entries are committed one call a transaction, with a write-ahead log and synchronous FULL: they survive loss of power.
   The track waits for the next entry, or for enough rows or time.
+- A snapshot is committed together with all that led to it. The track may be bounded: what is older than the oldest
+  snapshot kept is dropped, never an entry.
 - A failed write changes nothing here, so the same values may be written again once there is room.
 - While a writer lives it holds a lock on the run's folder, which the system drops when its process dies. That is how a
   reader tells a run that goes on from one that was broken off.
@@ -16,7 +18,8 @@ from __future__ import annotations
 import fcntl
 import os
 import sqlite3
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from datetime import datetime
 from pathlib import Path
 from types import TracebackType
@@ -28,6 +31,7 @@ from runner.journal import schema
 from runner.journal.codec import Value, encode, pack_points
 from runner.journal.errors import JournalError, cause
 from runner.journal.header import RunHeader
+from runner.journal.reader import open_record
 from runner.language.mission import Source
 from runner.site.values import Point
 
@@ -42,6 +46,9 @@ LOG_BYTES_MOST = 16 * 2**20
 """A log that grew beyond this while a reader held it is cut back. Far above an ordinary one: to cut and grow the file
 at every checkpoint would cost a tenth of the speed."""
 
+SNAPSHOTS_MOST = 3
+"""Kept where the track is not bounded: the last one serves, the others are there in case it cannot be read."""
+
 BUSY_S = 5.0
 
 Row = tuple[object, ...]
@@ -51,24 +58,30 @@ _INSERT_TRACK = (
     "INSERT INTO track (after_entry, stamp, x, y, heading, spread, speed, battery, driven, remaining,"
     " route_number, obstacles, route, route_kept) VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)"
 )
+_INSERT_SNAPSHOT = (
+    "INSERT INTO snapshot (entry, track, stamp, state) VALUES (?, (SELECT coalesce(max(seq), 0) FROM track), ?, ?)"
+)
 
 
 class JournalWriter:
     """The one that writes the record of a run. Made by `create`; used from the thread that made it."""
 
-    def __init__(self, path: Path, connection: sqlite3.Connection, lock: int, digest: str) -> None:
+    def __init__(self, path: Path, connection: sqlite3.Connection, lock: int, digest: str, seq: int = 0) -> None:
         self.path = path
         self._connection = connection
         self._lock = lock
         self._digest = digest
-        self._seq = 0
+        self._seq = seq
         self._waiting: list[Row] = []
         self._waiting_since = 0.0
-        self._route: tuple[Point, ...] = ()
+        self._route: tuple[Point, ...] | None = ()
+        """The route of the newest row; None where the next row must hold its whole route."""
         self._closed = False
 
     @classmethod
-    def create(cls, folder: Path, header: RunHeader, sources: Sequence[Source], machine_json: str) -> Self:
+    def create(
+        cls, folder: Path, header: RunHeader, sources: Sequence[Source], machine_json: str, plan_json: str = ""
+    ) -> Self:
         """Begin the record of a run in its folder, which is made (mode 0700) if it is not there.
 
         JournalError where the folder holds a record already, is being written by another, or cannot be written.
@@ -79,7 +92,7 @@ class JournalWriter:
         try:
             if path.exists():
                 raise JournalError(f"{folder} holds the record of a run already. Start the run in a folder of its own.")
-            connection = _new_file(path, header, sources, machine_json)
+            connection = _new_file(path, header, sources, machine_json, plan_json)
         except sqlite3.Error as error:
             os.close(lock)
             raise _said(error, path) from error
@@ -87,6 +100,31 @@ class JournalWriter:
             os.close(lock)
             raise
         return cls(path, connection, lock, schema.first_digest(machine_json, sources))
+
+    @classmethod
+    def resume(cls, folder: Path) -> Self:
+        """Go on with the record of a run whose writer has died or closed it before the mission ended.
+
+        What is in the record stays; the next entry follows the last. JournalError where another process is writing
+        it, or where it is no record of ours.
+        """
+        lock = _lock_folder(folder)
+        path = folder / schema.FILE_NAME
+        try:
+            with open_record(folder):
+                pass  # says in words what is wrong with the file
+            connection = _set_up(sqlite3.connect(path, timeout=BUSY_S, isolation_level=None))
+            connection.execute("DELETE FROM run WHERE key IN ('closed', 'trouble')")
+            seq, digest = _last_entry(connection)
+        except sqlite3.Error as error:
+            os.close(lock)
+            raise _said(error, path) from error
+        except BaseException:
+            os.close(lock)
+            raise
+        writer = cls(path, connection, lock, digest, seq)
+        writer._route = None
+        return writer
 
     @property
     def last_entry(self) -> int:
@@ -103,14 +141,49 @@ class JournalWriter:
         self._seq += len(rows)
         self._digest = digest
 
-    def track(self, seen: Seen) -> None:
-        """Keep telemetry: with the next entries, or on its own once enough of it waits."""
+    def track(self, seen: Seen, effects: Sequence[Value] = ()) -> None:
+        """Keep telemetry and commit what came of it; where nothing did, it waits for the next entries, or for more.
+
+        JournalError where it cannot be done; then nothing has changed.
+        """
+        before = self._waiting_since, self._route
         if not self._waiting:
             self._waiting_since = seen.stamp
         self._waiting.append(self._track_row(seen))
         self._route = seen.route
-        if len(self._waiting) >= TRACK_ROWS_AT_MOST or seen.stamp - self._waiting_since >= TRACK_SECONDS_AT_MOST:
-            self._commit([])
+        try:
+            if effects:
+                self.write(seen.stamp, effects)
+            elif len(self._waiting) >= TRACK_ROWS_AT_MOST or seen.stamp - self._waiting_since >= TRACK_SECONDS_AT_MOST:
+                self._commit([])
+        except BaseException:
+            self._waiting.pop()
+            self._waiting_since, self._route = before
+            raise
+
+    def snapshot(self, stamp: float, state: bytes, track_seconds: float | None = None) -> None:
+        """Commit the engine's state as it is after all that was written and tracked so far.
+
+        With `track_seconds`, telemetry that is not needed to follow the record from so long ago on is dropped.
+        """
+        self._commit([], (stamp, state))
+        self._route = None
+        with _said_by(self.path), _Transaction(self._connection):
+            if track_seconds is None:
+                self._connection.execute(
+                    "DELETE FROM snapshot WHERE seq <= (SELECT max(seq) FROM snapshot) - ?", (SNAPSHOTS_MOST,)
+                )
+            else:
+                self._drop_before(stamp - track_seconds)
+
+    def _drop_before(self, stamp: float) -> None:
+        """Let the newest snapshot that is older than `stamp` be the first thing from which the track goes on."""
+        oldest = "SELECT max(seq) FROM snapshot WHERE stamp <= ?"
+        self._connection.execute(
+            f"DELETE FROM track WHERE seq <= (SELECT track FROM snapshot WHERE seq = ({oldest}))",  # noqa: S608
+            (stamp,),
+        )
+        self._connection.execute(f"DELETE FROM snapshot WHERE seq < ({oldest})", (stamp,))  # noqa: S608
 
     def close(self, trouble: str = "") -> None:
         """End the record. `trouble` says in a sentence what ended it, where it was not the mission.
@@ -174,8 +247,8 @@ class JournalWriter:
             kept,
         )
 
-    def _commit(self, entries: Sequence[Row]) -> None:
-        if not entries and not self._waiting:
+    def _commit(self, entries: Sequence[Row], snapshot: tuple[float, bytes] | None = None) -> None:
+        if not entries and not self._waiting and snapshot is None:
             return
         connection = self._connection
         try:
@@ -183,17 +256,21 @@ class JournalWriter:
                 if self._waiting:
                     connection.executemany(_INSERT_TRACK, self._waiting)
                 connection.executemany(_INSERT_ENTRY, entries)
+                if snapshot is not None:
+                    connection.execute(_INSERT_SNAPSHOT, (self._seq, *snapshot))
         except sqlite3.Error as error:
             raise _said(error, self.path) from error
         self._waiting.clear()
 
 
-def _route_change(before: tuple[Point, ...], route: tuple[Point, ...]) -> tuple[bytes | None, int | None]:
+def _route_change(before: tuple[Point, ...] | None, route: tuple[Point, ...]) -> tuple[bytes | None, int | None]:
     """The new head of a route and how many points of the end of the route before it still follow.
 
     (None, None) where nothing changed. A robot that drives along its route cuts points off the head, or moves the
     head with it; any other change is kept whole.
     """
+    if before is None:
+        return pack_points(route), 0
     if route == before:
         return None, None
     for new in (0, 1):
@@ -218,7 +295,9 @@ def _lock_folder(folder: Path) -> int:
     return lock
 
 
-def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_json: str) -> sqlite3.Connection:
+def _new_file(
+    path: Path, header: RunHeader, sources: Sequence[Source], machine_json: str, plan_json: str
+) -> sqlite3.Connection:
     connection = sqlite3.connect(path, timeout=BUSY_S, isolation_level=None)
     try:
         # The marks go into the file itself before the write-ahead log exists, so that any tool finds them there.
@@ -231,6 +310,16 @@ def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_
             digests = [(source.path, source.text, schema.text_digest(source.text)) for source in sources]
             connection.executemany("INSERT INTO source VALUES (?, ?, ?)", digests)
             connection.execute("INSERT INTO machine VALUES (?)", (machine_json,))
+            connection.execute("INSERT INTO plan VALUES (?)", (plan_json,))
+    except BaseException:
+        connection.close()
+        raise
+    return _set_up(connection)
+
+
+def _set_up(connection: sqlite3.Connection) -> sqlite3.Connection:
+    """Write-ahead log and durability, for a file that is about to be written."""
+    try:
         connection.execute("PRAGMA journal_mode = WAL")
         connection.execute("PRAGMA synchronous = FULL")
         connection.execute(f"PRAGMA wal_autocheckpoint = {CHECKPOINT_PAGES}")
@@ -239,6 +328,16 @@ def _new_file(path: Path, header: RunHeader, sources: Sequence[Source], machine_
         connection.close()
         raise
     return connection
+
+
+def _last_entry(connection: sqlite3.Connection) -> tuple[int, str]:
+    """Number and digest of the last entry; where there is none, those from which the chain starts."""
+    row = connection.execute("SELECT seq, digest FROM entry ORDER BY seq DESC LIMIT 1").fetchone()
+    if row is not None:
+        return int(row[0]), str(row[1])
+    machine_json = connection.execute("SELECT json FROM machine").fetchone()[0]
+    sources = [Source(*row) for row in connection.execute("SELECT path, text FROM source ORDER BY rowid")]
+    return 0, schema.first_digest(machine_json, sources)
 
 
 def _into_one_file(connection: sqlite3.Connection) -> None:
@@ -270,6 +369,14 @@ class _Transaction:
         finally:
             if self._connection.in_transaction:
                 self._connection.execute("ROLLBACK")
+
+
+@contextmanager
+def _said_by(path: Path) -> Iterator[None]:
+    try:
+        yield
+    except sqlite3.Error as error:
+        raise _said(error, path) from error
 
 
 def _said(error: sqlite3.Error, path: Path) -> Exception:

@@ -12,7 +12,7 @@ from pathlib import Path
 import pytest
 
 from runner.host.board import Board
-from runner.host.launch import LaunchError, Order, carry_out, make_backend
+from runner.host.launch import LaunchError, Order, carry_out, make_backend, planned
 from runner.host.view import Health
 from runner.journal.reader import open_record
 from runner.language.mission import Recovery, RecoveryKind, Step
@@ -108,11 +108,9 @@ def test_a_carton_across_the_hall_is_an_incident_that_the_record_explains(tmp_pa
 
 
 def test_an_unknown_backend_is_refused_with_the_names_of_those_there_are() -> None:
-    from dataclasses import replace
-    from datetime import datetime
-
+    errand = planned(order(go(FAR)), "a-run")
     with pytest.raises(LaunchError, match=r'There is no backend "simm"\. Installed: .*sim'):
-        make_backend(replace(order(go(FAR)), backend="simm"), datetime(2026, 1, 5, 18))
+        make_backend("simm", errand.plan.setup, errand.machine)
 
 
 FULL_DISK = """

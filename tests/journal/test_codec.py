@@ -73,7 +73,7 @@ def test_a_class_is_named_as_a_person_writes_it() -> None:
 
 def test_equal_values_give_equal_bytes_whatever_type_their_numbers_are() -> None:
     assert encode(Begin(0, 64800)) == encode(Begin(0.0, 64800.0))
-    assert encode(Begin(0, 64800))[2] == '{"stamp":0.0,"clock":64800.0}'
+    assert encode(Begin(0, 64800))[2] == '{"stamp":0.0,"clock":64800.0,"seed":0}'
 
 
 def test_a_value_that_would_not_read_back_is_refused_when_it_is_written() -> None:
