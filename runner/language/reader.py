@@ -9,6 +9,7 @@ from __future__ import annotations
 from pathlib import Path
 from typing import TypeVar
 
+from runner.language.collection import collection_off
 from runner.language.conditions_file import read_conditions_page
 from runner.language.mission import Mission, Source
 from runner.language.mission_file import Ground, read_mission_page
@@ -20,6 +21,7 @@ from runner.site.values import Conditions, RobotDescription, Site
 Value = TypeVar("Value")
 
 
+@collection_off()
 def load_mission(path: Path) -> Mission:
     """The mission in a file, with its site and robot, whose paths are seen from the folder of the mission."""
     reading = Reading()
@@ -28,6 +30,7 @@ def load_mission(path: Path) -> Mission:
     return _whole(reading, mission)
 
 
+@collection_off()
 def read_mission(text: str, file: str, site: Site, robot: RobotDescription) -> Mission:
     """The mission in a text, on a site and for a robot that are at hand; the files it names are not opened."""
     reading = Reading()

@@ -10,6 +10,7 @@ from collections.abc import Callable, Iterable
 from dataclasses import dataclass, field, replace
 from typing import Any
 
+from runner.language.collection import collection_off
 from runner.language.expressions import Condition, Expression, Quantity
 from runner.language.mission import (
     Ask,
@@ -113,6 +114,7 @@ class _Sheet:
             self.blocks[block].exits[exit_] = to
 
 
+@collection_off()
 def compile_mission(mission: Mission, lengths: Lengths = floor_lengths) -> Machine:
     """The machine of a checked mission. `lengths` gives the route lengths a visit by shortest or nearest way needs."""
     sheet = _Sheet(mission, lengths, mission.start)

@@ -12,6 +12,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Iterator, Mapping
 
+from runner.language.collection import collection_off
 from runner.language.diagnostics import WHOLE_FILE, Diagnostic
 from runner.language.mission import Mark
 from runner.machine.findings import Finding
@@ -44,6 +45,7 @@ _ENDS_GOAL = {Event.ARRIVED, *GOAL_ENDS}
 _ENDS_ACTION = {Event.ACTION_DONE, Event.ACTION_FAILED}
 
 
+@collection_off()
 def check_table(machine: Machine) -> list[Finding]:
     """Every finding on the table; none means that each of the three properties holds."""
     entered = entrances(machine)
