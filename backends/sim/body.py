@@ -35,12 +35,6 @@ class Body:
         x, y, heading = self.place.tolist()
         return Pose(x, y, heading)
 
-    def state(self) -> NDArray[np.float64]:
-        """(x, y, heading, vx, vy), as people see it."""
-        x, y, heading = self.place.tolist()
-        speed = self.drive.speed
-        return np.array([x, y, heading, speed * math.cos(heading), speed * math.sin(heading)])
-
     def advance(self, world: World, people: NDArray[np.float64], speed: float, turn: float, time: float) -> None:
         """Drive toward the wanted speeds for one tick, as far as it is really free. A hit stops the wheels at once."""
         if self.charge.empty:

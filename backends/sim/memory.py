@@ -28,7 +28,8 @@ PAINT_M = 0.2
 """How far beyond the circumscribed radius remembered cells show in the distance field."""
 MOST_CELLS = 1 << 14
 SCANS_PER_REPAINT = 4
-"""The distance field forgets what the memory forgot only every so many scans: together it costs less."""
+"""Every so many scans the distance field forgets what the memory forgot (together that costs less), and the memory what
+it has where the robot itself stands."""
 SHOWN_M, SHOWN_MOST = 4.0, 64
 """Obstacles reported in telemetry: how near, and how many at most."""
 
@@ -47,6 +48,7 @@ class Memory:
         self._cap = max(1, round(LONGEST_MEMORY_S * lidar.rate))
         self._tolerance = max(TOLERANCE_M, 4.0 * lidar.noise)
         self._reach = lidar.range_max
+        self._own = outline.inner
         self._lost = np.zeros(MOST_CELLS, dtype=np.int64)
         self._gone = 0
         self._scans = 0
@@ -65,8 +67,8 @@ class Memory:
                 scan.ranges, x, y, first, scan.step, self._reach, self._evidence, self._seen, self._scans,
                 self._cells, self.count, self._lost, self._gone,
             )  # fmt: skip
-        if self._gone and (self._scans % SCANS_PER_REPAINT == 0 or self._gone == len(self._lost)):
-            self._repaint()
+        if self._scans % SCANS_PER_REPAINT == 0 or self._gone == len(self._lost):
+            self.forget(pose, self._own)
 
     def _repaint(self) -> None:
         """Make the field right after cells were forgotten."""
@@ -77,6 +79,8 @@ class Memory:
         """Forget all within a radius of the robot; how many cells that were."""
         if self._gone:
             self._repaint()
+        if not self.count:
+            return 0
         before = self.count
         self.count = forget(
             pose.x, pose.y, float(radius), self.known, self._evidence, self._cells, self.count, self.field, self._disc

@@ -31,11 +31,13 @@ GATHER_M = 1.5
 """How far from a place people stand."""
 PASS_M, ARRIVE_M = 0.5, 0.2
 """How near a bend, and the end, counts as there."""
-PATIENCE_S = 15.0
+PATIENCE_S = 6.0
 """After this long on the way to one bend a person looks for another way, or gives up."""
 START_OFF_ROBOT_M = 1.0
-ROBOT_BERTH_M = 0.6
+ROBOT_BERTH_M = 0.9
 """Somebody stuck looks for a way that keeps this far from the robot's middle."""
+ROUND_ROBOT_POINTS = 5
+"""Such a way is walked by every so many of its points, 0.1 m apart, for in a straight line the robot would be in it."""
 
 
 class People:
@@ -65,7 +67,7 @@ class People:
             self._put(one, robot)
 
     def advance(self, now: float, robot: NDArray[np.float64], outline: Outline, time: float) -> None:
-        """Let everybody act for one tick that ends at `now`. `robot` is (x, y, heading, vx, vy)."""
+        """Let everybody act for one tick that ends at `now`. `robot` is (x, y, heading)."""
         if not len(self.bodies):
             return
         step(
@@ -117,15 +119,21 @@ class People:
         route = self._find(here, self._spots[goal], robot)
         if route is None:
             goal, route = back, self._find(here, self._spots[back], robot)
-        self._walk(one, goal, route, now)
+        self._walk(one, goal, route, now, ROUND_ROBOT_POINTS)
 
-    def _walk(self, one: int, goal: int, route: NDArray[np.float64] | None, now: float) -> None:
+    def _walk(
+        self, one: int, goal: int, route: NDArray[np.float64] | None, now: float, every: int | None = None
+    ) -> None:
+        """Walk a route: straight from bend to bend, or, with `every`, by every so many of its points."""
         if route is None:
             self._stay(one, now)
             return
         radius = float(self.bodies[one, 2])
         points = np.vstack([self.bodies[one : one + 1, :2], route, [self._spot_near(goal, radius)]])
-        self._ways[one] = points[pulled_straight(points, self._world.distance, radius)]
+        if every is None:
+            self._ways[one] = points[pulled_straight(points, self._world.distance, radius)]
+        else:
+            self._ways[one] = np.vstack([points[every:-1:every], points[-1:]])
         self._at[one] = goal
         self._wished[one] = self._speeds[one]
         self._next_bend(one, now)
@@ -156,10 +164,12 @@ class People:
 
     def _route_between(self, start: int, goal: int) -> NDArray[np.float64] | None:
         """The way between two places while these doors are shut, remembered."""
-        key = (start, goal, self._world.shut)
+        low, high = min(start, goal), max(start, goal)
+        key = (low, high, self._world.shut)
         if key not in self._routes:
-            self._routes[key] = self._find(self._spots[start], self._spots[goal])
-        return self._routes[key]
+            self._routes[key] = self._find(self._spots[low], self._spots[high])
+        route = self._routes[key]
+        return route if route is None or start < goal else route[::-1]
 
     def _find(self, start: Point, goal: Point, robot: NDArray[np.float64] | None = None) -> NDArray[np.float64] | None:
         """The way over what is there now, doors included; with `robot`, round it."""

@@ -25,7 +25,7 @@ STRENGTH = 8.0
 """How much dearer the tightest cell is than an open one."""
 SMOOTH_POINTS = 3
 """A route is smoothed over so many of its points, 0.1 m apart, to each side."""
-START_REACH_CELLS = 6
+START_REACH_CELLS = 10
 """How far off its own cell (of 10 cm) a route may begin where that is too tight."""
 SLACK_M = 0.01
 """A route counts as obstructed where its clearance fell by more than this below what it needs."""

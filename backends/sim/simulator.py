@@ -127,9 +127,9 @@ class Simulator:
     def _tick(self) -> None:
         self._ticks += 1
         now = self._clock.seconds = self._ticks / TICKS_PER_S
-        state, bodies = self.body.state(), self.people.bodies
-        self.world.advance(now, state.tolist(), self.body.outline, bodies, self._ticks % TICKS_PER_S == 0)
-        self.people.advance(now, state, self.body.outline, TICK_S)
+        place, bodies = self.body.place, self.people.bodies
+        self.world.advance(now, place.tolist(), self.body.outline, bodies, self._ticks % TICKS_PER_S == 0)
+        self.people.advance(now, place, self.body.outline, TICK_S)
         robot = self.robot
         robot.pose = self._localization.estimate(self.body.pose)
         if self._ticks % (IDLE_TICKS_PER_LOOK if robot.idle else self._ticks_per_look) == 0:

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels import grid, motion, overlap
 from backends.sim.kernels.grid import value_at
-from backends.sim.kernels.overlap import gap
+from backends.sim.kernels.overlap import gap, nearest
 from runner.site.compiled import kernel_compiler
 
 kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, overlap.__file__)
@@ -28,6 +28,7 @@ FORESIGHT_S = 2.0  # the time step of the other's stride, by which its ellipse i
 HALF_VIEW = math.cos(math.radians(100.0))  # effective angle of sight 2 phi = 200 degrees
 BEHIND = 0.5  # c
 FASTER = 1.3  # highest speed over the preferred one
+ASIDE_COSINE, ASIDE_SINE = math.cos(math.radians(80.0)), math.sin(math.radians(80.0))  # a step aside
 IGNORED_M = 4.0  # beyond this a push is under 1e-4 m/s^2
 
 
@@ -71,9 +72,10 @@ def force_on(
     target: NDArray[Any],
     wished: NDArray[Any],
     distance: NDArray[Any],
+    outline: NDArray[Any],
     robot: NDArray[Any],
 ) -> tuple[float, float]:
-    """Acceleration of one person. `robot` is (x, y, heading, vx, vy)."""
+    """Acceleration of one person. `robot` is (x, y, heading); its outline pushes as a wall does."""
     x, y = people[one, 0], people[one, 1]
     to_x, to_y = target[one, 0] - x, target[one, 1] - y
     away = math.sqrt(to_x * to_x + to_y * to_y)
@@ -81,20 +83,20 @@ def force_on(
     speed = min(wished[one], away / RELAX_S)
     total_x = (speed * way_x - velocity[one, 0]) / RELAX_S
     total_y = (speed * way_y - velocity[one, 1]) / RELAX_S
-    for other in range(people.shape[0] + 1):
-        if other == one:
+    for other in range(people.shape[0]):
+        off_x, off_y = x - people[other, 0], y - people[other, 1]
+        if other == one or abs(off_x) > IGNORED_M or abs(off_y) > IGNORED_M:
             continue
-        if other < people.shape[0]:
-            off_x, off_y = x - people[other, 0], y - people[other, 1]
-            vx, vy = velocity[other, 0], velocity[other, 1]
-        else:
-            off_x, off_y, vx, vy = x - robot[0], y - robot[1], robot[3], robot[4]
-        if abs(off_x) > IGNORED_M or abs(off_y) > IGNORED_M:
-            continue
-        force_x, force_y = pushed(off_x, off_y, vx, vy)
+        force_x, force_y = pushed(off_x, off_y, velocity[other, 0], velocity[other, 1])
         weight = seen(force_x, force_y, way_x, way_y)
         total_x += weight * force_x
         total_y += weight * force_y
+    if abs(x - robot[0]) < IGNORED_M and abs(y - robot[1]) < IGNORED_M:
+        apart, off_x, off_y = nearest(outline, robot[0], robot[1], robot[2], x, y)
+        if apart > 0.0:
+            strength = WALL / WALL_REACH_M * math.exp(-apart / WALL_REACH_M) / apart
+            total_x += strength * off_x
+            total_y += strength * off_y
     wall = value_at(distance, x, y)
     if wall < 2.0:
         up_x, up_y = uphill(distance, x, y)
@@ -121,7 +123,7 @@ def step(
     force = np.zeros((count, 2))
     for one in range(count):
         if wished[one] > 0.0:
-            force[one, 0], force[one, 1] = force_on(one, people, velocity, target, wished, distance, robot)
+            force[one, 0], force[one, 1] = force_on(one, people, velocity, target, wished, distance, outline, robot)
     for one in range(count):
         if wished[one] == 0.0:
             velocity[one, 0] = velocity[one, 1] = 0.0
@@ -147,13 +149,19 @@ def move(
     robot: NDArray[Any],
     time: float,
 ) -> None:
-    """Take the step where it is free, else slide along what is in the way, else stand."""
+    """Take the step where it is free, else slide along what is in the way, else step aside, right first, else stand."""
     x, y, radius = people[one, 0], people[one, 1], people[one, 2]
-    for attempt in range(3):
-        if attempt > 0:
-            step_x, step_y = (vx, 0.0) if attempt == 1 else (0.0, vy)
-        else:
+    for attempt in range(5):
+        if attempt == 0:
             step_x, step_y = vx, vy
+        elif attempt == 1:
+            step_x, step_y = vx, 0.0
+        elif attempt == 2:
+            step_x, step_y = 0.0, vy
+        elif attempt == 3:
+            step_x, step_y = vx * ASIDE_COSINE + vy * ASIDE_SINE, vy * ASIDE_COSINE - vx * ASIDE_SINE
+        else:
+            step_x, step_y = vx * ASIDE_COSINE - vy * ASIDE_SINE, vy * ASIDE_COSINE + vx * ASIDE_SINE
         new_x, new_y = x + step_x * time, y + step_y * time
         if fits(distance, outline, reach, robot, x, y, new_x, new_y, radius):
             people[one, 0], people[one, 1] = new_x, new_y

@@ -112,7 +112,7 @@ def restore(
 def passes(
     ranges: NDArray[Any], x: float, y: float, first: float, step: float, cell_x: float, cell_y: float, reach: float
 ) -> bool:
-    """Whether the beam nearest to a cell's center goes through the cell and comes back from beyond it."""
+    """Whether the beam nearest to a cell's center, as wide as the step to the next, comes back from beyond the cell."""
     to_x, to_y = cell_x - x, cell_y - y
     apart = math.sqrt(to_x * to_x + to_y * to_y)
     if apart > reach:
@@ -123,7 +123,7 @@ def passes(
     off = abs(bearing - beam * step)
     if beam >= ranges.shape[0]:
         beam, off = 0, TURN - bearing
-    if off > 0.5 * step or off * apart > 0.5 * CELL:
+    if off > 0.5 * step:
         return False
     return bool(apart + BEYOND < ranges[beam] < np.inf)
 

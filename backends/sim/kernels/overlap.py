@@ -72,13 +72,16 @@ def covers_solid(blocked: NDArray[Any], outline: NDArray[Any], x: float, y: floa
 
 
 @kernel
-def gap(outline: NDArray[Any], x: float, y: float, heading: float, point_x: float, point_y: float) -> float:
-    """Meters from the outline at a pose to a point; negative inside."""
+def nearest(
+    outline: NDArray[Any], x: float, y: float, heading: float, point_x: float, point_y: float
+) -> tuple[float, float, float]:
+    """From the outline at a pose to a point: the distance, negative inside, and the way there (site frame) from the
+    nearest point of the outline, as long as the distance."""
     cosine, sine = math.cos(heading), math.sin(heading)
     ahead = (point_x - x) * cosine + (point_y - y) * sine
     left = -(point_x - x) * sine + (point_y - y) * cosine
     count = outline.shape[0]
-    nearest = np.inf
+    least, way_ahead, way_left = np.inf, 0.0, 0.0
     inside = True
     for index in range(count):
         following = (index + 1) % count
@@ -89,9 +92,18 @@ def gap(outline: NDArray[Any], x: float, y: float, heading: float, point_x: floa
             inside = False
         share = min(max((to_x * side_x + to_y * side_y) / (side_x * side_x + side_y * side_y), 0.0), 1.0)
         off_x, off_y = to_x - share * side_x, to_y - share * side_y
-        nearest = min(nearest, off_x * off_x + off_y * off_y)
-    distance = math.sqrt(nearest)
-    return -distance if inside else distance
+        square = off_x * off_x + off_y * off_y
+        if square < least:
+            least, way_ahead, way_left = square, off_x, off_y
+    distance = math.sqrt(least)
+    way_x, way_y = way_ahead * cosine - way_left * sine, way_ahead * sine + way_left * cosine
+    return (-distance if inside else distance), way_x, way_y
+
+
+@kernel
+def gap(outline: NDArray[Any], x: float, y: float, heading: float, point_x: float, point_y: float) -> float:
+    """Meters from the outline at a pose to a point; negative inside."""
+    return nearest(outline, x, y, heading, point_x, point_y)[0]
 
 
 @kernel

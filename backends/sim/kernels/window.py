@@ -26,6 +26,7 @@ kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, path.__file__
 
 CELL_DIAGONAL = 0.0708
 STEP_S = 0.1  # time between two checks on an arc
+TOUCHING_M = 0.05  # with an obstacle's cell nearer to the rim than this, only driving backward is allowed
 REACTION_S = 0.1  # one tick passes before a change of mind takes effect
 SPEEDS, TURNS = 7, 21  # candidates
 WEIGHT_OFF = 1.2  # per meter beside the route, against 1 per meter along it
@@ -94,7 +95,7 @@ def free_turn(
     margin: float,
 ) -> float:
     """How much of a turn in place by the angle `by` is free, at least 0, at most abs(by)."""
-    need = closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin)
+    need = max(closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin), TOUCHING_M)
     steps = max(1, math.ceil(abs(by) / 0.07))
     for step in range(1, steps + 1):
         angle = heading + by * step / steps
@@ -176,7 +177,7 @@ def choose(
     `covered` is how far along the route the robot is; `window` the time in which candidates must be reachable;
     `horizon` the time an arc is looked at.
     """
-    need = closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin)
+    need = max(closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin), TOUCHING_M)
     low_speed = max(0.0, speed - acceleration * window)
     high_speed = max(min(fastest, speed + acceleration * window), low_speed)
     low_turn = max(-turn_fastest, turn - turn_acceleration * window)
