@@ -41,6 +41,9 @@ def run(arguments: argparse.Namespace) -> int:
         print(error, file=sys.stderr)
         return Exit.MISTAKE
     if found is None:
+        from runner.host.service import ServiceManager
+
+        ServiceManager().ready()  # a service of the kind that says when it is ready has failed where it does not
         print("There is no run to pick up.", file=sys.stdout if arguments.if_any else sys.stderr)
         return Exit.OK if arguments.if_any else Exit.MISTAKE
     folder, left = found

@@ -167,8 +167,8 @@ class Host:
         picked_up = PickedUp(clock.now(), who, midnight + days * DAY_S, down)
 
         def first() -> None:
+            self._safely(self._send, again)  # first, because being picked up may let a timer run out
             self._safely(self._give, picked_up)
-            self._safely(self._send, again)
             if action is not None:
                 lost = ActionNews(clock.now(), action, False, "The program was started anew meanwhile.")
                 self._safely(self._give, lost)
