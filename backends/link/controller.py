@@ -94,6 +94,7 @@ class Controller:
         self._good_at = 0.0
         self._taken_since: float | None = None
         self._losses: deque[float] = deque(maxlen=LOSSES_MOST)
+        self._leaving = False
 
     @property
     def ready(self) -> bool:
@@ -157,7 +158,8 @@ class Controller:
                 self._refused(order, HALTED, GoalStatus.HALTED)
 
     def leave(self) -> None:
-        """Give the lease back."""
+        """Give the lease back, and never ask for it again."""
+        self._leaving = True
         self._orders.halt(Order(lambda lease, number, _: Leave(lease, number)))
 
     def _refused(self, order: Order, reason: str, status: GoalStatus = GoalStatus.REFUSED) -> None:
@@ -179,7 +181,7 @@ class Controller:
         now = self._clock()
         messages: list[ToRobot] = []
         if self.about is None or self._lease is None:
-            if now >= self._next_ask:
+            if now >= self._next_ask and not self._leaving:
                 self._next_ask = now + ASK_S
                 messages.append(self._asking())
         else:
@@ -284,6 +286,9 @@ class Controller:
 
     def _fault(self, fault: Fault, now: float) -> None:
         quiet = now - self._good_at > ASK_S
+        if self._leaving and fault.code == "no lease" and fault.number is not None:
+            self._orders.answered(fault.number)  # it was given back, and only the answer was lost
+            return
         if fault.code == "version":
             raise BackendError(f"The robot refuses: {fault.what}")
         if fault.code == "taken":

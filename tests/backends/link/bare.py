@@ -1,0 +1,55 @@
+"""The program of PROTOCOL.md, section 12: taken out of the page, so that what is written is what is tried.
+
+It imports pyzmq and the standard library and nothing of this project.
+"""
+
+from __future__ import annotations
+
+import re
+import subprocess
+import sys
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+PROTOCOL = Path(__file__).parents[3] / "backends" / "link" / "PROTOCOL.md"
+
+
+def program() -> str:
+    """The text of the program."""
+    found = re.search(r"```python\n(.*?)```", PROTOCOL.read_text(encoding="utf-8"), re.DOTALL)
+    assert found is not None
+    return found[1]
+
+
+def changed(*changes: tuple[str, str]) -> str:
+    """The program with some of its text replaced; each must be there exactly once."""
+    text = program()
+    for before, after in changes:
+        assert text.count(before) == 1, before
+        text = text.replace(before, after)
+    return text
+
+
+@contextmanager
+def adapter(text: str, folder: Path) -> Iterator[str]:
+    """The program running in a process of its own; its address."""
+    folder.mkdir(parents=True, exist_ok=True)
+    (folder / "adapter.py").write_text(text, encoding="utf-8")
+    address = f"ipc://{folder}/socket"
+    process = subprocess.Popen([sys.executable, str(folder / "adapter.py"), address])
+    try:
+        wait_for(folder / "socket")
+        yield address
+    finally:
+        process.kill()
+        process.wait()
+
+
+def wait_for(path: Path, seconds: float = 60.0) -> None:
+    """Until a file is there."""
+    end = time.monotonic() + seconds
+    while not path.exists():
+        assert time.monotonic() < end, f"{path} did not appear"
+        time.sleep(0.02)
