@@ -33,17 +33,22 @@ def show_problems(error: Exception) -> None:
 
 
 def show_findings(findings: Sequence[Finding], sources: Sequence[Source]) -> None:
-    """Findings to standard error, errors first."""
-    from runner.language.diagnostics import render
+    """Errors and warnings to standard error, errors first, each with the name by which it can be silenced."""
+    from dataclasses import replace
 
-    ordered = sorted(findings, key=lambda finding: not finding.is_error)
-    if ordered:
-        print(render([finding.diagnostic for finding in ordered], sources), file=sys.stderr)
+    from runner.language.diagnostics import Severity, render
+
+    shown = [finding for finding in findings if finding.diagnostic.severity is not Severity.NOTE]
+    ordered = sorted(shown, key=lambda finding: not finding.is_error)
+    named = [
+        replace(finding.diagnostic, help=f"{finding.diagnostic.help} [{finding.name}]".strip()) for finding in ordered
+    ]
+    if named:
+        print(render(named, sources), file=sys.stderr)
 
 
 def check_all(mission: Mission, machine: Machine) -> list[Finding]:
-    """Every check there is, on the table and on the floor."""
-    from runner.machine.floor_checks import check_floor
-    from runner.machine.table_checks import check_table
+    """Every check there is, on the table, the floor and the estimates."""
+    from runner.machine.checks import check_mission
 
-    return [*check_table(machine), *check_floor(mission)]
+    return list(check_mission(mission, machine).findings)

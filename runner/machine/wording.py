@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from math import isinf
+
 
 def say_seconds(seconds: float) -> str:
     """`90 s`, `4 min`, `1.5 h`: the largest unit that keeps the number short and exact."""
@@ -17,3 +19,15 @@ def say_clock(seconds: float) -> str:
     whole = int(seconds) % 86_400
     hours, minutes, rest = whole // 3600, whole // 60 % 60, whole % 60
     return f"{hours:02d}:{minutes:02d}" + (f":{rest:02d}" if rest else "")
+
+
+def say_roughly(seconds: float) -> str:
+    """A duration to read at a glance: `45 s`, `12 min`, `3 h 20 min`; `no bound` for an infinite one."""
+    if isinf(seconds):
+        return "no bound"
+    if seconds < 99.5:
+        return f"{seconds:.0f} s"
+    minutes = round(seconds / 60.0)
+    if minutes < 100:
+        return f"{minutes} min"
+    return f"{minutes // 60} h {minutes % 60:02d} min"

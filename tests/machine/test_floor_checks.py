@@ -5,7 +5,9 @@ from __future__ import annotations
 from dataclasses import replace
 from math import pi
 
+from runner.machine.compiler import compile_mission
 from runner.machine.floor_checks import check_floor
+from runner.machine.survey import make_survey
 from runner.site.values import Door, Place, Pose, Site, Wall
 from tests.builders import FAR, HOME, SIDE, go, hall, mission, repeat, visit
 
@@ -15,7 +17,8 @@ def site_with(*places: Place, walls: tuple[Wall, ...] = (), doors: tuple[Door, .
 
 
 def names(*steps: object, site: Site) -> list[tuple[str, int]]:
-    findings = check_floor(mission(*steps, site=site))  # type: ignore[arg-type]
+    written = mission(*steps, site=site)  # type: ignore[arg-type]
+    findings = check_floor(make_survey(written, compile_mission(written)))
     return [(finding.name, finding.diagnostic.mark.line) for finding in findings]
 
 

@@ -14,7 +14,9 @@ from numpy.typing import NDArray
 
 import missions
 from runner.language.reader import load_conditions, load_mission, load_robot, load_site
+from runner.machine.compiler import compile_mission
 from runner.machine.floor_checks import check_floor
+from runner.machine.survey import make_survey
 from runner.site.floor import Floor, cell_of, clearance, footprint_free, inscribed_radius, rasterize
 from runner.site.routes import regions
 from runner.site.values import CELL_M, RobotDescription, Site
@@ -44,7 +46,8 @@ def test_the_files_the_readme_and_the_commands_speak_of_are_there() -> None:
 
 @pytest.mark.parametrize("path", MISSIONS, ids=stem)
 def test_every_mission_reads_without_a_diagnostic_and_its_places_are_free_and_connected(path: Path) -> None:
-    assert check_floor(load_mission(path)) == []
+    mission = load_mission(path)
+    assert check_floor(make_survey(mission, compile_mission(mission))) == []
 
 
 @pytest.mark.parametrize("path", CONDITIONS, ids=stem)
