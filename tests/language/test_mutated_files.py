@@ -1,6 +1,7 @@
 """Whatever a file holds, reading it gives a value or a `LanguageError` that can be shown; nothing else, and soon.
 
-`TRUNDLE_FUZZ_SECONDS` sets how long to look for counterexamples, 20 by default.
+`TRUNDLE_FUZZ_SECONDS` sets how long to look for counterexamples, 20 by default. `python -m tests.language.search` looks
+longer, and at time and memory too.
 """
 
 from __future__ import annotations
@@ -8,94 +9,19 @@ from __future__ import annotations
 import os
 import random
 import time
-from collections.abc import Callable
 
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from runner.language.diagnostics import LanguageError, source_lines
-from runner.language.reader import read_conditions, read_mission, read_site
-from tests.language import texts
-from tests.language.test_missions import WHOLE
-from tests.language.test_sites import EXAMPLES
+from tests.language import everything
+from tests.language.mutations import BEGINNINGS, check, mutated, read_as_mission
+from tests.language.search import Search, look
 
 SECONDS = float(os.environ.get("TRUNDLE_FUZZ_SECONDS", "20"))
-SITE = texts.site()
-BEGINNINGS = [texts.HEAD + WHOLE, texts.SITE, texts.DRAWN, *EXAMPLES]
-SCRAPS = [
-    *":-[]{},#&*!|>'\"%@`?~\\\t\n\r\0 ",
-    "- ",
-    ": ",
-    "\n  ",
-    "---\n",
-    "&a ",
-    "*a",
-    "<<: *a\n",
-    "!!python/object ",
-    "\u00e9",
-    "\u2028",
-    "\ud800",
-    "\U0001f600",
-    "-1",
-    "0",
-    "9" * 30,
-    "1e9 m",
-    ".nan m",
-    "0 m",
-    "-5 s",
-    "24:00",
-    "no",
-    "null",
-    "[[]]",
-    "{}",
-    "otherwise:\n",
-    "steps: ",
-]
 
 
-def mutated(source: random.Random, text: str) -> str:
-    """A text with a few cuts, copies, scraps and moved pieces."""
-    for _ in range(source.randint(1, 6)):
-        at, end = sorted((source.randint(0, len(text)), source.randint(0, len(text))))
-        kind = source.randrange(5)
-        if kind == 0:
-            text = text[:at] + source.choice(SCRAPS) + text[at:]
-        elif kind == 1:
-            text = text[:at] + text[min(end, at + 12) :]
-        elif kind == 2:
-            text = text[:end] + text[at : min(end, at + 60)] + text[end:]
-        elif kind == 3:
-            text = text[:at] + source.choice(SCRAPS) + text[min(at + source.randint(1, 8), len(text)) :]
-        else:
-            other = source.choice(BEGINNINGS)
-            start = source.randint(0, len(other))
-            text = text[:at] + other[start : start + 40] + text[at:]
-    return text
-
-
-def check(text: str) -> None:
-    """Reads a text as each kind of file; what is wrong with it can be shown, and every mark lies in the text."""
-    readers: tuple[Callable[[], object], ...] = (
-        lambda: read_mission(text, "file.yaml", SITE, texts.ROBOT),
-        lambda: read_site(text, "file.yaml"),
-        lambda: read_conditions(text, "file.yaml", SITE),
-    )
-    lines = source_lines(text)
-    for error in filter(None, map(refusal, readers)):
-        assert str(error).isascii()
-        assert error.diagnostics
-        for mark in (found.mark for found in error.diagnostics):
-            assert 1 <= mark.line <= len(lines)
-            assert 1 <= mark.column <= len(lines[mark.line - 1]) + 1
-        assert all(found.sentence.endswith(".") for found in error.diagnostics)
-
-
-def refusal(read: Callable[[], object]) -> LanguageError | None:
-    try:
-        read()
-    except LanguageError as error:
-        return error
-    return None
+def test_the_mission_that_uses_everything_is_read_and_compiled() -> None:
+    assert check(everything.MISSION, (read_as_mission,)) == [None]
 
 
 @given(st.sampled_from(BEGINNINGS), st.randoms(use_true_random=False))
@@ -123,3 +49,9 @@ def test_no_mutation_found_in_the_time_given_breaks_the_reader() -> None:
             raise AssertionError(f"seed {seed}, text number {tried}: {text!r}") from error
         tried += 1
     assert tried > 0
+
+
+def test_the_long_search_finds_nothing_in_a_sample() -> None:
+    search = look(seed=int.from_bytes(os.urandom(4)), count=300)
+    assert (search.tried, search.faults) == (300, [])
+    assert isinstance(search, Search)
