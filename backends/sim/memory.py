@@ -30,6 +30,7 @@ MOST_CELLS = 1 << 14
 SCANS_PER_REPAINT = 4
 """Every so many scans the distance field forgets what the memory forgot (together that costs less), and the memory what
 it has where the robot itself stands."""
+NO_OUTLINE = np.empty((0, 2))
 SHOWN_M, SHOWN_MOST = 4.0, 64
 """Obstacles reported in telemetry: how near, and how many at most."""
 
@@ -48,7 +49,7 @@ class Memory:
         self._cap = max(1, round(LONGEST_MEMORY_S * lidar.rate))
         self._tolerance = max(TOLERANCE_M, 4.0 * lidar.noise)
         self._reach = lidar.range_max
-        self._own = outline.inner
+        self._outline = outline
         self._lost = np.zeros(MOST_CELLS, dtype=np.int64)
         self._gone = 0
         self._scans = 0
@@ -68,7 +69,7 @@ class Memory:
                 self._cells, self.count, self._lost, self._gone,
             )  # fmt: skip
         if self._scans % SCANS_PER_REPAINT == 0 or self._gone == len(self._lost):
-            self.forget(pose, self._own)
+            self._drop(pose, self._outline.outer, self._outline.hull)
 
     def _repaint(self) -> None:
         """Make the field right after cells were forgotten."""
@@ -77,14 +78,18 @@ class Memory:
 
     def forget(self, pose: Pose, radius: float) -> int:
         """Forget all within a radius of the robot; how many cells that were."""
+        return self._drop(pose, float(radius), NO_OUTLINE)
+
+    def _drop(self, pose: Pose, radius: float, outline: NDArray[np.float64]) -> int:
+        """Forget within a radius, or what of that is under an outline that has corners."""
         if self._gone:
             self._repaint()
-        if not self.count:
-            return 0
         before = self.count
-        self.count = forget(
-            pose.x, pose.y, float(radius), self.known, self._evidence, self._cells, self.count, self.field, self._disc
-        )
+        if before:
+            self.count = forget(
+                pose.x, pose.y, pose.heading, radius, outline, self.known, self._evidence, self._cells, before,
+                self.field, self._disc,
+            )  # fmt: skip
         return before - self.count
 
     def shown(self, pose: Pose) -> tuple[Point, ...]:

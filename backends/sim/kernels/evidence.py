@@ -16,11 +16,12 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.sim.kernels import grid
+from backends.sim.kernels import grid, motion, overlap
 from backends.sim.kernels.grid import CELLS_PER_M, value_at
+from backends.sim.kernels.overlap import gap
 from runner.site.compiled import kernel_compiler
 
-kernel = kernel_compiler(__file__, grid.__file__)
+kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, overlap.__file__)
 
 CELL = 0.05
 BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center to have passed it
@@ -217,7 +218,9 @@ def fade(
 def forget(
     x: float,
     y: float,
+    heading: float,
     radius: float,
+    outline: NDArray[Any],
     known: NDArray[Any],
     evidence: NDArray[Any],
     cells: NDArray[Any],
@@ -225,7 +228,10 @@ def forget(
     field: NDArray[Any],
     disc: NDArray[Any],
 ) -> int:
-    """Forget the cells within `radius` of a point; the new number of remembered cells."""
+    """Forget the cells within `radius` of a pose, or of these only those under an outline where it has corners.
+
+    Returns the new number of remembered cells.
+    """
     columns = field.shape[1]
     lost = np.empty(count, dtype=np.int64)
     gone = 0
@@ -233,7 +239,10 @@ def forget(
     while index < count:
         row, column = cells[index] // columns, cells[index] % columns
         off_x, off_y = (column + 0.5) * CELL - x, (row + 0.5) * CELL - y
-        if off_x * off_x + off_y * off_y <= radius * radius:
+        hit = off_x * off_x + off_y * off_y <= radius * radius
+        if hit and outline.shape[0] > 0:
+            hit = gap(outline, x, y, heading, x + off_x, y + off_y) <= 0.0
+        if hit:
             evidence[row, column] = 0
             lost[gone] = cells[index]
             gone += 1

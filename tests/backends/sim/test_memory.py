@@ -94,6 +94,14 @@ def test_clearing_forgets_within_the_radius_and_no_farther() -> None:
     assert made.count == 1
 
 
+def test_what_the_robot_itself_stands_on_is_forgotten_in_a_moment() -> None:
+    made = memory()
+    made.take(scan_of({MIDDLE: 1.0, MIDDLE + 40: 1.0}), STANDING)
+    for _ in range(4):
+        made.take(scan_of({}), Pose(2.7, 3.025, 0.0))
+    assert made.count == 1
+
+
 def test_no_more_than_64_points_are_shown_and_none_beyond_4_meters() -> None:
     made = memory()
     made.take(scan_of(dict.fromkeys(range(181), 2.4)), STANDING)
