@@ -278,7 +278,7 @@ class Host:
     def _post_view(self) -> None:
         view = view_of(self.machine, self.state, self.backend.clock.now())
         if self.distress.kind and self.state.ended is None:
-            view = replace(view, health=Health.HELD, reason=self.distress.detail)
+            view = replace(view, health=Health.NEEDS_YOU, reason=self.distress.detail)
         self.board.post_view(view)
 
     # --- trouble --------------------------------------------------------------------------------------------------

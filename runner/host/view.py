@@ -20,6 +20,7 @@ class Health(Enum):
     WAITING = "waiting"
     RECOVERING = "recovering"
     HELD = "held"
+    NEEDS_YOU = "needs you"
     ENDED = "ended"
 
 
@@ -33,12 +34,14 @@ class Weight(Enum):
 
 @dataclass(frozen=True, slots=True)
 class FeedLine:
-    """One thing that happened, in words."""
+    """One thing that happened, in words. `at` is where, if it was trouble on the way; `who` acted, if a person did."""
 
     stamp: float
     clock: str
     weight: Weight
     text: str
+    at: Point | None = None
+    who: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -47,7 +50,8 @@ class View:
 
     `clock` is the time of day as HH:MM:SS. `reason` says in words why the health is what it is. `step` indexes the
     machine's steps, None before the first and after the last. `laps` are those of the loops around the step,
-    outermost first. `place` is where the leg under way leads, `leg_limit` its time limit if it has one. `tries` and
+    outermost first, and `laps_at_most` their bounds, None where time or a condition bounds them. `to_visit` are the
+    places that a visit under way has still to come to, in the order it will take them if that is known. `place` is where the leg under way leads, `leg_limit` its time limit if it has one. `tries` and
     `recoveries` are those of the leg under way, with their bounds.
     """
 
@@ -57,6 +61,8 @@ class View:
     reason: str
     step: int | None = None
     laps: tuple[int, ...] = ()
+    laps_at_most: tuple[int | None, ...] = ()
+    to_visit: tuple[str, ...] = ()
     place: str | None = None
     leg_seconds: float | None = None
     leg_limit: float | None = None
@@ -78,5 +84,10 @@ class View:
     answers: tuple[str, ...] = ()
     order: str | None = None
     """The standing order that acts, if one does."""
+    repeats_until: float | None = None
+    """When the outermost loop around the step is over, as far as is known: by its time, or at the pace of its laps so
+    far. A stamp."""
+    ends_by: float | None = None
+    """The stamp at which the mission is ended wherever it stands."""
     outcome: str | None = None
     """Set when the run has ended: how, in words."""

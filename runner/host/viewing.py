@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from runner.engine.state import EngineState
+from runner.engine.state import INFINITE, EngineState
 from runner.host.view import Health, View
 from runner.host.wording import SIGNS
 from runner.machine.table import Block, Machine, Register, Timer
@@ -34,6 +34,8 @@ def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
         reason=reason,
         step=None if state.ended else state.step,
         laps=_laps(machine, state),
+        laps_at_most=tuple(machine.blocks[loop].times for loop in _loops(machine, state)),
+        to_visit=_to_visit(machine, state),
         place=leg.place if leg else None,
         leg_seconds=stamp - leg.began if leg else None,
         leg_limit=limit - leg.began if leg and limit is not None else None,
@@ -54,6 +56,8 @@ def view_of(machine: Machine, state: EngineState, stamp: float) -> View:
         question=asked.text if asked else None,
         answers=asked.answers if asked else (),
         order=machine.orders[state.interrupted.order].name if state.interrupted else None,
+        repeats_until=_repeats_until(machine, state, stamp),
+        ends_by=None if state.end_by is None else state.end_by - state.clock,
         outcome=state.ended.value if state.ended else None,
     )
 
@@ -69,10 +73,39 @@ def _asked(machine: Machine, state: EngineState) -> Block | None:
     return block if block.answers and state.ended is None else None
 
 
-def _laps(machine: Machine, state: EngineState) -> tuple[int, ...]:
+def _loops(machine: Machine, state: EngineState) -> tuple[int, ...]:
+    """The loops around the step that are under way, outermost first."""
     if state.step is None:
         return ()
-    return tuple(state.loops[loop].laps for loop in machine.steps[state.step].loops if loop in state.loops)
+    return tuple(loop for loop in machine.steps[state.step].loops if loop in state.loops)
+
+
+def _laps(machine: Machine, state: EngineState) -> tuple[int, ...]:
+    return tuple(state.loops[loop].laps for loop in _loops(machine, state))
+
+
+def _to_visit(machine: Machine, state: EngineState) -> tuple[str, ...]:
+    """What the innermost visit under way has still to come to."""
+    under_way = [number for number, visit in state.visits.items() if visit.now is not None]
+    if not under_way or state.step is None:
+        return ()
+    number = max(under_way)
+    block = machine.blocks[number]
+    return tuple(machine.places[block.branch_places[index]].name for index in state.visits[number].left)
+
+
+def _repeats_until(machine: Machine, state: EngineState, stamp: float) -> float | None:
+    """The stamp at which the outermost loop is over: by its time, or as its laps have gone so far."""
+    loops = _loops(machine, state)
+    if not loops or state.ended is not None:
+        return None
+    loop, times = state.loops[loops[0]], machine.blocks[loops[0]].times
+    by_time = loop.ends - state.clock if loop.ends < INFINITE else None
+    if times is None or loop.laps < 2:
+        return by_time
+    entered = loop.entered - state.clock
+    by_laps = entered + (stamp - entered) / (loop.laps - 1) * times if loop.laps <= times else stamp
+    return by_laps if by_time is None else min(by_laps, by_time)
 
 
 def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health, str]:
@@ -93,7 +126,7 @@ def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health,
 
 def _waiting(machine: Machine, state: EngineState, name: str, rest: str) -> tuple[Health, str]:
     if (asked := _asked(machine, state)) is not None:
-        return Health.WAITING, f"question: {asked.text}{rest}"
+        return Health.NEEDS_YOU, f"question: {asked.text}{rest}"
     if state.leg is not None:
         return Health.WAITING, name + rest
     if rest or name in _WAITS:

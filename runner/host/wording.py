@@ -49,7 +49,11 @@ def feed_line(effect: Effect, stamp: float, clock: str) -> FeedLine | None:
     if words is None:
         return None
     told = words(effect)
-    return None if told is None else FeedLine(stamp, clock, *told)
+    if told is None:
+        return None
+    where = effect.pose if isinstance(effect, IncidentBegan) else None
+    who = effect.who if isinstance(effect, OperatorActed | Answered) else ""
+    return FeedLine(stamp, clock, *told, at=None if where is None else (where.x, where.y), who=who)
 
 
 Told = tuple[Weight, str] | None
