@@ -5,8 +5,10 @@ from __future__ import annotations
 from runner.engine.state import INFINITE, EngineState
 from runner.host.view import Health, View
 from runner.host.wording import SIGNS
+from runner.language.expressions import Kind, Operator, Quantity
 from runner.machine.table import Block, Machine, Register, Timer
 from runner.machine.wording import say_seconds
+from runner.site.values import DAY_S
 
 _RESTS = (Timer.REST, Timer.WAIT, Timer.UP_TO, Timer.LAP)
 
@@ -100,12 +102,24 @@ def _repeats_until(machine: Machine, state: EngineState, stamp: float) -> float 
     if not loops or state.ended is not None:
         return None
     loop, times = state.loops[loops[0]], machine.blocks[loops[0]].times
-    by_time = loop.ends - state.clock if loop.ends < INFINITE else None
+    by_time = loop.ends - state.clock if loop.ends < INFINITE else _clock_bound(machine, loops[0], loop.entered, state)
     if times is None or loop.laps < 2:
         return by_time
     entered = loop.entered - state.clock
     by_laps = entered + (stamp - entered) / (loop.laps - 1) * times if loop.laps <= times else stamp
     return by_laps if by_time is None else min(by_laps, by_time)
+
+
+def _clock_bound(machine: Machine, number: int, entered: float, state: EngineState) -> float | None:
+    """The stamp of the clock time at which a loop's condition is met at the latest, where it names one."""
+    condition = machine.blocks[number].condition
+    if condition is None:
+        return None
+    whole = condition.expression
+    for part in (whole, *(whole.parts if whole.kind is Kind.OR else ())):
+        if part.quantity is Quantity.CLOCK and part.operator is Operator.AT_LEAST:
+            return entered + (part.value - entered) % DAY_S - state.clock
+    return None
 
 
 def _health(machine: Machine, state: EngineState, stamp: float) -> tuple[Health, str]:
