@@ -188,7 +188,7 @@ class Controller:
             command = self._orders.due(self._lease.lease, self._heard, now)
             if command is not None:
                 messages.append(command)
-            if now >= self._next_beat:
+            if now >= self._next_beat and not self._orders.halting:  # a halt that is lost must end in silence
                 messages.append(self._beat(self._lease, now))
         return [encode(message) for message in messages]
 
@@ -207,6 +207,8 @@ class Controller:
         if self.about is None or self._lease is None:
             return self._next_ask
         order = self._orders.first
+        if order is not None and self._orders.halting:
+            return order.next_send
         return self._next_beat if order is None else min(self._next_beat, order.next_send)
 
     # --- frames in
