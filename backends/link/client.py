@@ -24,7 +24,7 @@ from backends.link.duty import stand_of
 from backends.link.keys import public_of, read_public, read_secret
 from backends.link.messages import Charge, Clear, EaseBack, Relocate, Replan, State
 from backends.link.quality import LineQuality
-from backends.link.sockets import Keys, check_line, controller_socket
+from backends.link.sockets import Keys, check_line, controller_socket, frame_waits
 from runner.site.values import Pose
 
 GREETING_S = 5.0
@@ -233,11 +233,9 @@ class LinkBackend:
 
     def _receive(self) -> None:
         for _ in range(FRAMES_A_TURN):
-            try:
-                frame = self._socket.recv(zmq.NOBLOCK)
-            except zmq.Again:
+            if not frame_waits(self._socket):
                 return
-            self.controller.receive(frame)
+            self.controller.receive(self._socket.recv(zmq.NOBLOCK))
 
     def _send(self) -> None:
         for frame in self.controller.due():

@@ -32,6 +32,8 @@ class Duty:
         self._adapter = adapter
         self._ids = 0
         self._drive: int | None = None
+        self._halting = False
+        """Whether the goal was halted, and the robot may not stand yet."""
         self._tasks: dict[int, int] = {}
         """Action ids of the session by the adapter's ids of the tasks under way."""
 
@@ -79,7 +81,7 @@ class Duty:
         session = self.ledger.current
         self._ids += 1
         self._drive = self._ids
-        self.suspended = False
+        self.suspended = self._halting = False
         self.changed = True
         self._adapter.drive(Drive(self._drive, Pose(*pose), session.speed, session.relative))
 
@@ -111,14 +113,17 @@ class Duty:
     def halt(self, now: float) -> None:
         """Stop. The goal ends when the adapter says that the robot stands; one that was suspended ends now."""
         self._adapter.stop()
+        self._halting = True
         if self._drive is None:
             self.ledger.goal_is("halted", "", now)
             self.suspended = False
         self.changed = True
 
-    def suspend(self) -> None:
-        """The controller is silent: stop, and keep the goal for when it is asked for again."""
+    def suspend(self, now: float) -> None:
+        """The controller is silent: stop, and keep the goal for when it is asked for again, unless it was halted."""
         self._stand()
+        if self._halting:
+            self.ledger.goal_is("halted", "", now)
         self.suspended = self.ledger.current.goal_open
         self.changed = True
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 import zmq
 import zmq.utils.z85
 
-from backends.link.sockets import ADMISSION
+from backends.link.sockets import ADMISSION, frame_waits
 
 ZAP_ADDRESS = "inproc://zeromq.zap.01"
 
@@ -25,9 +25,14 @@ class Gate:
         self.socket.setsockopt(zmq.LINGER, 0)
         self.socket.bind(ZAP_ADDRESS)
 
+    @property
+    def asked(self) -> bool:
+        """Whether a request waits."""
+        return frame_waits(self.socket)
+
     def turn(self) -> None:
         """Answer the requests that wait."""
-        while self.socket.poll(0):
+        while self.asked:
             self.socket.send_multipart(self._answer(self.socket.recv_multipart()))
 
     def _answer(self, request: list[bytes]) -> list[bytes]:

