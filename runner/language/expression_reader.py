@@ -82,7 +82,8 @@ def parse_condition(text: str) -> Parsed:
 def parse_until(text: str) -> Parsed:
     """The same, where a clock time alone means that the clock has reached it."""
     first = text.split(maxsplit=1)[0] if text.strip() else ""
-    if not _CLOCK.fullmatch(text) and (not first[:1].isdigit() or _CLOCK.fullmatch(first)):
+    means_clock = first[:1].isdigit() and not set(text) & set("<>=")
+    if not _CLOCK.fullmatch(text) and (not means_clock or _CLOCK.fullmatch(first)):
         return parse_condition(text)
     expression = Expression(Kind.COMPARE, quantity=Quantity.CLOCK, operator=Operator.AT_LEAST, value=parse_clock(text))
     return Parsed(Condition(expression, text=text), ())
@@ -137,10 +138,11 @@ class _Parser:
         if not self.words.take("last", "leg"):
             raise self.words.fault('"last" goes with "leg".', "Write for example last leg failed.")
         word = self.words.peek()
-        outcomes = ", ".join(OUTCOMES)
         if word is None or word.text not in OUTCOMES:
-            text = "nothing" if word is None else quoted(word.text)
-            raise self.words.fault(f"A leg ends {outcomes}, but here is {text}.", "Write for example last leg failed.")
+            help_text = f"Write {', '.join(f'last leg {one}' for one in OUTCOMES[:-1])} or last leg {OUTCOMES[-1]}."
+            if word is None:
+                raise self.words.unexpected(help_text)
+            raise self.words.fault(f"No leg ends as {quoted(word.text)}.", help_text)
         self.words.at += 1
         return Expression(Kind.LAST_LEG, word=word.text)
 
@@ -184,15 +186,16 @@ class _Parser:
             help_text = f"Write {_MISWRITTEN.get(word.text, '<, <=, >, >= or =')}."
             raise self.words.fault(f"There is no comparison {quoted(word.text)}.", help_text)
         if operator not in allowed:
-            written = " or ".join(f"{quantity.value} {one.value}" for one in allowed)
-            raise self.words.fault(_REFUSED[quantity], f"Write {written}.")
+            signs = [one.value for one in allowed]
+            help_text = f"Compare it with {', '.join(signs[:-1])} or {signs[-1]}."
+            raise self.words.fault(_REFUSED[quantity], help_text)
         self.words.at += 1
         return operator
 
     def _no_operator(self, name: str, quantity: Quantity, span: tuple[int, int]) -> PhraseError:
         if quantity is not Quantity.COUNT:
             example = _EXAMPLES[quantity]
-            return PhraseError(*span, f"{quoted(name)} is compared with something.", f"Write for example {example}.")
+            return PhraseError(*span, f"{quoted(name)} alone is not a condition.", f"Write for example {example}.")
         sentence = f"{quoted(name)} is not a condition."
         return PhraseError(*span, sentence, f"{nearest(name, _BEGINNINGS, 'word')} {_EXAMPLE}".strip())
 
@@ -274,7 +277,7 @@ _ALLOWED = {
     Quantity.ELAPSED: (Operator.BELOW, Operator.AT_MOST, Operator.ABOVE, Operator.AT_LEAST),
 }
 _REFUSED = {
-    Quantity.CLOCK: "The clock is before a time, or has reached it; nothing else is asked of it.",
+    Quantity.CLOCK: "The clock is before a time or has reached it; there is no other comparison.",
     Quantity.BATTERY: "A battery is hardly ever at exactly one charge.",
     Quantity.ELAPSED: "The time since the beginning is hardly ever exactly this.",
 }

@@ -74,5 +74,5 @@ def read_prove(fields: Fields) -> Prove | None:
     )
     if body is None:
         return None
-    inner = Fields(fields.page, body, "prove", PROVE_KEYS)
+    inner = Fields(fields.page, body, quoted("prove"), PROVE_KEYS)
     return Prove(inner.number("legs arrive", LEGS_ARRIVE), inner.number("confidence", CONFIDENCE))

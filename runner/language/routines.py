@@ -214,6 +214,6 @@ def _write_out(scope: Scope, node: Node, routine: Routine, arguments: tuple[str,
         library.written[key] = steps, ledger.steps - before
     if ledger.steps > STEPS_MOST and not library.is_full:
         library.is_full = True
-        sentence = f"With its routines written out, this mission has over {STEPS_MOST} steps."
+        sentence = f"With its routines written out, this mission has over {STEPS_MOST:,} steps."
         scope.page.report(node, sentence, "Use a repeat instead of routines that run routines.")
     return steps

@@ -102,13 +102,12 @@ def read_place(scope: Scope, node: Node) -> Place:
 
 def find_place(scope: Scope, text: str) -> Place | None:
     """The place of that name, or what stands for the parameter of that name; None if there is neither."""
-    call = scope.call
+    call, places = scope.call, scope.places or {}
     if call is not None and text in call.arguments:
         if call.draft:
             call.as_places.add(text)
-            return NOWHERE
-        text = call.arguments[text]
-    return NOWHERE if scope.places is None else scope.places.get(text)
+        return places.get(call.arguments[text], NOWHERE)  # an argument that is no place was reported where it is given
+    return NOWHERE if scope.places is None else places.get(text)
 
 
 def _no_place(scope: Scope, node: Node, text: str) -> Place:

@@ -9,11 +9,13 @@ import pytest
 from runner.language.diagnostics import LanguageError
 from tests.language import texts
 from tests.language.golden import Case
+from tests.language.golden_asked import IN_WHAT_IS_ASKED
+from tests.language.golden_constructs import IN_CONSTRUCTS
 from tests.language.golden_missions import IN_RULES_AND_LIMITS, IN_STEPS
 from tests.language.golden_sites import IN_CONDITIONS, IN_SITES
 from tests.language.golden_yaml import IN_YAML
 
-IN_MISSIONS = IN_STEPS + IN_RULES_AND_LIMITS + IN_YAML
+IN_MISSIONS = IN_STEPS + IN_RULES_AND_LIMITS + IN_YAML + IN_WHAT_IS_ASKED + IN_CONSTRUCTS
 
 
 def names(cases: tuple[Case, ...]) -> list[str]:
