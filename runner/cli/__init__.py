@@ -11,7 +11,7 @@ import sys
 from collections.abc import Mapping, Sequence
 from typing import Protocol
 
-from runner.cli import check, link, machine, pick_up, report, run, runs, verify, watch
+from runner.cli import check, link, machine, new, pick_up, report, run, runs, schema, verify, watch
 from runner.cli.deeds import DEEDS
 from runner.cli.exits import MEANINGS, Exit
 
@@ -36,6 +36,8 @@ COMMANDS: Mapping[str, Command] = {
     "report": report,
     "verify": verify,
     "link": link,
+    "new": new,
+    "schema": schema,
 }
 
 _DESCRIPTION = "Scripted rounds for one indoor mobile robot: run them, watch them, and argue from the record."
