@@ -11,7 +11,7 @@ import sys
 from collections.abc import Mapping, Sequence
 from typing import Protocol
 
-from runner.cli import check, link, machine, new, pick_up, report, run, runs, schema, verify, watch
+from runner.cli import check, floor, link, machine, new, pick_up, report, run, runs, schema, verify, watch
 from runner.cli.deeds import DEEDS
 from runner.cli.exits import MEANINGS, Exit
 
@@ -27,6 +27,7 @@ class Command(Protocol):
 
 COMMANDS: Mapping[str, Command] = {
     "check": check,
+    "floor": floor,
     "machine": machine,
     "run": run,
     "runs": runs,

@@ -18,7 +18,7 @@ Matrix = tuple[tuple[float, ...], ...]
 Lengths = Callable[[Mission, tuple[Place, ...]], Matrix]
 
 EXACT_MOST = 12
-"""Places ordered exactly, besides the one the path begins at: 12 x 12 x 4096 sums, a fraction of a second."""
+"""Places ordered exactly, besides the one the path begins at: 12 x 12 x 4096 sums, some milliseconds."""
 
 
 def floor_lengths(mission: Mission, places: tuple[Place, ...]) -> Matrix:
@@ -36,12 +36,15 @@ def floor_lengths(mission: Mission, places: tuple[Place, ...]) -> Matrix:
     return tuple(tuple(row) for row in rows)
 
 
-def shortest_order(lengths: Matrix) -> list[int]:
-    """The order of all places but the first, 0, such that the open path from 0 through them is short."""
+def shortest_order(lengths: Matrix, exact_most: int = EXACT_MOST) -> list[int]:
+    """The order of all places but the first, 0, such that the open path from 0 through them is short.
+
+    Up to `exact_most` places besides the first it is the shortest there is; memory doubles with each place.
+    """
     count = len(lengths) - 1
     if count <= 1:
         return list(range(1, count + 1))
-    return _held_karp(lengths) if count <= EXACT_MOST else _two_opt(lengths)
+    return _held_karp(lengths) if count <= exact_most else _two_opt(lengths)
 
 
 def path_length(lengths: Matrix, order: Sequence[int]) -> float:
@@ -50,31 +53,30 @@ def path_length(lengths: Matrix, order: Sequence[int]) -> float:
 
 
 def _held_karp(lengths: Matrix) -> list[int]:
-    """Best path over every set of places and every last one; ties go to the order listed."""
+    """Best path over every set of places and every last one, all sets of one size at a time; ties go to the order
+    listed. `best[visited, last]` is the shortest path from place 0 through a set of others, as bits, to the last."""
+    import numpy as np
+
+    table = np.array(lengths, dtype=np.float64)
     count = len(lengths) - 1
-    best: dict[tuple[int, int], tuple[float, int]] = {
-        (1 << last, last): (lengths[0][last + 1], -1) for last in range(count)
-    }
+    sets = np.arange(1 << count)
+    sizes = sum((sets >> member) & 1 for member in range(count))
+    best = np.full((1 << count, count), np.inf)
+    before = np.full((1 << count, count), -1, dtype=np.int8)
+    best[1 << np.arange(count), np.arange(count)] = table[0, 1:]
     for size in range(2, count + 1):
-        for members in combinations(range(count), size):
-            visited = sum(1 << member for member in members)
-            for last in members:
-                before = visited & ~(1 << last)
-                best[visited, last] = min(
-                    (best[before, previous][0] + lengths[previous + 1][last + 1], previous)
-                    for previous in members
-                    if previous != last
-                )
+        of_size = sets[sizes == size]
+        for last in range(count):
+            visited = of_size[(of_size >> last) & 1 == 1]
+            ways = best[visited ^ (1 << last)] + table[1:, last + 1]
+            before[visited, last] = ways.argmin(axis=1)
+            best[visited, last] = ways.min(axis=1)
     everything = (1 << count) - 1
-    last = min(range(count), key=lambda index: best[everything, index][0])
-    return _unwind(best, everything, last)
-
-
-def _unwind(best: dict[tuple[int, int], tuple[float, int]], visited: int, last: int) -> list[int]:
     order: list[int] = []
+    visited, last = everything, int(best[everything].argmin())
     while last >= 0:
         order.append(last + 1)
-        visited, last = visited & ~(1 << last), best[visited, last][1]
+        visited, last = visited & ~(1 << last), int(before[visited, last])
     return order[::-1]
 
 
