@@ -174,7 +174,8 @@ def _leg(sheet: _Sheet, step: Go | Visit | Charge, place: Place, note: int, dept
     """One leg, and what follows if it fails."""
     within = None if isinstance(step, Charge) else step.within
     relative = isinstance(step, Go) and step.relative
-    sheet.before = place
+    if not relative:
+        sheet.before = place
     block = sheet.place(sheet.leg(step.rule), note, place=sheet.target(place), relative=relative, seconds=within)
     open_exits = [(block, Exit.NEXT), (block, Exit.SKIPPED)]
     return (block, 0), open_exits + _otherwise(sheet, [(block, Exit.FAILED)], step.otherwise, DEFAULT_OTHERWISE, depth)
