@@ -105,8 +105,10 @@ class RobotSide:
     # --- frames
 
     def receive(self, peer: bytes, person: str, frame: bytes) -> Sent:
-        """Serve one frame from a peer that was admitted with that key (empty on a plain line). What it changes is told by
-        the `turn` after it, so that the answer is not kept waiting."""
+        """Serve one frame from a peer that was admitted with that key (empty on a plain line).
+
+        What it changes is told by the `turn` after it, so that the answer is not kept waiting.
+        """
         try:
             message = read_by_robot(frame)
         except MessageError as error:

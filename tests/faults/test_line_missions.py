@@ -1,0 +1,124 @@
+"""Example missions over the link to a robot in a process of its own: through cuts, and restarts of both sides."""
+
+from __future__ import annotations
+
+import os
+import re
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+from random import Random
+
+import pytest
+
+from runner.engine.values import Go, GoalNews
+from runner.journal.reader import open_record
+from tests.faults.line_proxy import Proxy, free_port
+
+TRUNDLE = [sys.executable, "-c", "from runner.cli import main; raise SystemExit(main())"]
+
+
+def environment(runs: Path) -> dict[str, str]:
+    return {**os.environ, "TRUNDLE_RUNS": str(runs)}
+
+
+@contextmanager
+def robot(mission: str, port: int, pace: float, keep: Path) -> Iterator[subprocess.Popen[str]]:
+    """The mission's robot, simulated and ready, in a process of its own."""
+    command = [*TRUNDLE, "link", "serve", mission, "--at", f"tcp://127.0.0.1:{port}", "--pace", f"{pace:g}"]
+    process = subprocess.Popen([*command, "--keep", str(keep)], stdout=subprocess.PIPE, text=True)
+    try:
+        assert process.stdout is not None
+        assert "is at tcp://" in process.stdout.readline()
+        yield process
+    finally:
+        process.kill()
+        process.wait()
+
+
+def run(mission: str, runs: Path, *options: str) -> subprocess.Popen[str]:
+    command = [*TRUNDLE, "run", mission, "--plain", *options]
+    return subprocess.Popen(command, stdout=subprocess.PIPE, stderr=subprocess.STDOUT, text=True, env=environment(runs))
+
+
+def finished(process: subprocess.Popen[str], seconds: float) -> tuple[int, list[str]]:
+    """The exit code and what became of each leg, by place, in order."""
+    output, _ = process.communicate(timeout=seconds)
+    return process.returncode, re.findall(r"(arrived at [\w ]+|leg to [\w ]+ \w+):", output)
+
+
+def account(folder: Path) -> tuple[list[int], list[int]]:
+    """Ids of the goals that were sent, and of those that ended, as the record has them."""
+    with open_record(folder) as record:
+        values = [entry.value for entry in record.entries()]
+    sent = [value.goal_id for value in values if isinstance(value, Go)]
+    ended = [value.goal_id for value in values if isinstance(value, GoalNews) and value.event is not None]
+    return sent, ended
+
+
+def run_folder(runs: Path) -> Path:
+    """The one run in there, once it is there."""
+    end = time.monotonic() + 60.0
+    while time.monotonic() < end:
+        if found := [path for path in runs.glob("*") if (path / "journal.sqlite").exists() or path.is_dir()]:
+            return found[0]
+        time.sleep(0.05)
+    raise AssertionError("no run began")
+
+
+def test_a_mission_comes_out_over_the_link_as_it_does_directly_through_cuts(tmp_path: Path) -> None:
+    pace = 10.0
+    direct = finished(run("short-errand", tmp_path / "direct", "--pace", "max"), 120.0)
+    port = free_port()
+    with robot("short-errand", port, pace, tmp_path / "keep"):
+        proxy = Proxy(port)
+        process = run("short-errand", tmp_path / "runs", "--robot", f"tcp://127.0.0.1:{proxy.port}")
+        for number in range(6):
+            time.sleep(1.2)
+            proxy.cut(5.0 / pace, breaks=number % 2 == 0)
+        linked = finished(process, 120.0)
+        proxy.close()
+    assert linked == direct
+    sent, ended = account(run_folder(tmp_path / "runs"))
+    assert sent == ended
+    assert len(set(sent)) == len(sent)
+
+
+@pytest.mark.soak
+@pytest.mark.parametrize("mission", ["short-errand", "evening-round"])
+def test_a_mission_survives_ten_cuts_of_five_seconds_and_a_restart_of_each_side(mission: str, tmp_path: Path) -> None:
+    chance = Random(mission)  # noqa: S311  a test's chance, not a secret
+    direct = finished(run(mission, tmp_path / "direct", "--pace", "max"), 300.0)
+    port, runs, keep = free_port(), tmp_path / "runs", tmp_path / "keep"
+    proxy = Proxy(port)
+    legs: list[str] = []
+    with robot(mission, port, 1.0, keep) as first:
+        process = run(mission, runs, "--robot", f"tcp://127.0.0.1:{proxy.port}")
+        for number in range(5):
+            time.sleep(chance.uniform(6.0, 9.0))
+            proxy.cut(5.0, breaks=number % 2 == 0)
+        time.sleep(8.0)
+        process.send_signal(signal.SIGKILL)
+        legs += finished(process, 60.0)[1]
+        time.sleep(1.0)
+        folder = run_folder(runs)
+        again = subprocess.Popen(
+            [*TRUNDLE, "pick-up", str(folder), "--plain"], stdout=subprocess.PIPE, text=True, env=environment(runs)
+        )
+        time.sleep(6.0)
+        first.kill()
+    with robot(mission, port, 1.0, keep):
+        for number in range(5):
+            time.sleep(chance.uniform(6.0, 9.0))
+            proxy.cut(5.0, breaks=number % 2 == 0)
+        code, later = finished(again, 1200.0)
+    proxy.close()
+    sent, ended = account(folder)
+    print(f"{mission}: exit {code}, goals {sent}, ended {ended}, legs {[*legs, *later]}")
+    assert (code, [*legs, *later]) == direct
+    assert sent == ended
+    assert len(set(sent)) == len(sent)
