@@ -15,6 +15,7 @@ from collections.abc import Callable, Sequence
 from datetime import datetime, timedelta
 from math import ceil
 from pathlib import Path
+from typing import NoReturn
 
 import zmq
 
@@ -119,15 +120,15 @@ class LinkBackend:
     def _greet(self) -> None:
         if self.controller.about is not None:
             return
-        if not self._pump(lambda: self.controller.about is not None, GREETING_S):
-            self._say_why_not()
+        self._pump(lambda: self.controller.about is not None or self._turned_away(), GREETING_S)
         about = self.controller.about
-        assert about is not None
+        if about is None:
+            self._say_why_not()
         if about.site and about.site != self._site:
             raise BackendError(f'The robot is on the site "{about.site}", the mission is for "{self._site}".')
 
-    def _say_why_not(self) -> None:
-        if self._monitor is not None and self._monitor.poll(0):
+    def _say_why_not(self) -> NoReturn:
+        if self._turned_away():
             raise BackendError(
                 f"The robot at {self._line.address} does not admit this key, or is not the one expected."
             )
@@ -135,6 +136,10 @@ class LinkBackend:
             f"No robot answers at {self._line.address} within {GREETING_S:.0f} s. "
             "Is it switched on, is the address right, and do both sides use keys or neither?"
         )
+
+    def _turned_away(self) -> bool:
+        """Whether the robot refused our key, or ours refused its."""
+        return self._monitor is not None and bool(self._monitor.poll(0))
 
     def _begin_clock(self) -> None:
         simulated = self.controller.about.simulated if self.controller.about else None
