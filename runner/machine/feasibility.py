@@ -45,11 +45,30 @@ def _pinches(survey: Survey) -> list[tuple[str, Finding]]:
     room = regions(survey.clearance > inscribed_radius(footprint))
     home = room[cell_of((start.x, start.y))]
     within = reach(survey.blocked, survey.clearance, footprint, start)
+    reached = {target for target in used if within.holds(target.pose)} | {survey.target(None)}
+    reached |= _swept_to(survey, reached)
     return [
         (target.name, _pinch(survey, within, target, mark))
         for target, mark in used.items()
-        if home and room[cell_of((target.pose.x, target.pose.y))] == home and not within.holds(target.pose)
+        if home and room[cell_of((target.pose.x, target.pose.y))] == home and target not in reached
     ]
+
+
+def _swept_to(survey: Survey, reached: set[Target]) -> set[Target]:
+    """Places that the lattice is too coarse for, but that the planned way from one that is reached simply leads to."""
+    found: set[Target] = set()
+    for route, _ in survey.routes():
+        come_from, target = survey.target(route[0]), survey.target(route[1])
+        if target in reached or come_from not in reached | found or not survey.ways[route].exists:
+            continue
+        poses = poses_along(survey.ways[route].points)
+        turns = ((come_from.pose, poses[0].heading), (target.pose, poses[-1].heading)) if poses else ()
+        footprint = survey.mission.robot.footprint
+        if sweep(survey.blocked, survey.clearance, footprint, poses) is None and not any(
+            _cannot_turn(survey, pose, heading) for pose, heading in turns
+        ):
+            found.add(target)
+    return found
 
 
 def all_roomy(survey: Survey, targets: list[Target]) -> bool:
@@ -69,7 +88,7 @@ def _free(survey: Survey, target: Target) -> bool:
 
 def _pinch(survey: Survey, within: Reach, target: Target, mark: Mark) -> Finding:
     way, name = _way_that_fails(survey, within, target)
-    at = next((point for point in _points(way) if not within.anywhere(cell_of(point))), None)
+    at = next((point for point in _points(way) if not within.near(point)), None)
     robot = survey.mission.robot.name
     if at is None:
         at = (target.pose.x, target.pose.y)

@@ -24,11 +24,16 @@ STEP = 2.0 * math.pi / HEADINGS
 DIRECTIONS = ((0, 1), (1, 1), (1, 0), (1, -1), (0, -1), (-1, -1), (-1, 0), (-1, 1))
 """The eight neighbors of a cell as row and column, counterclockwise from +x."""
 NO_DIRECTION = -1
+NEAR_CELLS = 2
+"""A robot on its way along a route counts as having come to a point of it this near by."""
 
 
 @dataclass(frozen=True, slots=True)
 class Reach:
-    """Bit h of `headings` at a cell says that the robot can come to stand there facing heading number h."""
+    """Everywhere a robot can get to.
+
+    Bit h of `headings` at a cell says that it can come to stand there facing heading number h.
+    """
 
     headings: NDArray[np.uint32]
 
@@ -37,10 +42,12 @@ class Reach:
         bits = _near_bits(pose.heading)
         return any(int(self.headings[cell]) & bits for cell in _near_cells(pose, self.headings.shape))
 
-    def anywhere(self, cell: Cell) -> bool:
-        """Whether the robot can stand in a cell, facing anywhere."""
-        rows, columns = self.headings.shape
-        return 0 <= cell[0] < rows and 0 <= cell[1] < columns and bool(self.headings[cell])
+    def near(self, point: Point) -> bool:
+        """Whether the robot can stand within NEAR_CELLS of a point, facing anywhere."""
+        row, column = cell_of(point)
+        rows = slice(max(row - NEAR_CELLS, 0), max(row + NEAR_CELLS + 1, 0))
+        columns = slice(max(column - NEAR_CELLS, 0), max(column + NEAR_CELLS + 1, 0))
+        return bool(self.headings[rows, columns].any())
 
 
 def roomy(clearance: NDArray[np.float32], footprint: Sequence[Point]) -> NDArray[np.bool_]:

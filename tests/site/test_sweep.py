@@ -65,8 +65,7 @@ def test_a_route_pinches_for_the_sweep_where_it_pinches_for_whole_polygons() -> 
 
 
 def test_the_lattice_gets_to_what_whole_polygons_get_to() -> None:
-    seen = [compare_reach(number) for number in (0, 5)]
-    assert seen
+    assert compare_reach(0) == "goal reached"
 
 
 @pytest.mark.soak
