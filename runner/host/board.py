@@ -19,7 +19,7 @@ from runner.machine.table import Event
 FEED_LINES_MOST = 5_000
 """Lines kept for screens that do not fetch them; older ones are in the journal all the same."""
 WISHES_MOST = 1_000
-"""Wishes that wait for the host. More than that is a flood; an abort is taken all the same."""
+"""Wishes that wait for the host, and aborts. More than that is a flood."""
 
 
 def _unheard(_accepted: bool, _sentence: str) -> None:
@@ -50,7 +50,8 @@ class Board:
         self._count = 0
         self._taken = 0
         self._lock = threading.Lock()
-        self._wishes: queue.SimpleQueue[Wish] = queue.SimpleQueue()
+        self._wishes: queue.SimpleQueue[Wish | None] = queue.SimpleQueue()
+        self._aborts: queue.SimpleQueue[Wish] = queue.SimpleQueue()
 
     # --- for those who watch
 
@@ -79,14 +80,21 @@ class Board:
 
     def wish(self, event: Event, who: str) -> None:
         """Pass on a wish of that person."""
-        self._wishes.put(Wish(event, who))
+        self._put(Wish(event, who))
 
     def post_wish(self, wish: Wish) -> bool:
         """Pass on a wish that wants an answer. False, and nothing happens, where too many are waiting already."""
-        if self._wishes.qsize() >= WISHES_MOST and wish.event is not Event.ABORT:
+        waiting = self._aborts if wish.event is Event.ABORT else self._wishes
+        if waiting.qsize() >= WISHES_MOST:
             return False
-        self._wishes.put(wish)
+        self._put(wish)
         return True
+
+    def _put(self, wish: Wish) -> None:
+        """An abort goes before all that waits; what is put in the queue for it only wakes the host."""
+        if wish.event is Event.ABORT:
+            self._aborts.put(wish)
+        self._wishes.put(None if wish.event is Event.ABORT else wish)
 
     # --- for the host
 
@@ -100,8 +108,13 @@ class Board:
             self._count += 1
 
     def next_wish(self, seconds: float) -> Wish | None:
-        """The next wish, waiting for one up to so many seconds of wall time."""
-        try:
-            return self._wishes.get(timeout=seconds) if seconds > 0.0 else self._wishes.get_nowait()
-        except queue.Empty:
-            return None
+        """The next wish, an abort before any other, waiting for one up to so many seconds of wall time."""
+        while True:
+            try:
+                if not self._aborts.empty():
+                    return self._aborts.get_nowait()
+                wish = self._wishes.get(timeout=seconds) if seconds > 0.0 else self._wishes.get_nowait()
+            except queue.Empty:
+                return None
+            if wish is not None:
+                return wish

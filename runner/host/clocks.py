@@ -31,7 +31,7 @@ class WallWatch:
     def moved(self) -> float:
         """By how many seconds the wall clock was set since the last time it was found to be; 0 for not at all."""
         now = self._clock.now()
-        if self._clock.virtual or now < self._next_look:
+        if now < self._next_look:
             return 0.0
         self._next_look = now + BETWEEN_LOOKS_S
         wall = self._clock.wall()

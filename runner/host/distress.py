@@ -18,6 +18,8 @@ from runner.host.hooks import Occasion, Teller
 from runner.host.plan import Care
 
 FILE = "trouble.txt"
+ABORTED = "aborted"
+"""An empty file of this name: a person aborted the run, and the record could not take it."""
 
 
 class RunError(Exception):
@@ -61,6 +63,12 @@ class Distress:
         hook = self.care.on_end if what == "end" else self.care.on_trouble
         now = datetime.now().astimezone()
         self.teller.tell(hook, Occasion(what, kind, text, self.folder.name, self.mission, stamp, now))
+
+    def mark_aborted(self, who: str) -> None:
+        """Note that a person aborted the run, for when the record cannot be told. An empty file takes no room."""
+        with contextlib.suppress(OSError):
+            (self.folder / ABORTED).touch()
+        self.write_down(f"aborted by {who}; this is not in the record")
 
     def write_down(self, line: str, error: BaseException | None = None) -> None:
         """Keep a note outside the journal, in the first place that takes it."""

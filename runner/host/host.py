@@ -21,41 +21,19 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from backends.contract import (
-    ActionReport,
-    Backend,
-    Goal,
-    GoalReport,
-    GoalStatus,
-    Report,
-    Telemetry,
-)
+from backends.contract import Backend
 from runner.engine.advance import advance
 from runner.engine.codec import state_to_bytes
 from runner.engine.state import EngineState
 from runner.engine.values import (
     ActionNews,
-    Answer,
-    Answered,
     Begin,
-    Clear,
     ClockMoved,
     Command,
-    EaseBack,
     Effect,
-    Go,
-    GoalNews,
-    Halt,
     Input,
-    Operator,
-    OperatorActed,
     PickedUp,
-    Relocate,
-    Remark,
-    Remarked,
-    Replan,
     Seen,
-    StartCharging,
     Tick,
     Trouble,
 )
@@ -64,11 +42,11 @@ from runner.host.board import Board, Wish
 from runner.host.clocks import WallWatch, seconds_of_day
 from runner.host.distress import Distress, RunError
 from runner.host.gate import Gate, RobotError
-from runner.host.pacing import Pacer
+from runner.host.pacing import HELD_PACE, Pacer
+from runner.host.translation import SENDERS, is_acceptance, to_input, wished
 from runner.host.view import Health
 from runner.host.viewing import clock_text, view_of
 from runner.host.wording import feed_line
-from runner.journal.codec import as_recorded
 from runner.journal.errors import JournalError
 from runner.journal.writer import JournalWriter
 from runner.machine.table import Ending, Event, Machine
@@ -91,14 +69,6 @@ SNAPSHOT_S = 600.0
 RECORD_AGAIN_S = 5.0
 """Between two attempts at a record that cannot be written, where no person asks for one."""
 
-GOAL_EVENTS: dict[GoalStatus, Event] = {
-    GoalStatus.ARRIVED: Event.ARRIVED,
-    GoalStatus.REFUSED: Event.REFUSED,
-    GoalStatus.NO_ROUTE: Event.NO_ROUTE,
-    GoalStatus.HALTED: Event.HALTED,
-    GoalStatus.FAILED: Event.FAILED,
-}
-
 
 @dataclass(frozen=True, slots=True)
 class _Made:
@@ -114,7 +84,8 @@ class Host:
     """One run, from begin to end. `pace` is virtual seconds per wall second, None for as fast as it goes.
 
     `after_turn` is called in the host's own thread after each turn. `alone` says for how many wall seconds nobody has
-    watched. `state` is the initial one, or the one in which a run is picked up.
+    watched. `state` is the initial one, or the one in which a run is picked up. `held_pace` is the pace while a person
+    holds the robot; `rest` is how many wall seconds a run in trouble waits between two looks.
     """
 
     machine: Machine
@@ -127,6 +98,8 @@ class Host:
     pace: float | None = None
     after_turn: Callable[[], None] = lambda: None
     alone: Callable[[], float] = lambda: 0.0
+    held_pace: float | None = HELD_PACE
+    rest: float = SLICE_S
     gate: Gate = field(init=False)
     _pacer: Pacer = field(init=False)
     _wall: WallWatch = field(init=False)
@@ -140,7 +113,7 @@ class Host:
     def __post_init__(self) -> None:
         clock = self.backend.clock
         self.gate = Gate(self.backend)
-        self._pacer = Pacer(self.pace if clock.virtual else None, clock.now())
+        self._pacer = Pacer(self.pace if clock.virtual else None, clock.now(), self.held_pace)
         self._wall = WallWatch(clock)
         self._snapshot_due = clock.now() + SNAPSHOT_S
         self._quiet_from = clock.now()
@@ -199,7 +172,7 @@ class Host:
         reports = self.gate.reports(until)
         for report in reports:
             self._wishes(waiting=False)
-            self._give(_input(report))
+            self._give(to_input(report))
         if deadline is not None and (clock.now() >= deadline or (not reports and until >= deadline)):
             self._give(Tick(max(deadline, clock.now())))
         self._look_around()
@@ -220,11 +193,11 @@ class Host:
         if wish.event is Event.ABORT:
             self._abort()
         try:
-            effects = self._give(_wished(wish, self.backend.clock.now()))
+            effects = self._give(wished(wish, self.backend.clock.now()))
         except (JournalError, RobotError) as error:
             wish.answered(False, str(error))
             raise
-        accepted = any(map(_is_acceptance, effects))
+        accepted = any(map(is_acceptance, effects))
         if accepted and wish.event is Event.RELEASE:
             self._released()
         wish.answered(accepted, "done" if accepted else "no effect now")
@@ -246,7 +219,7 @@ class Host:
         made = _Made(given, *advance(self.machine, self.state, given))
         self._unrecorded = made
         self._record(made)
-        self._send(effect for effect in made.effects if type(effect) in _COMMANDS)
+        self._send(effect for effect in made.effects if type(effect) in SENDERS)
         return made.effects
 
     def _record(self, made: _Made) -> None:
@@ -267,7 +240,7 @@ class Host:
 
     def _send(self, commands: Iterable[Any]) -> None:
         for command in commands:
-            self.gate.command(_COMMANDS[type(command)], command)
+            self.gate.command(SENDERS[type(command)], command)
 
     def _tell(self, stamp: float, effects: Sequence[Effect]) -> None:
         clock = clock_text(self.state.clock + stamp)
@@ -358,42 +331,42 @@ class Host:
 
     def _rest(self) -> None:
         """Nothing has changed: look again in a while."""
-        time.sleep(SLICE_S)
+        time.sleep(self.rest)
         self._post_view()
         self.after_turn()
 
     def _await_record(self) -> None:
         """Wait until what could not be recorded can be; then hold the mission. The robot stands meanwhile."""
         kind, detail = self.distress.kind, self.distress.detail
-        again_at, release = time.monotonic() + RECORD_AGAIN_S, None
+        again_at = time.monotonic() + RECORD_AGAIN_S
         while True:
             self._post_view()
             self.after_turn()
-            wish = self.board.next_wish(SLICE_S)
-            if wish is not None and wish.event is Event.ABORT:
-                self._abort()
-                self.distress.write_down(f"aborted by {wish.who}; this is not in the record")
-                wish.answered(True, "done, but it cannot be recorded")
-                raise RunError(f"{detail} Aborted by {wish.who}.")
-            if wish is not None and wish.event is Event.RELEASE:
-                release = wish
-            elif wish is not None:
-                wish.answered(False, detail)
+            wish = self.board.next_wish(self.rest)
+            event = wish.event if wish is not None else None
             if self.distress.impatient:
                 raise RunError(detail)
-            if release is None and time.monotonic() < again_at:
-                self._drain()
-                continue
-            again_at = time.monotonic() + RECORD_AGAIN_S
-            if self._recorded_now():
-                break
-            if release is not None:
-                release.answered(False, detail)
-                release = None
+            if event in (Event.RELEASE, Event.ABORT) or time.monotonic() >= again_at:
+                if event is Event.ABORT:
+                    self._abort()
+                again_at = time.monotonic() + RECORD_AGAIN_S
+                if self._recorded_now():
+                    break
+                if wish is not None and event is Event.ABORT:
+                    self._abort_unrecorded(wish)
+            if wish is not None:
+                wish.answered(False, detail)
+            self._drain()
         if self.state.ended is None:
             self._hold_for(kind, detail)
-        if release is not None:
-            self._carry_out(release)
+        if wish is not None:
+            self._safely(self._carry_out, wish)
+
+    def _abort_unrecorded(self, wish: Wish) -> None:
+        """End the run although the record cannot say so. A note beside it keeps it from being picked up."""
+        self.distress.mark_aborted(wish.who)
+        wish.answered(True, "done, but it cannot be recorded")
+        raise RunError(f"{self.distress.detail} Aborted by {wish.who}.")
 
     def _recorded_now(self) -> bool:
         """Try again to record what could not be. Its commands are not sent: the robot is halted, and held next."""
@@ -409,60 +382,3 @@ class Host:
         if not self.backend.clock.virtual:
             with contextlib.suppress(RobotError):
                 self.gate.reports(self.backend.clock.now() + SLICE_S)
-
-
-def _wished(wish: Wish, stamp: float) -> Input:
-    """What a person asks for, in the engine's words."""
-    if wish.event is None:
-        return Remark(stamp, wish.who, wish.text)
-    if wish.event is Event.ANSWERED:
-        return Answer(stamp, wish.text, wish.who)
-    return Operator(stamp, wish.event, wish.who)
-
-
-def _is_acceptance(effect: Effect) -> bool:
-    """Whether a wish was taken, as its effects tell."""
-    return isinstance(effect, Answered | Remarked) or (isinstance(effect, OperatorActed) and effect.accepted)
-
-
-def _input(report: Report) -> Input:
-    """What the robot says, in the engine's words."""
-    match report:
-        case Telemetry():
-            return _seen(report)
-        case GoalReport():
-            return GoalNews(report.stamp, report.goal_id, GOAL_EVENTS.get(report.status), report.reason)
-        case ActionReport():
-            return ActionNews(report.stamp, report.action_id, report.done, report.reason)
-
-
-def _seen(report: Telemetry) -> Seen:
-    """Telemetry as the record keeps it, so that the engine is told what a replay will tell it."""
-    seen = Seen(
-        stamp=report.stamp,
-        pose=report.pose,
-        spread=report.spread,
-        speed=report.speed,
-        battery=report.battery,
-        driven=report.driven,
-        remaining=report.remaining,
-        route_number=report.route_number,
-        route=report.route,
-        obstacles=report.obstacles,
-    )
-    return as_recorded(seen)
-
-
-def _go(backend: Backend, command: Go) -> None:
-    backend.go(Goal(command.goal_id, command.pose, command.speed, command.relative))
-
-
-_COMMANDS: dict[type[Any], Callable[[Backend, Any], None]] = {
-    Go: _go,
-    Halt: lambda backend, _: backend.halt(),
-    Clear: lambda backend, command: backend.clear(command.action_id, command.radius),
-    Replan: lambda backend, command: backend.replan(command.action_id),
-    EaseBack: lambda backend, command: backend.ease_back(command.action_id, command.distance),
-    Relocate: lambda backend, command: backend.relocate(command.action_id, None),
-    StartCharging: lambda backend, _: backend.charge(),
-}

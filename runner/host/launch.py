@@ -21,7 +21,7 @@ from runner.engine.values import Command, Go, Halt, StartCharging
 from runner.host.board import Board
 from runner.host.continued import continued
 from runner.host.control import ControlServer
-from runner.host.distress import Distress, RunError
+from runner.host.distress import ABORTED, Distress, RunError
 from runner.host.hooks import Teller
 from runner.host.host import Host
 from runner.host.plan import Care, Plan, later, plan_of, plan_to_json
@@ -156,6 +156,8 @@ def left(folder: Path) -> Left:
     with open_record(folder) as record:
         if record.status is Status.RUNNING:
             raise JournalError(f"The run {folder.name} goes on: its process lives.")
+        if (folder / ABORTED).exists():
+            raise JournalError(f"{folder.name} was aborted by a person while its record could not be written.")
         state = state_at_end(record)
         if record.status is Status.ENDED or state.ended is not None:
             raise JournalError(f"The mission of {folder.name} has ended. There is nothing to pick up.")

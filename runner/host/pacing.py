@@ -15,8 +15,9 @@ CATCH_UP_S = 1.0
 class Pacer:
     """Compares virtual time with wall time. `pace` is virtual seconds per wall second, None for no bound."""
 
-    def __init__(self, pace: float | None, now: float) -> None:
+    def __init__(self, pace: float | None, now: float, held_pace: float | None = HELD_PACE) -> None:
         self._asked = pace
+        self._held_pace = held_pace
         self._pace = pace
         self._wall = time.monotonic()
         self._virtual = now
@@ -28,7 +29,7 @@ class Pacer:
 
     def hold(self, held: bool, now: float) -> None:
         """Slow down while a person holds the robot, and go back to the pace asked for afterwards."""
-        pace = HELD_PACE if held else self._asked
+        pace = self._held_pace if held else self._asked
         if pace != self._pace:
             self._pace, self._wall, self._virtual = pace, time.monotonic(), now
 

@@ -1,0 +1,103 @@
+"""Nights of random faults in virtual time; and planted bugs, to see that such a night would find them."""
+
+from __future__ import annotations
+
+import os
+from collections.abc import Iterator
+from pathlib import Path
+
+import pytest
+
+from backends.contract import Goal
+from runner.engine.values import Remark
+from runner.host import host, translation
+from runner.host.gate import Gate
+from runner.journal.writer import JournalWriter
+from tests.faults.nights import MEMORY, main, night
+
+FIRST = int(os.environ.get("TRUNDLE_FAULTS_SEED", "1"))
+
+
+@pytest.fixture
+def folder(tmp_path: Path) -> Iterator[Path]:
+    """A folder in memory, where there is one: a night commits thousands of times."""
+    import tempfile
+
+    with tempfile.TemporaryDirectory(dir=MEMORY or tmp_path) as name:
+        yield Path(name)
+
+
+def test_fifty_nights() -> None:
+    main(FIRST, 50)
+
+
+@pytest.mark.soak
+def test_two_thousand_nights() -> None:
+    main(FIRST, 2000)
+
+
+def caught(folder: Path) -> str:
+    """What some night says about the program as it is now."""
+    for seed in range(FIRST, FIRST + 15):
+        try:
+            night(seed, folder / str(seed))
+        except AssertionError as error:
+            return str(error)
+    return ""
+
+
+def test_a_host_that_records_an_abort_before_it_halts_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(Gate, "abort", lambda *_: None)
+    monkeypatch.setattr(Gate, "_halt_once", lambda *_: None)
+    monkeypatch.setattr(Gate, "halt", lambda *_: None)
+    monkeypatch.setitem(translation.SENDERS, translation.Halt, lambda *_: None)
+    assert "abort was not followed" in caught(folder) or "abort was followed by" in caught(folder)
+
+
+def test_an_entry_that_is_acknowledged_and_lost_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    write = JournalWriter.write
+
+    def losing(self: JournalWriter, stamp: float, values: object) -> None:
+        kept = [value for value in values if not isinstance(value, Remark)]  # type: ignore[attr-defined]
+        write(self, stamp, kept if len(kept) == len(values) else [])  # type: ignore[arg-type]
+
+    monkeypatch.setattr(JournalWriter, "write", losing)
+    assert "acknowledged and lost" in caught(folder)
+
+
+def test_a_goal_that_is_driven_twice_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    def twice(backend: object, command: object) -> None:
+        for _ in range(2):
+            backend.go(Goal(command.goal_id, command.pose, command.speed))  # type: ignore[attr-defined]
+
+    monkeypatch.setitem(translation.SENDERS, translation.Go, twice)
+    assert "was sent after" in caught(folder)
+
+
+def test_a_command_that_is_sent_before_it_is_recorded_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    record = host.Host._record
+
+    def hasty(self: host.Host, made: host._Made) -> None:
+        self._send(effect for effect in made.effects if isinstance(effect, translation.Go))
+        record(self, made)
+
+    monkeypatch.setattr(host.Host, "_record", hasty)
+    assert "before it was recorded" in caught(folder)
+
+
+def test_a_run_that_stands_still_without_being_held_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.setattr(host.Host, "_slice", lambda *_: 0.0)
+    assert "time stands still" in caught(folder)
+
+
+def test_a_trouble_that_does_not_hold_the_mission_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    released = host.Host._hold_for
+
+    def careless(self: host.Host, kind: str, detail: str) -> None:
+        if kind != "record":
+            released(self, kind, detail)
+        else:
+            self.journal._seq += 1  # and it takes no care of the numbers either
+
+    monkeypatch.setattr(host.Host, "_hold_for", careless)
+    assert caught(folder)
