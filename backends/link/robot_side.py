@@ -45,6 +45,8 @@ from backends.link.messages import (
 FAULTS_A_SECOND = 50.0
 """Faults answered in a second, at most: junk must not turn the robot into a source of junk. Others are only counted."""
 ROUTE_POINTS, OBSTACLE_POINTS = 256, 1000
+_NEVER_LATE = (Halt, Leave)
+"""Commands that only ever stop the robot: they are served however long they were under way."""
 
 Sent = list[tuple[bytes, bytes]]
 """Frames to send, each with the peer it goes to."""
@@ -151,7 +153,7 @@ class RobotSide:
         """Each number once: what comes again is answered again, what was overtaken is never served."""
         if (kept := lease.answer(message.number)) is not None:
             return [kept]
-        if not isinstance(message, Halt | Leave) and not self._desk.alive(lease, message.heard, now):
+        if not isinstance(message, _NEVER_LATE) and not self._desk.alive(lease, message.heard, now):
             self.counts.late += 1
             return self._faulty("too old", "It was under way for longer than the agreed silence.", message.number)
         answer = self._perform(message, now)

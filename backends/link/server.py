@@ -92,16 +92,23 @@ class RobotServer:
         for _ in range(FRAMES_A_TURN):
             if not frame_waits(self._socket):
                 break
-            self._serve(self._socket.recv_multipart(copy=False))
+            self._take_frame()
         self._send(self.side.turn())
         self._keep_what_changed()
 
-    def _serve(self, parts: list[zmq.Frame]) -> None:
+    def _take_frame(self) -> None:
+        """Serve one message. Whose key it came under is known only to the library's own frames."""
+        if self.gate is None:
+            self._serve(self._socket.recv_multipart(), "")
+            return
+        frames = self._socket.recv_multipart(copy=False)
+        self._serve([frame.bytes for frame in frames], str(frames[-1].get("User-Id")))
+
+    def _serve(self, parts: list[bytes], person: str) -> None:
         if len(parts) != 2:
             self.side.counts.malformed += 1
             return
-        person = str(parts[1].get("User-Id")) if self.gate is not None else ""
-        answers = self.side.receive(parts[0].bytes, person, parts[1].bytes)
+        answers = self.side.receive(parts[0], person, parts[1])
         self._keep_what_changed()
         self._send(answers)
 

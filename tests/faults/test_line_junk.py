@@ -31,7 +31,7 @@ def messages(lease: str) -> list[bytes]:
     """Sound frames to be spoiled, with the token in force, so that only what is wrong with them keeps them out."""
     return [
         encode(Hello([1])),
-        encode(Take(1, "session-one", TOKEN, "junk", 0.1, 5)),
+        encode(Take(1, "junk-session", TOKEN, "junk", 0.1, 5)),
         encode(Beat(lease, 1.0, 1.0, 1)),
         encode(Go(lease, 1_000_000, 1.0, 1_000_000, (1.0, 2.0, 0.5), 0.5)),
         encode(Halt(lease, 1_000_000)),
