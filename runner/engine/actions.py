@@ -275,7 +275,9 @@ def _end_leg(draft: Draft, action: Action) -> None:
 
 
 def _skip_leg(draft: Draft, _: Action) -> None:
+    """What was skipped leaves no timer behind, be it a leg or a wait."""
     finish_leg(draft, Outcome.SKIPPED, "skipped by a person")
+    draft.state.timers = {}
 
 
 def finish_leg(draft: Draft, outcome: Outcome, reason: str) -> None:

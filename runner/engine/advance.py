@@ -227,6 +227,8 @@ def _enter(draft: Draft, address: Address, *, resumed: bool = False) -> None:
 def _arrive(draft: Draft, address: Address, *, noted: bool) -> None:
     draft.state.address = address
     draft.state.entered = draft.stamp
+    if not noted:
+        draft.state.since = draft.clock()
     draft.state.progress = None
     draft.state.met = None
     step = draft.block().step
@@ -315,7 +317,7 @@ def _interrupt(draft: Draft, number: int) -> None:
     state.orders = {**state.orders, number: replace(state.orders[number], acted=True)}
     draft.effects.append(OrderBegan(order.name, state.step))
     act(draft, Action(Verb.HALT), Event.AT_ONCE, "")
-    frame = Frame(state.address, _time_left(draft))
+    frame = Frame(state.address, _time_left(draft), state.since)
     state.interrupted = Interrupted(number, frame, state.step, state.registers, state.leg, state.incident)
     state.timers, state.registers, state.leg, state.incident = {}, {}, None, None
     _enter(draft, order.entry)
@@ -326,7 +328,7 @@ def _interrupt(draft: Draft, number: int) -> None:
 
 def _keep_place(draft: Draft) -> None:
     """Fill the return register of a hold; the timers of what was left stand still meanwhile."""
-    draft.state.held = Frame(draft.state.address, _time_left(draft))
+    draft.state.held = Frame(draft.state.address, _time_left(draft), draft.state.since)
     draft.state.timers = {}
 
 
@@ -336,7 +338,7 @@ def _time_left(draft: Draft) -> dict[Timer, float]:
 
 def _resumed(draft: Draft, frame: Frame) -> Address:
     """Where a place that was left goes on. Only the leg's own timers outlive a state that is not resumed itself."""
-    draft.state.address = frame.address
+    draft.state.address, draft.state.since = frame.address, frame.since
     resume = draft.local().resume
     same = resume == frame.address[1]
     kept = (timer for timer in frame.timers if same or timer in (Timer.LEG, Timer.GIVE_UP))

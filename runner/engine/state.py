@@ -63,10 +63,12 @@ class Visiting:
 
 @dataclass(frozen=True, slots=True)
 class Frame:
-    """The return register of a hold: the place that was left, and the seconds its timers still had to run."""
+    """The return register of a hold: the place that was left, the seconds its timers still had to run, and since when
+    its condition was watched."""
 
     address: Address
     timers: Mapping[Timer, float]
+    since: float = 0.0
 
 
 @dataclass(frozen=True, slots=True)
@@ -96,8 +98,8 @@ class EngineState:
     `now` is the stamp of the last input. `clock` is the time of day at stamp 0, seconds since midnight; `began_clock`,
     `end_by` and the ends of loops are seconds since that same midnight. `goal` and `action` are ids under way at the
     robot, None if none is. `timers` hold stamps. `here` is the place last arrived at. `entered` is the stamp at which
-    the present state was entered; `met` is the register of the condition watched in it, `orders` those of the standing
-    orders, by their number.
+    the present state was entered, `since` the clock when its step came there first, before any interruption; `met` is
+    the register of the condition watched in it, `orders` those of the standing orders, by their number.
     """
 
     address: Address
@@ -109,6 +111,7 @@ class EngineState:
     end_by: float | None = None
     step: int | None = None
     entered: float = 0.0
+    since: float = 0.0
     timers: Mapping[Timer, float] = field(default_factory=dict)
     registers: Mapping[Register, int] = field(default_factory=dict)
     loops: Mapping[int, Loop] = field(default_factory=dict)

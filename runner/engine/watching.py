@@ -49,8 +49,7 @@ def look_at_own(draft: Draft) -> Lasting | None:
     state = draft.state
     if not draft.local().watches or draft.stamp < state.entered + WATCH_AFTER_S:
         return None
-    since = state.entered + state.clock
-    if not holds(draft, own_condition(draft).expression, since):
+    if not holds(draft, own_condition(draft).expression, state.since):
         return None
     return state.met or Lasting(draft.stamp)
 
@@ -79,7 +78,7 @@ def _own_deadlines(machine: Machine, state: EngineState) -> Iterator[float]:
         yield looked_from
     elif state.met is not None:
         yield state.met.since + block.condition.lasting
-    turns = turning_stamps(state, block.condition.expression, state.entered + state.clock)
+    turns = turning_stamps(state, block.condition.expression, state.since)
     yield from (stamp for stamp in turns if stamp > max(state.now, looked_from))
 
 

@@ -157,13 +157,14 @@ def loop_fragment(bound: str, paced: bool) -> Fragment:
     first: int | Exit = Exit.BODY
     if stops:
         first = LOOP_DUE if paced else LOOP_HEAD
-    after_pause = (LOOP_DUE, ()) if looks_again else (Exit.BODY, _LAP)
+    target, lap = (LOOP_DUE, ()) if looks_again else (Exit.BODY, _LAP)
     states = [
         State("enter", (Row(Event.AT_ONCE, first, _LAP if first is Exit.BODY else ()),), (Action(Verb.ENTER_LOOP),)),
         State("next lap", _bounded(guard, stops, Row(Event.AT_ONCE, LOOP_PAUSE) if paced else into_lap)),
     ]
     if paced:
-        rows = tuple(Row(event, *after_pause) for event in (Event.LAP_DUE, Event.SKIP))
+        stop = Action(Verb.STOP, timer=Timer.LAP)
+        rows = (Row(Event.LAP_DUE, target, lap), Row(Event.SKIP, target, (stop, *lap)))
         start = Action(Verb.START_LAP, timer=Timer.LAP)
         states.append(State("until the next lap", rows, (start,), resume=LOOP_PAUSE, restart=LOOP_PAUSE))
     if looks_again:
