@@ -289,3 +289,5 @@ class Mission:
     orders: tuple[StandingOrder, ...] = ()
     silenced: tuple[str, ...] = ()
     """Names of findings the author has judged and does not want to see."""
+    routines_unused: tuple[tuple[str, Mark], ...] = ()
+    """Routines that no step runs, with the place of their names."""

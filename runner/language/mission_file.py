@@ -9,7 +9,7 @@ from pathlib import Path
 from runner.language.diagnostics import quoted
 from runner.language.fields import Fields, Keys, mapping
 from runner.language.includes import Shelf, collect
-from runner.language.mission import Limits, Mission, Step
+from runner.language.mission import Limits, Mark, Mission, Step
 from runner.language.nodes import Node
 from runner.language.orders import read_orders, read_prove
 from runner.language.pages import Page, Reading
@@ -89,6 +89,16 @@ def read_mission_page(page: Page, ground: Ground | None = None) -> Mission | Non
         prove=prove,
         orders=orders,
         silenced=silenced,
+        routines_unused=_routines_unused(scope.library),
+    )
+
+
+def _routines_unused(library: Library) -> tuple[tuple[str, Mark], ...]:
+    used = {name for name, *_ in library.written}
+    return tuple(
+        (routine.name, routine.page.mark(routine.key))
+        for routine in library.routines.values()
+        if routine.name not in used
     )
 
 

@@ -28,10 +28,11 @@ from runner.machine.ordering import EXACT_MOST
 
 
 def check_usage(mission: Mission) -> list[Finding]:
-    """Findings `unused-rule`, `place-never-visited`, `default-otherwise` and `order-not-exact`."""
+    """Findings `unused-rule`, `unused-routine`, `place-never-visited`, `default-otherwise` and `order-not-exact`."""
     steps = list(every_step(mission))
     return [
         *_unused_rules(mission, steps),
+        *_unused_routines(mission),
         *_default_otherwise(steps),
         *_not_exact(steps),
         *_places_not_visited(mission, steps),
@@ -68,12 +69,21 @@ def _listed(otherwise: object) -> list[Step]:
 
 def _unused_rules(mission: Mission, steps: list[Step]) -> Iterator[Finding]:
     used: set[RetryRule] = {step.rule for step in steps if isinstance(step, Go | Visit | Charge)}
-    written = {source.path for source in mission.sources}
     for rule in mission.rules:
-        if rule not in used and rule.mark.file in written:
+        if rule not in used and rule.mark.file == mission.start_mark.file:
             sentence = f'No step uses the retry rule "{rule.name}".'
             advice = "Name it in a step, as `rule: ...`, or take it out."
             yield Finding("unused-rule", Diagnostic(rule.mark, sentence, advice, Severity.WARNING))
+
+
+def _unused_routines(mission: Mission) -> Iterator[Finding]:
+    """Those of the mission's own file; a shared file may well hold more than one mission needs."""
+    for name, mark in mission.routines_unused:
+        if mark.file == mission.start_mark.file:
+            advice = "Run it in a step, as `run: ...`, or take it out."
+            yield Finding(
+                "unused-routine", Diagnostic(mark, f'No step runs the routine "{name}".', advice, Severity.WARNING)
+            )
 
 
 def _default_otherwise(steps: list[Step]) -> Iterator[Finding]:

@@ -71,3 +71,10 @@ def test_a_note_is_silenced_in_the_file_by_its_name(round_of: Path) -> None:
     quiet = check(round_of)
     assert "[place-never-visited]" not in quiet.stdout
     assert "1 silenced." in quiet.stdout
+
+
+def test_a_routine_that_no_step_runs_is_a_warning_at_its_name(round_of: Path) -> None:
+    round_of.write_text(round_of.read_text() + "\nroutines:\n  hand over:\n    steps:\n      - wait: 5 s\n")
+    shown = check(round_of)
+    assert shown.returncode == 0
+    assert re.search(r'round\.yaml:\d+:3: warning: No step runs the routine "hand over"\.', shown.stderr)
