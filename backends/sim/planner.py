@@ -27,6 +27,8 @@ SMOOTH_POINTS = 3
 """A route is smoothed over so many of its points, 0.1 m apart, to each side."""
 START_REACH_CELLS = 10
 """How far off its own cell (of 10 cm) a route may begin where that is too tight."""
+STRAIGHT_STEP_M = 0.1
+"""Between the points of a straight route."""
 SLACK_M = 0.01
 """A route counts as obstructed where its clearance fell by more than this below what it needs."""
 
@@ -87,7 +89,15 @@ class Planner:
         if inner is None:
             return None
         raw = np.vstack([(start.x, start.y), inner[1:-1], (goal.x, goal.y)])
-        points = smoothed(raw, field, self.clearance_needed, SMOOTH_POINTS)
+        return self._route(smoothed(raw, field, self.clearance_needed, SMOOTH_POINTS), field)
+
+    def straight(self, field: NDArray[np.float32], start: Pose, goal: Pose) -> Route:
+        """The straight line to the goal, whatever stands there: a move seen from the robot asks for no planning."""
+        ends = np.array([(start.x, start.y), (goal.x, goal.y)])
+        count = 2 + int(np.hypot(*(ends[1] - ends[0])) / STRAIGHT_STEP_M)
+        return self._route(np.linspace(ends[0], ends[1], count), field)
+
+    def _route(self, points: NDArray[np.float64], field: NDArray[np.float32]) -> Route:
         needs = clearances(points, field, self.clearance_needed) - SLACK_M
         return Route(points, lengths(points), needs)
 

@@ -6,7 +6,8 @@ once a tick, says what speeds it wants. News for whoever commands it collects in
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
+from math import cos, sin
 
 from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report
 from backends.sim.body import Body
@@ -74,6 +75,8 @@ class Robot:
         self._last_goal_id = goal.id
         self._drop_goal()
         self._body.charge.charging = False
+        if goal.relative:
+            goal = replace(goal, pose=seen_from(self.pose, goal.pose))
         if reason := self._refusal(goal.pose):
             self.news.append(GoalReport(now, goal.id, GoalStatus.REFUSED, reason))
             return
@@ -175,7 +178,8 @@ class Robot:
 
     def _attempt(self, goal: Goal, now: float, anew: bool) -> bool:
         """Plan once. Where that fails the old route is kept and followed as far as it goes, unless `anew`."""
-        route = self._planner.plan(self.memory.field, self.pose, goal.pose)
+        plan = self._planner.straight if goal.relative else self._planner.plan
+        route = plan(self.memory.field, self.pose, goal.pose)
         self._next_attempt = now + BETWEEN_ATTEMPTS_S
         if route is None:
             self._attempts += 1
@@ -225,3 +229,13 @@ class Robot:
         if not self._planner.fits(self.memory.field, goal.pose):
             return "Something that the map does not know stands at the goal."
         return "Something that the map does not know stands in every way to the goal."
+
+
+def seen_from(here: Pose, there: Pose) -> Pose:
+    """The pose on the floor of what is seen from `here` at `there` (x ahead, y to the left)."""
+    ahead, left = cos(here.heading), sin(here.heading)
+    return Pose(
+        here.x + ahead * there.x - left * there.y,
+        here.y + left * there.x + ahead * there.y,
+        here.heading + there.heading,
+    )

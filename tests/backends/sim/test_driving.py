@@ -8,7 +8,7 @@ from itertools import pairwise
 
 import pytest
 
-from backends.contract import ActionReport, GoalReport, GoalStatus, Telemetry
+from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Telemetry
 from runner.site.values import Battery, Pose
 from tests.backends.sim.support import CART, HALL, TWO_ROOMS, distance, go, start
 
@@ -228,3 +228,21 @@ def test_a_new_route_asked_for_before_a_goal_that_is_refused_is_still_answered()
     go(drive, 2, Pose(-5.0, 4.0, 0.0))
     answer = drive.until_answer(1, 1.0)
     assert answer is not None
+
+
+def test_a_relative_goal_is_seen_from_where_the_robot_stands_and_driven_straight() -> None:
+    drive = start(HALL, Pose(5.0, 2.0, math.pi / 2.0))
+    drive.simulator.go(Goal(1, Pose(2.0, 0.5, math.pi / 2.0), 0.5, relative=True))
+    end = drive.until_end(60.0)
+    assert end is not None
+    assert end.status is GoalStatus.ARRIVED
+    goal = Pose(4.5, 4.0, math.pi)
+    assert distance(drive.simulator.body.pose, goal) < ARRIVED_M
+    assert heading_off(drive.simulator.body.pose.heading, goal.heading) < ARRIVED_HEADING
+
+
+def test_a_relative_goal_asks_for_no_way_round_what_stands_in_the_line() -> None:
+    drive = start(TWO_ROOMS, Pose(4.5, 4.5, 0.0))
+    drive.simulator.go(Goal(1, Pose(7.5, 0.0, 0.0), 0.5, relative=True))
+    assert drive.until_end(40.0) is None
+    assert drive.simulator.body.drive.still
