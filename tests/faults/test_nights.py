@@ -36,14 +36,15 @@ def test_two_thousand_nights() -> None:
     main(FIRST, 2000)
 
 
-def caught(folder: Path) -> str:
-    """What some night says about the program as it is now."""
-    for seed in range(FIRST, FIRST + 15):
+def caught(folder: Path, wanted: str = "") -> bool:
+    """Whether some night says so about the program as it is now."""
+    for seed in range(FIRST, FIRST + 20):
         try:
             night(seed, folder / str(seed))
         except AssertionError as error:
-            return str(error)
-    return ""
+            if wanted in str(error):
+                return True
+    return False
 
 
 def test_a_host_that_records_an_abort_before_it_halts_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -51,7 +52,7 @@ def test_a_host_that_records_an_abort_before_it_halts_is_caught(folder: Path, mo
     monkeypatch.setattr(Gate, "_halt_once", lambda *_: None)
     monkeypatch.setattr(Gate, "halt", lambda *_: None)
     monkeypatch.setitem(translation.SENDERS, translation.Halt, lambda *_: None)
-    assert "abort was not followed" in caught(folder) or "abort was followed by" in caught(folder)
+    assert caught(folder, "an abort was")
 
 
 def test_an_entry_that_is_acknowledged_and_lost_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -62,7 +63,7 @@ def test_an_entry_that_is_acknowledged_and_lost_is_caught(folder: Path, monkeypa
         write(self, stamp, kept if len(kept) == len(values) else [])  # type: ignore[arg-type]
 
     monkeypatch.setattr(JournalWriter, "write", losing)
-    assert "acknowledged and lost" in caught(folder)
+    assert caught(folder, "acknowledged and lost")
 
 
 def test_a_goal_that_is_driven_twice_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -71,7 +72,7 @@ def test_a_goal_that_is_driven_twice_is_caught(folder: Path, monkeypatch: pytest
             backend.go(Goal(command.goal_id, command.pose, command.speed))  # type: ignore[attr-defined]
 
     monkeypatch.setitem(translation.SENDERS, translation.Go, twice)
-    assert "was sent after" in caught(folder)
+    assert caught(folder, "was sent after")
 
 
 def test_a_command_that_is_sent_before_it_is_recorded_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
@@ -82,12 +83,12 @@ def test_a_command_that_is_sent_before_it_is_recorded_is_caught(folder: Path, mo
         record(self, made)
 
     monkeypatch.setattr(host.Host, "_record", hasty)
-    assert "before it was recorded" in caught(folder)
+    assert caught(folder, "before it was recorded")
 
 
 def test_a_run_that_stands_still_without_being_held_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
     monkeypatch.setattr(host.Host, "_slice", lambda *_: 0.0)
-    assert "time stands still" in caught(folder)
+    assert caught(folder, "time stands still")
 
 
 def test_a_trouble_that_does_not_hold_the_mission_is_caught(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:

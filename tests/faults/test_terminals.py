@@ -1,0 +1,102 @@
+"""A run outlives the terminal it was started from, on real pseudo-terminals."""
+
+from __future__ import annotations
+
+import os
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+from runner.host.messages import Deed
+from runner.host.remote import UnreachableError, do, look
+from runner.host.view import Health
+from runner.journal.outcome import RunOutcome, outcome_of
+from runner.journal.reader import open_record
+from runner.journal.runs import find_run
+from tests.screen.test_real_terminal import Terminal
+
+TRUNDLE = Path(sys.executable).parent / "trundle"
+
+
+@contextmanager
+def command(runs: Path, *words: str) -> Iterator[tuple[Terminal, subprocess.Popen[bytes]]]:
+    """The command on a terminal of its own, in a session of its own, as a login would have it."""
+    terminal = Terminal(80, 24)
+    process = subprocess.Popen(
+        [str(TRUNDLE), *words],
+        stdin=terminal.there,
+        stdout=terminal.there,
+        stderr=terminal.there,
+        start_new_session=True,
+        env={**os.environ, "TRUNDLE_RUNS": str(runs), "TERM": "xterm-256color"},
+    )
+    os.close(terminal.there)
+    try:
+        yield terminal, process
+    finally:
+        process.kill()
+        process.wait()
+        os.close(terminal.here)
+
+
+def test_a_run_outlives_its_terminal_and_is_held_released_and_aborted_from_another(tmp_path: Path) -> None:
+    with command(tmp_path, "run", "evening-round", "--pace", "2") as (terminal, process):
+        terminal.read_until("abort", 60.0)
+        os.killpg(process.pid, signal.SIGKILL)
+    folder = find_run(tmp_path)
+    try:
+        before = look(folder, 5.0).view
+        time.sleep(1.0)
+        after = look(folder, 5.0).view
+        assert before is not None
+        assert after is not None
+        assert after.stamp > before.stamp
+        watch_hold_release_and_abort(tmp_path, folder)
+    finally:
+        stop(folder)
+
+
+def watch_hold_release_and_abort(runs: Path, folder: Path) -> None:
+    with command(runs, "watch") as (terminal, process):
+        terminal.read_until("abort", 60.0)
+        terminal.type(b"h")
+        until(terminal, folder, held=True)
+        terminal.type(b"r")
+        until(terminal, folder, held=False)
+        terminal.type(b"a")
+        terminal.read(0.5)
+        terminal.type(b"y")
+        end = time.monotonic() + 20.0
+        while outcome(folder) is not RunOutcome.ABORTED:
+            assert time.monotonic() < end
+            terminal.read(0.1)
+        terminal.read_until("aborted")
+        terminal.type(b"q")
+        assert process.wait(20.0) == 5
+    with open_record(folder) as record:
+        acted = [(entry.value.action, entry.value.accepted) for entry in record.entries(names=("operator acted",))]  # type: ignore[union-attr]
+        assert acted == [("hold", True), ("release", True), ("abort", True)]
+        assert all("pts/" in entry.body for entry in record.entries(names=("operator acted",)))
+
+
+def until(terminal: Terminal, folder: Path, held: bool) -> None:
+    end = time.monotonic() + 20.0
+    while (look(folder, 5.0).view.health is Health.HELD) is not held:  # type: ignore[union-attr]
+        assert time.monotonic() < end
+        terminal.read(0.1)
+
+
+def outcome(folder: Path) -> RunOutcome:
+    with open_record(folder) as record:
+        return outcome_of(record)
+
+
+def stop(folder: Path) -> None:
+    try:
+        do(folder, Deed.ABORT)
+    except UnreachableError:
+        return
