@@ -14,11 +14,13 @@ from dataclasses import dataclass, field, replace
 
 from runner.language.mission import Mission
 from runner.machine.approaches import Approach, approaches
+from runner.machine.assumptions import assumptions
+from runner.machine.block_times import charge_level, watched
 from runner.machine.condition_times import Moment, until_true
 from runner.machine.leg_costs import Lengths, drive_span, leg_cost
 from runner.machine.loop_costs import TICK_S, loop_cost
 from runner.machine.spans import FREE, INFINITE, NOTHING, UNKNOWN, Cost, Span, one_of, product
-from runner.machine.table import WATCH_AFTER_S, Block, Exit, Machine, Verb
+from runner.machine.table import Block, Exit, Machine, Verb
 from runner.site.values import DAY_S
 from runner.site.ways import Way
 
@@ -152,25 +154,6 @@ def estimate(machine: Machine, mission: Mission, ways: Mapping[Route, Way], cloc
         tuple(work.drains.values()),
         assumptions(machine),
     )
-
-
-def assumptions(machine: Machine) -> tuple[str, ...]:
-    """What the numbers take for granted, in sentences."""
-    said = [
-        "Least: every leg arrives by the shortest way, straight on at full speed.",
-        "Likely: every leg arrives by the planned way, with doors open.",
-        "Most: every leg creeps, then uses all its tries and recoveries up to its time limits; ways planned around "
-        "obstacles are at most twice the longest planned one.",
-        "Nobody holds, skips or aborts; the battery is full at the start.",
-    ]
-    if any(block.answers for block in machine.blocks):
-        said.append("Likely: a question is answered after half of its time.")
-    if any(block.condition is not None and block.fragment == "when" for block in machine.blocks):
-        said.append('Likely: each side of a "when" is taken half of the time.')
-    if machine.orders:
-        names = ", ".join(f'"{order.name}"' for order in machine.orders)
-        said.append(f"Standing orders are not counted: {names}. What one takes each time is shown with its steps.")
-    return tuple(said)
 
 
 def _order(work: _Estimator, entry: int) -> None:
@@ -335,15 +318,7 @@ def _waiting(work: _Estimator, block: Block, flow: _Flow) -> Span:
     if block.condition is None or block.fragment == "when":
         time = block.seconds or 0.0
         return Span(time, time, time + TICK_S if time else 0.0)
-    return _watched(block, until_true(block.condition, _moment(work, flow)))
-
-
-def _watched(block: Block, until: Span) -> Span:
-    """A condition is looked at from WATCH_AFTER_S on, and for `seconds` at most."""
-    begun = until.each(lambda time: max(time, WATCH_AFTER_S)).plus(Span(0.0, 0.0, 2.0 * TICK_S))
-    bound = INFINITE if block.seconds is None else block.seconds
-    likely = begun.likely if math.isfinite(begun.likely) or block.seconds is None else 0.5 * bound
-    return Span(min(begun.least, bound), min(likely, bound), min(begun.most, bound + TICK_S))
+    return watched(block, until_true(block.condition, _moment(work, flow)))
 
 
 def _moment(work: _Estimator, flow: _Flow) -> Moment:
@@ -354,11 +329,11 @@ def _moment(work: _Estimator, flow: _Flow) -> Moment:
 
 def _charging(work: _Estimator, block: Block, flow: _Flow) -> Span:
     battery = work.mission.robot.battery
-    level = _level(block)
+    level = charge_level(block)
     if level is None:
         condition = block.condition
         assert condition is not None, "the compiler gives every charge its condition"
-        return _watched(block, until_true(condition, _moment(work, flow)))
+        return watched(block, until_true(condition, _moment(work, flow)))
     missing = Span(
         battery.capacity * level - battery.capacity + flow.used.since.least,
         battery.capacity * level - battery.capacity + flow.used.since.likely,
@@ -366,24 +341,14 @@ def _charging(work: _Estimator, block: Block, flow: _Flow) -> Span:
     )
     if not work.recording:
         missing = replace(missing, least=0.0)
-    return _watched(block, missing.each(lambda energy: max(0.0, energy) * 3600.0 / battery.charging))
-
-
-def _level(block: Block) -> float | None:
-    """The share of the battery that a charge waits for, where that is all it waits for."""
-    from runner.language.expressions import Kind, Operator, Quantity
-
-    expression = block.condition.expression if block.condition else None
-    if expression is None or expression.kind is not Kind.COMPARE or expression.quantity is not Quantity.BATTERY:
-        return None
-    return expression.value if expression.operator in (Operator.AT_LEAST, Operator.ABOVE) else None
+    return watched(block, missing.each(lambda energy: max(0.0, energy) * 3600.0 / battery.charging))
 
 
 def _used_after(work: _Estimator, block: Block, used: Used) -> Used:
     """What was drawn since the battery was full, after a block; a charge gives back."""
     if not any(action.verb is Verb.CHARGE for action in work.machine.fragments[block.fragment].states[0].on_entry):
         return used
-    level = _level(block)
+    level = charge_level(block)
     missing = 0.0 if level is None else (1.0 - level) * work.mission.robot.battery.capacity
     return Used(used.since.each(lambda drawn: min(drawn, missing)), used.first, True)
 

@@ -6,7 +6,7 @@ from dataclasses import replace
 from math import inf
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from runner.language.expressions import Expression as Is
@@ -53,6 +53,7 @@ def test_a_leg_without_time_limits_is_bounded_by_its_tries_recoveries_and_rests(
 
 
 @given(st.integers(1, 50), st.integers(1, 300))
+@settings(max_examples=20, deadline=None)
 def test_laps_at_an_interval_begin_that_far_apart(times: int, length: int) -> None:
     span = seconds(repeat(wait(float(length)), times=times, every=60.0))
     assert span.least == (times - 1) * max(60.0, length) + length
