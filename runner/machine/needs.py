@@ -1,10 +1,10 @@
-"""What a machine relies on without its author having said so: abilities of the robot, and safe defaults."""
+"""What a machine relies on without its author having said so: abilities of the robot."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator
 
-from runner.machine.table import Action, Ending, Exit, Machine, StepNote, Verb
+from runner.machine.table import Action, Machine, Verb
 
 _ABILITIES = (Verb.CLEAR, Verb.REPLAN, Verb.EASE_BACK, Verb.RELOCATE, Verb.CHARGE)
 """Verbs that not every robot can follow; their words are also those of the backend's capabilities."""
@@ -25,14 +25,3 @@ def _actions(machine: Machine) -> Iterator[Action]:
             yield from state.on_entry
             for row in state.rows:
                 yield from row.actions
-
-
-def legs_that_end_the_mission(machine: Machine) -> list[StepNote]:
-    """The steps whose failure ends the mission: because the author wrote so, or as the safe default."""
-    fragment = f"end, {Ending.LEG_FAILED.value}"
-    return [
-        machine.steps[block.step]
-        for block in machine.blocks
-        if block.step is not None
-        and any(exit_ is Exit.FAILED and machine.blocks[to[0]].fragment == fragment for exit_, to in block.exits)
-    ]
