@@ -5,8 +5,13 @@ from __future__ import annotations
 import argparse
 import sys
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from runner.cli.exits import Exit
+
+if TYPE_CHECKING:
+    from runner.journal.reader import Record
+    from runner.site.values import Point
 
 
 def add_parser(subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
@@ -17,6 +22,7 @@ def add_parser(subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) 
     )
     add_run_argument(parser)
     parser.add_argument("--plain", action="store_true", help="plain lines instead of a screen; Ctrl-C only leaves")
+    parser.add_argument("--read-only", action="store_true", help="only look: no key of this screen acts on the run")
 
 
 def add_run_argument(parser: argparse.ArgumentParser) -> None:
@@ -35,13 +41,13 @@ def run(arguments: argparse.Namespace) -> int:
     from runner.journal.runs import find_run, runs_folder
 
     try:
-        return attach(find_run(runs_folder(), arguments.run), arguments.plain)
+        return attach(find_run(runs_folder(), arguments.run), arguments.plain, arguments.read_only)
     except JournalError as error:
         print(error, file=sys.stderr)
         return Exit.MISTAKE
 
 
-def attach(folder: Path, plain: bool = False) -> int:
+def attach(folder: Path, plain: bool = False, read_only: bool = False) -> int:
     """Watch a run until it has ended or the person leaves; the exit code says how it stands. JournalError where there
     is no such run."""
     from runner.host.plan import plan_of
@@ -56,19 +62,27 @@ def attach(folder: Path, plain: bool = False) -> int:
             from runner.cli.owning import say_outcome
 
             return say_outcome(folder)
-        plan, machine = plan_of(record), machine_of(record)
-    setup = plan.setup
-    hint = f"trundle report {folder.name}"
-    showing = Showing(plan.mission, folder.name, setup.site, setup.robot, machine.steps, hint)
+        plan, machine, troubles = plan_of(record), machine_of(record), _troubles(record)
+    setup, name = plan.setup, folder.name
+    hints = f"trundle report {name}", f"trundle pick-up {name}"
+    showing = Showing(plan.mission, name, setup.site, setup.robot, machine.steps, *hints, troubles)
     with RemoteSource(folder) as source:
         if plain or not suitable(sys.stdout, sys.stderr, sys.stdin):
             _in_plain_lines(source)
         else:
             from runner.screen.watch import watch
 
-            if not watch(showing, source, outlives=True):
+            if not watch(showing, source, read_only):
                 _in_plain_lines(source)
     return _left(folder)
+
+
+def _troubles(record: Record) -> tuple[Point, ...]:
+    """Where the incidents so far began."""
+    from runner.engine.values import IncidentBegan
+
+    notes = (entry.value for entry in record.entries(names=("incident began",)))
+    return tuple((note.pose.x, note.pose.y) for note in notes if isinstance(note, IncidentBegan) and note.pose)
 
 
 def _left(folder: Path) -> int:
@@ -95,7 +109,7 @@ def _in_plain_lines(source: object) -> None:
     try:
         while not printer.gone:
             view = source.view()
-            printer.show(source.feed(), view)
+            printer.show(source.feed(), view, source.age())
             if view is not None and view.outcome is not None:
                 return
             time.sleep(0.25)

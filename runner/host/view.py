@@ -51,8 +51,9 @@ class View:
     `clock` is the time of day as HH:MM:SS. `reason` says in words why the health is what it is. `step` indexes the
     machine's steps, None before the first and after the last. `laps` are those of the loops around the step,
     outermost first, and `laps_at_most` their bounds, None where time or a condition bounds them. `to_visit` are the
-    places that a visit under way has still to come to, in the order it will take them if that is known. `place` is where the leg under way leads, `leg_limit` its time limit if it has one. `tries` and
-    `recoveries` are those of the leg under way, with their bounds.
+    places that a visit under way has still to come to, in the order it will take them if that is known. `place` is
+    where the leg under way leads, `leg_limit` its time limit if it has one. `tries` and `recoveries` are those of the
+    leg under way, with their bounds.
     """
 
     stamp: float

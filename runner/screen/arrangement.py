@@ -25,6 +25,11 @@ class Arrangement:
     steps_rows: int
     feed_rows: int
 
+    @property
+    def body_rows(self) -> int:
+        """Rows between the header and the rule."""
+        return self.steps_rows + (self.floor_rows if self.stacked else 0)
+
 
 def arrange(columns: int, rows: int, aspect: float) -> Arrangement:
     """Share out a terminal. `aspect` is the floor's width over its height; a cell is about twice as tall as wide."""

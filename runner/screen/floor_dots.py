@@ -113,22 +113,38 @@ def furniture_dots(still: Standing, scale: Scale) -> NDArray[np.bool_]:
 
 
 def _covered(solid: NDArray[np.bool_], scale: Scale) -> NDArray[np.float64]:
-    """The share of each dot that is solid, from every raster cell, or parts of cells where dots are smaller."""
+    """The share of each dot that is solid, from every raster cell in sight, in parts where dots are smaller."""
     parts = max(1, math.ceil(scale.dots_per_meter * CELL_M))
-    samples = solid.repeat(parts, axis=0).repeat(parts, axis=1) if parts > 1 else solid
-    rows, columns = samples.shape
-    ys, xs = ((np.arange(count) + 0.5) * (CELL_M / parts) for count in (rows, columns))
+    shape = (scale.rows * 4, scale.columns * 2)
+    (low, high), (first, end) = _in_sight(scale, solid.shape)
+    samples = solid[low:high, first:end].repeat(parts, axis=0).repeat(parts, axis=1)
+    ys = low * CELL_M + (np.arange(samples.shape[0]) + 0.5) * (CELL_M / parts)
+    xs = first * CELL_M + (np.arange(samples.shape[1]) + 0.5) * (CELL_M / parts)
     down = np.floor(scale.top + (scale.height - ys) * scale.dots_per_meter).astype(np.intp)
     across = np.floor(scale.left + xs * scale.dots_per_meter).astype(np.intp)
-    shape = (scale.rows * 4, scale.columns * 2)
-    found_rows, found_columns = np.nonzero(samples)
     counts = np.zeros(shape)
     inside = (down >= 0) & (down < shape[0])
     within = (across >= 0) & (across < shape[1])
-    kept = inside[found_rows] & within[found_columns]
-    np.add.at(counts, (down[found_rows[kept]], across[found_columns[kept]]), 1.0)
+    found_rows, found_columns = np.nonzero(samples & inside[:, None] & within[None, :])
+    np.add.at(counts, (down[found_rows], across[found_columns]), 1.0)
     most = np.outer(np.bincount(down[inside], minlength=shape[0]), np.bincount(across[within], minlength=shape[1]))
     return np.asarray(counts / np.maximum(most, 1), dtype=np.float64)
+
+
+def _in_sight(scale: Scale, shape: tuple[int, ...]) -> tuple[tuple[int, int], tuple[int, int]]:
+    """The ranges of raster rows and columns that fall into the picture."""
+    dots = max(scale.dots_per_meter, math.ulp(1.0))
+    top = scale.height + scale.top / dots
+    bottom = top - scale.rows * 4 / dots
+    left = -scale.left / dots
+    right = left + scale.columns * 2 / dots
+    return _cells(bottom, top, shape[0]), _cells(left, right, shape[1])
+
+
+def _cells(low: float, high: float, count: int) -> tuple[int, int]:
+    """The cells of a raster of so many between two lengths, one to spare at each end."""
+    first = min(max(math.floor(max(low, 0.0) / CELL_M) - 1, 0), count)
+    return first, min(max(math.ceil(min(high / CELL_M, count)) + 1, first), count)
 
 
 def _solid_near(floor: Floor, point: Point) -> bool:

@@ -18,7 +18,9 @@ from runner.host.view import View
 from runner.screen.floor_dots import Scale, fit, furniture_dots, standing, stroke, wall_dots
 from runner.screen.ink import Glyphs, Ink
 from runner.screen.labels import place_labels
-from runner.site.floor import footprint_at
+from runner.screen.recollection import Recollection
+from runner.screen.sight import Sight, scale_of
+from runner.site.floor import doors_shut_at, footprint_at
 from runner.site.values import Point, Pose, RobotDescription, Site
 
 Spot = tuple[int, int]
@@ -32,6 +34,14 @@ _DOT_BITS = np.array([[0x01, 0x08], [0x02, 0x10], [0x04, 0x20], [0x40, 0x80]], d
 
 _FOOTPRINT_FROM = 5.0
 """Dots a footprint must be long before its outline is drawn; smaller ones hide behind the arrow."""
+
+_SPREADS = 2.0
+"""Standard deviations at which the ring around the robot is drawn: about seven times in eight it is inside."""
+_RING_FROM = 6.0
+"""Dots a ring's radius must have; smaller ones hide behind the robot."""
+
+_NAMED = (Ink.PLACE, Ink.GOAL)
+_NOTHING = Recollection()
 
 
 class FloorDrawing:
@@ -47,10 +57,16 @@ class FloorDrawing:
         self._walls = np.zeros((0, 0), dtype=np.uint8)
         self._bare: list[list[Drawn]] = []
         self._goal: str | None = None
+        self._shut: tuple[str, ...] = ()
 
-    def resize(self, columns: int, rows: int) -> None:
+    @property
+    def scale(self) -> Scale:
+        """Where points fall now."""
+        return self._scale
+
+    def resize(self, columns: int, rows: int, sight: Sight = Sight()) -> None:  # noqa: B008 - a frozen value
         """Draw what stands still anew, for a panel of that many cells."""
-        self._scale = fit(self._site, columns, rows)
+        self._scale = scale_of(sight, self._site, columns, rows)
         walls = wall_dots(self._standing, self._scale)
         only_walls = _pack(walls)
         self._walls = _pack(walls | furniture_dots(self._standing, self._scale))
@@ -67,17 +83,44 @@ class FloorDrawing:
             self._goal = goal
             self._draw_places()
 
-    def moving(self, view: View | None) -> dict[Spot, Drawn]:
-        """The cells that differ from the still layer, for a view: route, sensed points, robot, in this order."""
+    @property
+    def shut(self) -> tuple[str, ...]:
+        """The doors that are drawn shut."""
+        return self._shut
+
+    def tell_time(self, clock: float) -> None:
+        """Draw the doors as their known hours have them at this time of day, in seconds. Nobody tells us of the doors
+        themselves."""
+        shut = doors_shut_at(self._site, clock)
+        if shut != self._shut:
+            self._shut = shut
+            self._draw_doors()
+            self._draw_places()
+
+    def moving(self, view: View | None, kept: Recollection = _NOTHING, old: bool = False) -> dict[Spot, Drawn]:
+        """The cells that differ from the still layer, for a view; what matters most is drawn last.
+
+        `old` news are drawn faint, and a robot of which there is no news as a question mark.
+        """
         if view is None or not self.still:
             return {}
         cells: dict[Spot, Drawn] = {}
-        self._dots(cells, _dashes(view.route, self._scale), Ink.ROUTE)
-        for spot in filter(None, map(self._scale.spot, view.obstacles)):
-            cells[spot] = (self._glyphs.sensed, Ink.SENSED)
+        self._dots(cells, map(self._scale.dot, kept.trail), Ink.TRAIL, self._glyphs.trail)
+        self._mark(cells, kept.before(), self._glyphs.before, Ink.BEFORE)
+        if view.pose is not None and view.spread is not None:
+            self._draw_spread(cells, view.pose, view.spread * _SPREADS)
+        self._dots(cells, _dashes(view.route, self._scale), Ink.ROUTE, self._glyphs.route)
+        self._mark(cells, view.obstacles, self._glyphs.sensed, Ink.SENSED)
+        self._mark(cells, kept.troubles, self._glyphs.stuck, Ink.STUCK)
         if view.pose is not None:
-            self._draw_robot(cells, view.pose)
-        return cells
+            self._draw_robot(cells, view.pose, old)
+        return {spot: (char, Ink.OLD) for spot, (char, _) in cells.items()} if old else cells
+
+    def _mark(self, cells: dict[Spot, Drawn], points: Iterable[Point], mark: str, ink: Ink) -> None:
+        """One mark a point; only where it was stuck is worth a letter of a place's name."""
+        for spot in filter(None, map(self._scale.spot, points)):
+            if ink is Ink.STUCK or self.still[spot[0]][spot[1]][1] not in _NAMED:
+                cells[spot] = (mark, ink)
 
     def _at_rest(self, wall: int, both: int) -> Drawn:
         if wall:
@@ -89,7 +132,7 @@ class FloorDrawing:
     def _pattern(self, bits: int) -> str:
         return chr(0x2800 + bits) if self._glyphs.dots else _ASCII_PATTERNS[bits]
 
-    def _dots(self, cells: dict[Spot, Drawn], dots: Iterable[tuple[int, int]], ink: Ink) -> None:
+    def _dots(self, cells: dict[Spot, Drawn], dots: Iterable[tuple[int, int]], ink: Ink, plain: str) -> None:
         """Add dots to the cells, over what walls they have."""
         added: dict[Spot, int] = {}
         for row, column in dots:
@@ -97,20 +140,26 @@ class FloorDrawing:
             if 0 <= spot[0] < self._scale.rows and 0 <= spot[1] < self._scale.columns:
                 added[spot] = added.get(spot, 0) | int(_DOT_BITS[row % 4, column % 2])
         for spot, bits in added.items():
-            if self.still[spot[0]][spot[1]][1] not in (Ink.PLACE, Ink.GOAL):
-                over_walls = self._pattern(bits | int(self._walls[spot]))
-                cells[spot] = (over_walls if self._glyphs.dots else self._glyphs.route, ink)
+            if self.still[spot[0]][spot[1]][1] not in _NAMED:
+                cells[spot] = (self._pattern(bits | int(self._walls[spot])) if self._glyphs.dots else plain, ink)
 
     def _draw_doors(self) -> None:
         """One mark a cell along each door's leaf."""
         for door in self._site.doors:
             (x1, y1), (x2, y2) = door.start, door.end
             across = abs(x2 - x1) >= abs(y2 - y1)
-            mark = self._glyphs.door_across if across else self._glyphs.door_upright
+            shut = door.name in self._shut
+            mark = self._door_mark(across, shut)
             for row, column in stroke((door.start, door.end), self._scale, inset=0.2):
                 spot = (row // 4, column // 2)
                 if 0 <= spot[0] < self._scale.rows and 0 <= spot[1] < self._scale.columns:
-                    self._bare[spot[0]][spot[1]] = (mark, Ink.DOOR)
+                    self._bare[spot[0]][spot[1]] = (mark, Ink.SHUT if shut else Ink.DOOR)
+
+    def _door_mark(self, across: bool, shut: bool) -> str:
+        glyphs = self._glyphs
+        if shut:
+            return glyphs.shut_across if across else glyphs.shut_upright
+        return glyphs.door_across if across else glyphs.door_upright
 
     def _draw_places(self) -> None:
         """Names and marks of the places over walls and doors, those of the goal first."""
@@ -128,16 +177,24 @@ class FloorDrawing:
                 cells = [(char, ink) for char in label.text]
                 self.still[label.row][label.column : label.column + len(cells)] = cells
 
-    def _draw_robot(self, cells: dict[Spot, Drawn], pose: Pose) -> None:
+    def _draw_spread(self, cells: dict[Spot, Drawn], pose: Pose, radius: float) -> None:
+        """A ring in which the robot takes itself to be, once it is wide enough to be told from the robot."""
+        if radius * self._scale.dots_per_meter >= _RING_FROM:
+            count = max(12, int(radius * self._scale.dots_per_meter * 2))
+            turns = (math.tau * number / count for number in range(count))
+            ring = ((pose.x + radius * math.cos(turn), pose.y + radius * math.sin(turn)) for turn in turns)
+            self._dots(cells, map(self._scale.dot, ring), Ink.SPREAD, self._glyphs.trail)
+
+    def _draw_robot(self, cells: dict[Spot, Drawn], pose: Pose, old: bool) -> None:
         corners = footprint_at(self._robot.footprint, pose)
         length = max(math.dist(a, b) for a in corners for b in corners) * self._scale.dots_per_meter
         if length >= _FOOTPRINT_FROM:
-            self._dots(cells, stroke((*corners, corners[0]), self._scale), Ink.ROBOT)
+            self._dots(cells, stroke((*corners, corners[0]), self._scale), Ink.ROBOT, self._glyphs.outline)
         spot = self._scale.spot((pose.x, pose.y))
         if spot is not None:
             sectors = self._glyphs.heading
             turn = round(pose.heading / math.tau * len(sectors)) % len(sectors)
-            cells[spot] = (sectors[turn], Ink.ROBOT)
+            cells[spot] = (self._glyphs.old_robot if old else sectors[turn], Ink.ROBOT)
 
 
 def _dashes(route: Sequence[Point], scale: Scale) -> Iterable[tuple[int, int]]:

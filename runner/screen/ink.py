@@ -6,6 +6,7 @@ so that a screen without color says the same.
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from dataclasses import dataclass
 from enum import Enum
 
@@ -34,11 +35,19 @@ class Ink(Enum):
     ROUTE = "route"
     SENSED = "sensed"
     ROBOT = "robot"
+    TRAIL = "trail"
+    BEFORE = "told of before"
+    SPREAD = "spread"
+    STUCK = "stuck here"
+    SHUT = "shut by its hours"
+    OLD = "old"
+    LOST = "no news"
     STARTING = "starting"
     MOVING = "moving"
     WAITING = "waiting"
     RECOVERING = "recovering"
     HELD = "held"
+    NEEDS_YOU = "needs you"
     ENDED = "ended"
 
 
@@ -60,6 +69,13 @@ class Glyphs:
     furniture: str
     door_across: str
     door_upright: str
+    shut_across: str
+    shut_upright: str
+    trail: str
+    before: str
+    stuck: str
+    outline: str
+    old_robot: str
     route: str
     current: str
     more: str
@@ -84,6 +100,13 @@ DOTTED = Glyphs(
     furniture="⢕",
     door_across="╌",
     door_upright="┆",
+    shut_across="▬",
+    shut_upright="▮",
+    trail="⠂",
+    before="∘",
+    stuck="!",
+    outline="⣿",
+    old_robot="?",
     route="⠒",
     current="▶",
     more="…",
@@ -103,6 +126,13 @@ ASCII = Glyphs(
     furniture="%",
     door_across="~",
     door_upright=":",
+    shut_across="=",
+    shut_upright="H",
+    trail=",",
+    before="c",
+    stuck="!",
+    outline="*",
+    old_robot="?",
     route=".",
     current=">",
     more="~",
@@ -149,6 +179,21 @@ def both_ends(left: Row, right: Row, width: int, ink: Ink, more: str) -> Row:
     room = width - row_width(right) - (1 if right else 0)
     kept = crop(left, room, more)
     return (*kept, (" " * (width - row_width(kept) - row_width(right)), ink), *right)
+
+
+def flow(items: Iterable[Row], width: int, height: int) -> list[Row]:
+    """Rows side by side, as many on a line as fit, on at most that many lines."""
+    lines: list[Row] = [()]
+    for item in items:
+        if lines[-1] and row_width(lines[-1]) + row_width(item) > width:
+            lines.append(())
+        lines[-1] = (*lines[-1], *item)
+    return lines[:height]
+
+
+def faded(row: Row) -> Row:
+    """The same text, as old news."""
+    return tuple((text, Ink.OLD) for text, _ in row)
 
 
 def crop(row: Row, width: int, more: str) -> Row:

@@ -7,7 +7,7 @@ from collections.abc import Sequence
 from runner.host.view import View
 from runner.machine.table import StepNote
 from runner.screen.ink import Glyphs, Ink, Row, cut, wrap
-from runner.screen.words import spell_seconds
+from runner.screen.words import laps, spell_seconds
 
 _MARK = 2
 """Cells in front of a step, for the mark of the current one."""
@@ -57,15 +57,14 @@ def _current_block(note: StepNote, view: View, width: int, glyphs: Glyphs) -> li
         for number, line in enumerate(lines)
     ]
     margin = " " * (_MARK + min(indent, 2))
-    details = [((cut(margin + line, width, glyphs.more), Ink.STRONG),) for line in _details(view, width - len(margin))]
-    return [*steps, *details, *_time_bar(view, margin, width, glyphs)]
+    told = (glyphs.say(line) for line in _details(view, width - len(margin)))
+    details = [((cut(margin + line, width, glyphs.more), Ink.STRONG),) for line in told]
+    return [*steps, *details, *_time_bar(view, margin, width, glyphs), *_to_come(view, margin, width, glyphs)]
 
 
 def _details(view: View, width: int) -> list[str]:
     """Laps, tries and recoveries, as far as there is anything to say, on as few lines as they fit."""
-    counts = []
-    if view.laps:
-        counts.append(f"lap {', '.join(str(lap) for lap in view.laps)}")
+    counts = [laps(view)] if view.laps else []
     if view.tries_at_most:
         counts.append(f"try {view.tries} of {view.tries_at_most}")
     joined = ", ".join(counts)
@@ -73,7 +72,17 @@ def _details(view: View, width: int) -> list[str]:
     if view.recoveries:
         most = f" of {view.recoveries_at_most}" if view.recoveries_at_most else ""
         lines.append(f"recovery {view.recoveries}{most}")
+    if view.order is not None:
+        lines.append(f"standing order: {view.order}")
     return lines
+
+
+def _to_come(view: View, margin: str, width: int, glyphs: Glyphs) -> list[Row]:
+    """Where a visit goes after this, which the order of the steps need not show."""
+    if not view.to_visit:
+        return []
+    text = glyphs.say(f"then {', '.join(view.to_visit)}")
+    return [((margin + line, Ink.TEXT),) for line in wrap(text, width - len(margin), 2, glyphs.more)]
 
 
 def _time_bar(view: View, margin: str, width: int, glyphs: Glyphs) -> list[Row]:

@@ -13,7 +13,7 @@ from typing import TextIO
 
 from runner.host.view import FeedLine, Health, View
 from runner.screen.terminal import clean, to_ascii
-from runner.screen.words import amount, legs_so_far, spell_seconds
+from runner.screen.words import advice_for, amount, ends_about, is_lost, laps, legs_so_far, spell_seconds
 
 
 class PlainPrinter:
@@ -25,20 +25,47 @@ class PlainPrinter:
         self._every = every
         self._last = 0.0
         self._gone = False
+        self._lost = False
+        self._needed = ""
 
     @property
     def gone(self) -> bool:
         """Whether the reader went away."""
         return self._gone
 
-    def show(self, lines: Iterable[FeedLine], view: View | None) -> None:
-        """Print what is new. To be called whenever there may be news; it never raises for a closed stream."""
+    def show(self, lines: Iterable[FeedLine], view: View | None, age: float = 0.0) -> None:
+        """Print what is new. To be called whenever there may be news; it never raises for a closed stream.
+
+        `age` is for how many seconds nothing has been heard from the run.
+        """
         for line in lines:
             self._print(line.clock, line.text)
             self._last = max(self._last, line.stamp)
+        if view is not None:
+            self._say_if_lost(view, age)
+            self._say_if_needed(view)
+        if self._lost:
+            return
         if view is not None and view.health is not Health.ENDED and view.stamp >= self._last + self._every:
             self._print(view.clock, progress(view))
             self._last = view.stamp
+
+    def _say_if_lost(self, view: View, age: float) -> None:
+        """Once when the news stop, and once when they come again."""
+        lost = is_lost(view, age)
+        if lost and not self._lost:
+            self._print(view.clock, f"no news for {spell_seconds(age)}, since {view.clock}; keeps trying")
+        elif self._lost and not lost:
+            self._print(view.clock, "there is news again")
+        self._lost = lost
+
+    def _say_if_needed(self, view: View) -> None:
+        """Once for each question or trouble that a person is needed for."""
+        needed = (view.question or view.reason) if view.health is Health.NEEDS_YOU else ""
+        if needed and needed != self._needed:
+            how = f"answer with: trundle answer {' | '.join(view.answers)}" if view.answers else advice_in_words(view)
+            self._print(view.clock, f"needs you: {needed}; {how}")
+        self._needed = needed
 
     def _print(self, clock: str, text: str) -> None:
         if self._gone:
@@ -60,6 +87,11 @@ class PlainPrinter:
             return
 
 
+def advice_in_words(view: View) -> str:
+    """What to do where no key can be pressed."""
+    return "trundle release goes on, trundle abort ends it" if view.health is Health.NEEDS_YOU else advice_for(view)
+
+
 def progress(view: View) -> str:
     """Where the run stands, in one line."""
     parts = [f"{view.health.value}: {view.reason}" if view.reason else view.health.value]
@@ -70,4 +102,5 @@ def progress(view: View) -> str:
         parts.append(f"leg {spell_seconds(view.leg_seconds)}{limit}")
     if view.battery is not None:
         parts.append(f"battery {view.battery * 100:.0f} %")
-    return "; ".join([*parts, legs_so_far(view)])
+    told = [laps(view), legs_so_far(view), ends_about(view)]
+    return "; ".join([*parts, *(part for part in told if part)])

@@ -11,14 +11,16 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Protocol
 
+from runner.host.messages import Deed, Done
 from runner.host.view import FeedLine, View
-from runner.machine.table import Event, StepNote
-from runner.site.values import RobotDescription, Site
+from runner.machine.table import StepNote
+from runner.site.values import Point, RobotDescription, Site
 
 
 @dataclass(frozen=True, slots=True)
 class Showing:
-    """What does not change during a run. `report_hint` is the command that shows the record afterwards."""
+    """What does not change during a run. `report_hint` is the command that shows the record afterwards, `pick_up_hint`
+    the one that goes on with a run whose process died. `troubles` are the places of the incidents so far."""
 
     mission: str
     run: str
@@ -26,16 +28,24 @@ class Showing:
     robot: RobotDescription
     steps: tuple[StepNote, ...]
     report_hint: str
+    pick_up_hint: str = ""
+    troubles: tuple[Point, ...] = ()
 
 
 class Source(Protocol):
-    """What the thread that owns the run offers. Every call returns at once."""
+    """What tells of a run, and passes on what a person asks for. Every call returns at once."""
 
     def view(self) -> View | None:
-        """The latest view, None before the first."""
+        """The latest view, however old; None before the first."""
+
+    def age(self) -> float:
+        """Seconds since the run gave the sign of life that the latest view shows."""
 
     def feed(self) -> Sequence[FeedLine]:
         """Lines that are new since the last call, oldest first."""
 
-    def act(self, event: Event) -> None:
-        """Pass on what a person asks for: HOLD, RELEASE, SKIP or ABORT."""
+    def do(self, deed: Deed, text: str = "") -> str:
+        """Pass on what a person asks for. Its id, by which `answers` tells what came of it."""
+
+    def answers(self) -> Sequence[Done]:
+        """What came of deeds since the last call."""

@@ -4,15 +4,37 @@ from __future__ import annotations
 
 from runner.host.view import Health, View
 
-NEXT_FOR_YOU: dict[Health, str] = {
+BROKEN_OFF = "broken off"
+"""The outcome of a run whose process died, in the record's words: it can be picked up."""
+
+OLD_AFTER_S = 3.0
+"""News older than this are called old. A run gives a sign of life some times a second."""
+OLD_AT_FIRST_S = 15.0
+"""The same before the first view: the first run after an installation compiles."""
+
+_NEXT_FOR_YOU: dict[Health, str] = {
     Health.STARTING: "nothing for you to do",
     Health.MOVING: "nothing for you to do",
     Health.WAITING: "nothing for you to do",
     Health.RECOVERING: "it is helping itself",
     Health.HELD: "your turn: r releases",
+    Health.NEEDS_YOU: "your turn: r goes on, a aborts",
     Health.ENDED: "",
 }
-"""The answer to the question whether a person has to act."""
+
+
+def advice_for(view: View) -> str:
+    """The answer to the question whether a person has to act."""
+    if view.health is Health.NEEDS_YOU and view.question is not None:
+        return "your turn: Enter answers"
+    return _NEXT_FOR_YOU[view.health]
+
+
+def is_lost(view: View | None, age: float) -> bool:
+    """Whether the news are too old to be taken for what is so now."""
+    if view is None:
+        return age >= OLD_AT_FIRST_S
+    return view.outcome is None and age >= (OLD_AT_FIRST_S if view.health is Health.STARTING else OLD_AFTER_S)
 
 
 def spell_seconds(seconds: float) -> str:
@@ -38,3 +60,27 @@ def legs_so_far(view: View) -> str:
     failed = f", {view.legs_failed} failed" if view.legs_failed else ""
     incidents = f", {counted(view.incidents, 'incident', 'incidents')}" if view.incidents else ""
     return f"{legs}{failed}{incidents}"
+
+
+def ends_about(view: View) -> str:
+    """When the run is over, as far as that is known; empty where nothing is known of it."""
+    if view.outcome is not None:
+        return ""
+    until, by = view.repeats_until, view.ends_by
+    if until is not None and (by is None or until < by):
+        return f"repeats until about {_clock_at(view, until)}"
+    return f"ends by {_clock_at(view, by)}" if by is not None else ""
+
+
+def laps(view: View) -> str:
+    """The laps of the loops around the step, outermost first: `lap 2 of 8`."""
+    most = (*view.laps_at_most, *([None] * len(view.laps)))
+    told = [f"{lap} of {at_most}" if at_most else str(lap) for lap, at_most in zip(view.laps, most, strict=False)]
+    return f"lap {', '.join(told)}" if told else ""
+
+
+def _clock_at(view: View, stamp: float) -> str:
+    """The time of day at a stamp, as HH:MM. ValueError never: before the first view nothing is known of it."""
+    hours, minutes, seconds = (int(part) for part in view.clock.split(":"))
+    at = round((hours * 3600 + minutes * 60 + seconds + stamp - view.stamp) / 60) % 1440
+    return f"{at // 60:02}:{at % 60:02}"

@@ -11,9 +11,10 @@ from collections.abc import Iterator, Sequence
 from dataclasses import replace
 from itertools import pairwise
 
+from runner.host.messages import Deed, Done
 from runner.host.view import FeedLine, Health, View, Weight
 from runner.language.mission import Mark
-from runner.machine.table import Event, StepNote
+from runner.machine.table import StepNote
 from runner.screen.showing import Showing
 from runner.site.values import Battery, Door, Lidar, Place, Point, Pose, RobotDescription, Site, Solid, Wall
 
@@ -27,7 +28,8 @@ def clinic() -> Site:
     lines += [((0.0, 14.0), (45.0, 14.0))]
     lines += [((x, 14.0), (x, 25.0)) for x in (9.0, 18.0, 27.0, 36.0)]
     lines += [((x, 0.0), (x, 11.0)) for x in (10.0, 20.0, 28.0, 36.0)]
-    doors = [Door(f"{name} door", (x, 14.0), (x + 1.2, 14.0), 0.15) for name, x in _NORTH.items()]
+    night = {"imaging": ((20 * 3600.0, 6 * 3600.0),)}
+    doors = [Door(f"{name} door", (x, 14.0), (x + 1.2, 14.0), 0.15, night.get(name, ())) for name, x in _NORTH.items()]
     doors += [Door(f"{name} door", (x, 11.0), (x + 1.2, 11.0), 0.15) for name, x in _SOUTH.items()]
     places = [Place("charging bay", Pose(1.5, 12.5, 0.0)), Place("lift", Pose(43.5, 12.5, math.pi))]
     places += [Place(name, Pose(x, 20.0, math.pi / 2)) for name, x in _NORTH.items()]
@@ -78,7 +80,16 @@ STEPS = (
 
 def showing(steps: tuple[StepNote, ...] = STEPS) -> Showing:
     """The evening round."""
-    return Showing("Evening specimen round", "evening-0312", clinic(), cart(), steps, "trundle report evening-0312")
+    return Showing(
+        "Evening specimen round",
+        "evening-0312",
+        clinic(),
+        cart(),
+        steps,
+        "trundle report evening-0312",
+        "trundle pick-up evening-0312",
+        troubles=((5.5, 12.6), (31.8, 13.6)),
+    )
 
 
 WAY: tuple[Point, ...] = (
@@ -114,6 +125,10 @@ def driving() -> list[View]:
             reason="driving to laboratory",
             step=4,
             laps=(2,),
+            laps_at_most=(8,),
+            to_visit=("imaging",),
+            repeats_until=8_200.0,
+            ends_by=9_720.0,
             place="laboratory",
             leg_seconds=number / 4,
             leg_limit=240.0,
@@ -144,17 +159,27 @@ RECOVERING = replace(
     incidents=2,
     obstacles=tuple((MOVING.pose.x + 0.8, 11.6 + 0.2 * number) for number in range(10)) if MOVING.pose else (),
 )
-HELD = replace(MOVING, health=Health.HELD, reason="held by operator at the screen", speed=0.0)
-WAITING = replace(MOVING, health=Health.WAITING, reason="2:00, until 03:16:00", step=8, place=None, remaining=None,
-                  route=(), leg_seconds=None, leg_limit=None, tries=0, tries_at_most=0, speed=0.0)  # fmt: skip
+HELD = replace(MOVING, health=Health.HELD, reason="a person holds the robot", speed=0.0)
+WAITING = replace(MOVING, health=Health.WAITING, reason="waiting, 1:42 left", step=8, place=None, remaining=None,
+                  route=(), leg_seconds=None, leg_limit=None, tries=0, tries_at_most=0, speed=0.0,
+                  to_visit=())  # fmt: skip
+NEEDS_YOU = replace(WAITING, health=Health.NEEDS_YOU, reason="question: Tray taken at laboratory?, 1:12 left", step=4,
+                    question="Tray taken at laboratory?", answers=("yes", "no", "come again"),
+                    pose=Pose(22.5, 19.4, math.pi / 2), obstacles=())  # fmt: skip
+TROUBLE = replace(HELD, health=Health.NEEDS_YOU, reason="Nothing has been heard from the robot for 31 s.", spread=0.9)
 ENDED = replace(WAITING, health=Health.ENDED, reason="all steps done", step=None, laps=(), outcome="completed",
                 legs_arrived=12, legs_failed=1, incidents=2, stamp=2531.0)  # fmt: skip
-SCENES = {"moving": MOVING, "recovering": RECOVERING, "held": HELD, "waiting": WAITING, "ended": ENDED}
+SCENES = {"moving": MOVING, "recovering": RECOVERING, "held": HELD, "waiting": WAITING, "needs-you": NEEDS_YOU,
+          "trouble": TROUBLE, "lost": MOVING, "ended": ENDED}  # fmt: skip
+AGES = {"lost": 47.0}
+"""For how many seconds nothing has been heard, in scenes where that is so."""
 
 FEED = (
     FeedLine(640.0, "03:10:40", Weight.PLAIN, "Began lap 2 of repeat until 05:30."),
     FeedLine(655.0, "03:10:55", Weight.PLAIN, "Driving to ward west, 4:00 at most."),
-    FeedLine(690.0, "03:11:30", Weight.TROUBLE, "Stalled on the way to ward west: 0.1 m of progress in 12 s."),
+    FeedLine(
+        690.0, "03:11:30", Weight.TROUBLE, "Stalled on the way to ward west: 0.1 m of progress in 12 s.", (12.4, 12.3)
+    ),
     FeedLine(691.0, "03:11:31", Weight.NOTICE, "Recovery 1 of this leg: replan."),
     FeedLine(699.0, "03:11:39", Weight.PLAIN, "Got on after replan: the route was blocked."),
     FeedLine(718.0, "03:11:58", Weight.PLAIN, "Arrived at ward west after 1:03, 21 m."),
@@ -162,40 +187,49 @@ FEED = (
 )
 
 
-class Replay:
-    """A source that shows views one after another, the last one for good, and does what is asked as a host would."""
+HOLD_LINE = FeedLine(741.0, "03:12:21", Weight.NOTICE, "held by kim (pts/2, 10.0.0.7)", who="kim (pts/2, 10.0.0.7)")
+LINES = {"held": (*FEED, HOLD_LINE)}
 
-    def __init__(self, views: Sequence[View], lines: Sequence[FeedLine] = FEED) -> None:
+
+class Replay:
+    """A source that shows views one after another, the last one for good. What is asked of it is never answered."""
+
+    def __init__(self, views: Sequence[View], lines: Sequence[FeedLine] = FEED, age: float = 0.0) -> None:
         self.views = list(views)
         self.lines = list(lines)
-        self.acts: list[Event] = []
+        self.silent = age
+        self.done: list[tuple[Deed, str]] = []
 
     def view(self) -> View | None:
         if not self.views:
             return None
         return self.views.pop(0) if len(self.views) > 1 else self.views[0]
 
+    def age(self) -> float:
+        return self.silent
+
     def feed(self) -> Sequence[FeedLine]:
         new, self.lines = self.lines, []
         return new
 
-    def act(self, event: Event) -> None:
-        self.acts.append(event)
-        now = self.views[0]
-        self.lines.append(FeedLine(now.stamp, now.clock, Weight.NOTICE, f"Operator: {event.value}."))
-        if event is Event.HOLD:
-            self.views = [replace(HELD, pose=now.pose, stamp=now.stamp, clock=now.clock)]
-        elif event is Event.RELEASE:
-            self.views = [view for view in driving() if view.stamp > now.stamp]
-        elif event is Event.ABORT:
-            self.views = [replace(ENDED, outcome="aborted", reason="aborted by operator", pose=now.pose)]
+    def do(self, deed: Deed, text: str = "") -> str:
+        self.done.append((deed, text))
+        return str(len(self.done))
+
+    def answers(self) -> Sequence[Done]:
+        return ()
+
+
+def scene(name: str) -> Replay:
+    """A source that shows one scene."""
+    return Replay([SCENES[name]], LINES.get(name, FEED), AGES.get(name, 0.0))
 
 
 def main() -> None:
     from runner.screen.watch import watch
 
-    scene = sys.argv[1] if len(sys.argv) > 1 else "driving"
-    watch(showing(), Replay(driving() if scene == "driving" else [SCENES[scene]]))
+    name = sys.argv[1] if len(sys.argv) > 1 else "driving"
+    watch(showing(), Replay(driving()) if name == "driving" else scene(name), "--read-only" in sys.argv)
 
 
 if __name__ == "__main__":

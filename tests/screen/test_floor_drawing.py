@@ -10,11 +10,14 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from runner.host.view import FeedLine, Weight
 from runner.screen.floor_dots import fit, furniture_dots, standing, wall_dots
 from runner.screen.floor_drawing import FloorDrawing
 from runner.screen.ink import ASCII, DOTTED, Glyphs, Ink
+from runner.screen.recollection import Recollection
+from runner.screen.sight import Sight, middle, scale_of
 from runner.site.values import Place, Pose, Site, Solid, Wall
-from tests.screen.scripted import MOVING, RECOVERING, cart, clinic
+from tests.screen.scripted import MOVING, RECOVERING, cart, clinic, driving
 
 
 def _drawing(columns: int, rows: int, glyphs: Glyphs, site: Site | None = None) -> FloorDrawing:
@@ -126,3 +129,84 @@ def test_a_post_smaller_than_a_dot_is_not_lost_to_the_pattern() -> None:
         x = 10.0 + 0.5 * shift
         site = replace(_room(30.0, 30.0), solids=(Solid(((x, 10.0), (x + 0.5, 10.0), (x + 0.5, 10.5), (x, 10.5))),))
         assert furniture_dots(standing(site), fit(site, 30, 15)).any()
+
+
+def test_a_door_is_shut_by_its_known_hours_and_open_again_after_them() -> None:
+    drawing = _drawing(54, 15, DOTTED)
+    assert not any(ink is Ink.SHUT for row in drawing.still for _, ink in row)
+    drawing.tell_time(23 * 3600.0)
+    assert {cell for row in drawing.still for cell in row if cell[1] is Ink.SHUT} == {(DOTTED.shut_across, Ink.SHUT)}
+    assert drawing.shut == ("imaging door",)
+    drawing.tell_time(12 * 3600.0)
+    assert not any(ink is Ink.SHUT for row in drawing.still for _, ink in row)
+
+
+def test_what_was_told_of_before_where_it_drove_and_where_it_was_stuck_stay_in_sight() -> None:
+    kept = Recollection([(40.0, 12.5)])
+    for view in driving()[:80]:
+        kept.take(view)
+    inks = {ink for _, ink in _drawing(54, 15, DOTTED).moving(MOVING, kept).values()}
+    assert {Ink.TRAIL, Ink.BEFORE, Ink.STUCK, Ink.ROBOT, Ink.SENSED} <= inks
+    now = {(round(x, 1), round(y, 1)) for x, y in driving()[79].obstacles}
+    assert not now & {(round(x, 1), round(y, 1)) for x, y in kept.before()}
+
+
+@given(st.integers(1, 3000), st.floats(0.05, 3.0))
+@settings(max_examples=20, deadline=None)
+def test_what_a_screen_remembers_is_bounded(count: int, step: float) -> None:
+    kept = Recollection()
+    for number in range(count):
+        at = number * step
+        kept.take(replace(MOVING, stamp=number * 0.25, pose=Pose(at, 0.0, 0.0), obstacles=((at, 1.0), (at, 2.0))))
+        kept.take_lines([FeedLine(0.0, "00:00:00", Weight.TROUBLE, "", at=(at, 0.0))])
+    assert len(kept.trail) <= 400
+    assert len(kept.before()) <= 400
+    assert len(list(kept.troubles)) <= 200
+
+
+def test_a_robot_unsure_of_its_place_has_a_ring_of_two_spreads_around_it() -> None:
+    drawing = _drawing(80, 30, DOTTED, _room(10.0, 7.0))
+    view = replace(MOVING, pose=Pose(5.0, 3.5, 0.0), route=(), obstacles=(), spread=0.8)
+    ring = [spot for spot, (_, ink) in drawing.moving(view).items() if ink is Ink.SPREAD]
+    assert ring
+    center = drawing.scale.spot((5.0, 3.5))
+    assert center is not None
+    for row, column in ring:
+        meters = math.hypot((row - center[0]) * 4, (column - center[1]) * 2) / drawing.scale.dots_per_meter
+        assert abs(meters - 1.6) < 4 / drawing.scale.dots_per_meter + 0.2
+    sure = drawing.moving(replace(view, spread=0.03)).values()
+    assert not any(ink is Ink.SPREAD for _, ink in sure)
+
+
+def test_old_news_are_drawn_as_old_by_mark_and_by_look() -> None:
+    cells = _drawing(54, 15, DOTTED).moving(MOVING, old=True)
+    assert {ink for _, ink in cells.values()} == {Ink.OLD}
+    assert DOTTED.old_robot in {char for char, _ in cells.values()}
+
+
+@given(
+    level=st.integers(0, 12),
+    x=st.floats(-20.0, 70.0),
+    y=st.floats(-20.0, 50.0),
+    columns=st.integers(4, 200),
+    rows=st.integers(2, 60),
+)
+@settings(max_examples=40, deadline=None)
+def test_any_part_of_the_floor_can_be_looked_at(level: int, x: float, y: float, columns: int, rows: int) -> None:
+    scale = scale_of(Sight(level, (x, y)), clinic(), columns, rows)
+    assert scale.dots_per_meter >= fit(clinic(), columns, rows).dots_per_meter
+    assert scale.dots_per_meter <= max(40.0, fit(clinic(), columns, rows).dots_per_meter)
+    at = middle(scale)
+    assert -1e-6 <= at[0] <= 45.0 + 1e-6
+    assert -1e-6 <= at[1] <= 25.0 + 1e-6
+    assert wall_dots(standing(clinic()), scale).shape == (rows * 4, columns * 2)
+
+
+def test_the_footprint_is_true_to_scale_from_closer() -> None:
+    drawing = FloorDrawing(clinic(), cart(), DOTTED)
+    drawing.resize(60, 20, Sight(9, (20.0, 12.5)))
+    cells = drawing.moving(replace(MOVING, pose=Pose(20.0, 12.5, 0.0), route=(), obstacles=()))
+    rows, columns = zip(*(spot for spot, (_, ink) in cells.items() if ink is Ink.ROBOT), strict=True)
+    dots = drawing.scale.dots_per_meter
+    assert abs((max(columns) - min(columns) + 1) * 2 - 0.6 * dots) <= 4
+    assert abs((max(rows) - min(rows) + 1) * 4 - 0.44 * dots) <= 8

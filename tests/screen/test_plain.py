@@ -9,7 +9,7 @@ from dataclasses import replace
 
 from runner.host.view import FeedLine, Weight
 from runner.screen.plain import PlainPrinter
-from tests.screen.scripted import ENDED, FEED, MOVING, driving
+from tests.screen.scripted import ENDED, FEED, MOVING, NEEDS_YOU, TROUBLE, driving
 
 
 def _printed(lines: list[FeedLine], every: float = 60.0) -> str:
@@ -46,8 +46,31 @@ def test_progress_is_told_where_the_feed_was_silent_for_a_minute_of_the_run() ->
     assert stamps == ["03:12:10", "03:12:20", "03:12:30"]
     assert lines[0] == (
         "03:12:10  moving: driving to laboratory; 24 m to laboratory; leg 0:10 of 4:00; battery 83 %; "
-        "9 legs arrived, 1 incident"
+        "lap 2 of 8; 9 legs arrived, 1 incident; repeats until about 05:17"
     )
+
+
+def test_what_a_person_is_needed_for_is_said_once_with_how_to_act() -> None:
+    stream = io.StringIO()
+    printer = PlainPrinter(stream, every=1e6)
+    for view in (NEEDS_YOU, NEEDS_YOU, MOVING, TROUBLE, TROUBLE):
+        printer.show([], view)
+    assert stream.getvalue().splitlines() == [
+        "03:12:22  needs you: Tray taken at laboratory?; answer with: trundle answer yes | no | come again",
+        "03:12:22  needs you: Nothing has been heard from the robot for 31 s.; "
+        "trundle release goes on, trundle abort ends it",
+    ]
+
+
+def test_that_no_news_come_is_said_once_and_when_they_come_again_too() -> None:
+    stream = io.StringIO()
+    printer = PlainPrinter(stream, every=1e6)
+    for age in (0.1, 4.0, 5.0, 6.0, 0.1, 0.2):
+        printer.show([], MOVING, age)
+    assert stream.getvalue().splitlines() == [
+        "03:12:22  no news for 0:04, since 03:12:22; keeps trying",
+        "03:12:22  there is news again",
+    ]
 
 
 def test_no_progress_is_told_of_a_run_that_has_ended() -> None:
