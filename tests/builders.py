@@ -43,7 +43,7 @@ ROBOT = RobotDescription(
 
 HOME = Place("home", Pose(1.5, 1.5, 0.0))
 FAR = Place("far end", Pose(8.5, 1.5, 0.0))
-SIDE = Place("side", Pose(5.0, 2.5, 0.0))
+SIDE = Place("side", Pose(5.0, 2.2, 0.0))
 
 LADDER = (
     Recovery(RecoveryKind.REPLAN),
