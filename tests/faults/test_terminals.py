@@ -45,7 +45,7 @@ def command(runs: Path, *words: str) -> Iterator[tuple[Terminal, subprocess.Pope
 
 def test_a_run_outlives_its_terminal_and_is_held_released_and_aborted_from_another(tmp_path: Path) -> None:
     with command(tmp_path, "run", "evening-round", "--pace", "2") as (terminal, process):
-        terminal.read_until("abort", 60.0)
+        terminal.read_until("on the way", 60.0)
         os.killpg(process.pid, signal.SIGKILL)
     folder = find_run(tmp_path)
     try:
@@ -62,7 +62,7 @@ def test_a_run_outlives_its_terminal_and_is_held_released_and_aborted_from_anoth
 
 def watch_hold_release_and_abort(runs: Path, folder: Path) -> None:
     with command(runs, "watch") as (terminal, process):
-        terminal.read_until("abort", 60.0)
+        terminal.read_until("on the way", 60.0)
         terminal.type(b"h")
         until(terminal, folder, held=True)
         terminal.type(b"r")
@@ -84,10 +84,12 @@ def watch_hold_release_and_abort(runs: Path, folder: Path) -> None:
 
 
 def until(terminal: Terminal, folder: Path, held: bool) -> None:
+    """Read the screen until the run is held, or no more."""
     end = time.monotonic() + 20.0
     while (look(folder, 5.0).view.health is Health.HELD) is not held:  # type: ignore[union-attr]
-        assert time.monotonic() < end
+        assert time.monotonic() < end, terminal.text()
         terminal.read(0.1)
+    terminal.read_until("release" if held else "hold ")  # the keys that mean something now
 
 
 def outcome(folder: Path) -> RunOutcome:
