@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import re
 import subprocess
 import sys
 from pathlib import Path
@@ -95,3 +96,11 @@ def test_importing_runner_loads_nothing_heavy() -> None:
     program = "import sys, runner; print(*sys.modules, sep='\\n')"
     loaded = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True).stdout.split()
     assert not {"numpy", "yaml", "msgspec", "zmq", "textual", "numba"} & set(loaded)
+
+
+def test_the_example_in_the_readme_runs_as_it_is_written(capsys: pytest.CaptureFixture[str]) -> None:
+    readme = (MISSIONS.parent / "README.md").read_text()
+    example = re.search(r"```python\n(.*?)```", readme, re.DOTALL)
+    assert example is not None
+    exec(compile(example[1].replace('"missions/', f'"{MISSIONS}/'), "README.md", "exec"), {})  # noqa: S102
+    assert capsys.readouterr().out.endswith("Ending.COMPLETED\n")
