@@ -41,6 +41,11 @@ def measure() -> Iterator[Row]:
 def by_part() -> Iterator[Row]:
     """Time of a tick of the busy rounds by part, without what is under a part already counted."""
     simulator = prepare(PEOPLE)
+    yield from parts_of("busy rounds", simulator, lambda: rounds(simulator, BUSY_S))
+
+
+def parts_of(what: str, simulator: Simulator, action: Callable[[], object]) -> Iterator[Row]:
+    """Rows for the parts of a tick while `action` drives the simulator."""
     parts: dict[str, float] = {}
     for name, holder, method in (
         ("world events", simulator.world, "advance"),
@@ -55,11 +60,12 @@ def by_part() -> Iterator[Row]:
         ("telemetry", simulator, "_telemetry"),
     ):
         timed(holder, method, name, parts)
-    spent = seconds_of(lambda: rounds(simulator, BUSY_S))
+    spent = seconds_of(action)
     parts["supervising"] -= parts["planning"] + parts["following"]
     parts["the rest"] = spent - sum(parts.values())
+    ticks = simulator.clock.now() * TICKS_PER_S
     for name, seconds in parts.items():
-        yield Row(f"busy rounds by part: {name}", 1e6 * seconds / (BUSY_S * TICKS_PER_S), "us a tick")
+        yield Row(f"{what} by part: {name}", 1e6 * seconds / ticks, "us a tick")
 
 
 def prepare(people: int = 0) -> Simulator:
