@@ -22,8 +22,8 @@ BEFORE = View(0.0, "--:--:--", Health.STARTING, "making ready")
 
 
 def header(view: View | None, showing: Showing, width: int, glyphs: Glyphs, held_by: str = "") -> tuple[Row, Row, Row]:
-    """Health, reason and figures. A reason too long for its row takes that of the figures as well; so does what there is
-    to do, where it has no room beside the reason.
+    """Health, reason and figures. A reason too long for its row takes that of the figures as well; so does what there
+    is to do, where it has no room beside the reason.
 
     `held_by` says who holds the robot, where a person does.
     """

@@ -16,6 +16,7 @@ import time
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from pathlib import Path
+from typing import Any
 
 import pyte
 import pytest
@@ -181,7 +182,7 @@ def test_with_color_only_the_terminals_own_sixteen_are_used() -> None:
 
 
 @pytest.mark.parametrize("environment", [{"TRUNDLE_ASCII": "1"}, {"LC_ALL": "C"}], ids=["by wish", "by locale"])
-def test_ascii_terminals_get_ascii_only(environment: dict[str, str]) -> None:
+def test_ascii_terminals_get_ascii_only(environment: dict[str, Any]) -> None:
     with _watching("moving", **environment) as (terminal, process):
         text = terminal.read_until("q  leave")
         assert "laboratory" in text
