@@ -21,6 +21,8 @@ from backends.sim.world import World
 from runner.site.floor import rasterize
 from runner.site.values import Pose
 
+PREPARATION = "The simulator is being compiled, once after an installation. This takes about 20 s."
+
 TICKS_PER_S = 10
 TICK_S = 1.0 / TICKS_PER_S
 TELEMETRY_S, TELEMETRY_IDLE_S = 0.25, 1.0
@@ -80,7 +82,10 @@ class Simulator:
         return frozenset(Capability)
 
     def preparation(self) -> str:
-        return ""
+        from backends.sim.kernels.window import choose
+        from runner.site.compiled import is_kept
+
+        return "" if is_kept(choose) else PREPARATION
 
     def open(self) -> None:
         """Compile the kernels, which takes seconds after an installation and a fraction of one later."""

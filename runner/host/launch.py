@@ -19,6 +19,7 @@ from backends.contract import Backend, BackendError, Line, Setup
 from runner.engine.state import EngineState, initial_state
 from runner.engine.values import Command, Go, Halt, StartCharging
 from runner.host.board import Board
+from runner.host.clocks import seconds_of_day
 from runner.host.continued import continued
 from runner.host.control import ControlServer
 from runner.host.distress import ABORTED, Distress, RunError
@@ -26,7 +27,8 @@ from runner.host.hooks import Teller
 from runner.host.host import Host
 from runner.host.plan import Care, Plan, later, plan_of, plan_to_json
 from runner.host.service import ServiceManager
-from runner.host.view import Health, View
+from runner.host.view import FeedLine, Health, View, Weight
+from runner.host.viewing import clock_text
 from runner.journal.errors import JournalError
 from runner.journal.header import RunHeader, person_and_host
 from runner.journal.reader import Record, Status, open_record
@@ -226,6 +228,7 @@ class _Owner:
         distress = Distress(self.folder, self.plan.mission, self.plan.care, teller)
         outcome = "broken off"
         try:
+            self._say(backend.preparation())
             with _opened(backend):
                 host = self._host(backend, state, distress)
                 server = ControlServer(self.folder, self.board, host.gate)
@@ -255,6 +258,13 @@ class _Owner:
         return Host(
             self.machine, state, backend, self.journal, self.board, distress, plan.setup.seed, plan.pace, after_turn
         )
+
+    def _say(self, sentence: str) -> None:
+        """Tell whoever waits for the run to begin what it takes time for."""
+        if sentence:
+            clock = clock_text(seconds_of_day(self.plan.setup.begins))
+            self.board.post_line(FeedLine(0.0, clock, Weight.NOTICE, sentence))
+            self.after_turn()
 
     def _stamp(self) -> float:
         view = self.board.view()

@@ -45,6 +45,13 @@ def kernel_compiler(*sources: str) -> Callable[[Kernel], Kernel]:
     return compile_kernel
 
 
+def is_kept(kernel: Callable[..., Any]) -> bool:
+    """Whether a kernel was compiled before and kept, so that its first call will take no seconds."""
+    stats: Any = getattr(kernel, "stats", None)
+    folder = Path(stats.cache_path) if stats is not None and stats.cache_path else None
+    return folder is not None and any(folder.glob(f"*{kernel.__name__}*.nbi"))
+
+
 def _key(sources: tuple[str, ...], version: str) -> str:
     digest = hashlib.sha256(version.encode())
     for source in sources:

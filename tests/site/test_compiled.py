@@ -8,13 +8,15 @@ import sys
 from pathlib import Path
 
 MODULE = """
-from runner.site.compiled import kernel_compiler
+import sys
+from runner.site.compiled import is_kept, kernel_compiler
 kernel = kernel_compiler(__file__)
 
 @kernel
 def doubled(number):
     return 2.0 * number
 
+print("kept before" if is_kept(doubled) else "not kept before", file=sys.stderr)
 print(doubled(1.0))
 """
 
@@ -34,6 +36,11 @@ def test_kernels_are_kept_in_the_users_cache_folder(tmp_path: Path) -> None:
     assert done.stdout == "2.0\n", done.stderr
     assert list(tmp_path.glob("trundle/*/*/*.nbi"))
     assert (tmp_path / "trundle").stat().st_mode & 0o077 == 0
+
+
+def test_whether_a_kernel_must_still_be_compiled_can_be_told_beforehand(tmp_path: Path) -> None:
+    first, second = (run_kernel(tmp_path, XDG_CACHE_HOME=str(tmp_path)) for _ in range(2))
+    assert (first.stderr, second.stderr) == ("not kept before\n", "kept before\n")
 
 
 def test_a_folder_that_cannot_be_used_is_passed_over(tmp_path: Path) -> None:
