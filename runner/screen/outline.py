@@ -82,7 +82,7 @@ def _to_come(view: View, margin: str, width: int, glyphs: Glyphs) -> list[Row]:
     if not view.to_visit:
         return []
     text = glyphs.say(f"then {', '.join(view.to_visit)}")
-    return [((margin + line, Ink.TEXT),) for line in wrap(text, width - len(margin), 2, glyphs.more)]
+    return [((margin + line, Ink.STRONG),) for line in wrap(text, width - len(margin), 2, glyphs.more)]
 
 
 def _time_bar(view: View, margin: str, width: int, glyphs: Glyphs) -> list[Row]:

@@ -37,7 +37,7 @@ from runner.screen.showing import Showing, Source
 from runner.screen.sight import Sight
 from runner.screen.sparing import send_only_what_changed
 from runner.screen.terminal import ascii_only
-from runner.screen.words import is_lost
+from runner.screen.words import is_lost, seconds_of
 
 PULL_S = 0.25
 FEED_KEPT = 500
@@ -93,7 +93,10 @@ class WatchApp(App[None]):
         self._rule, self._lines, self._keys = Panel(looks, "rule"), Panel(looks, "feed"), Panel(looks, "keys")
         self._floor = FloorPanel(looks)
         self._body = Container(self._floor, self._steps, id="body")
-        self._does: dict[str, Callable[[], None]] = self._deeds() | {
+        self._does: dict[str, Callable[[], None]] = {
+            "hold": lambda: self._do(Deed.HOLD),
+            "release": lambda: self._do(Deed.RELEASE),
+            "skip": lambda: self._do(Deed.SKIP),
             "answer": self._open_answers,
             "abort": lambda: self._turn_to(Mode.ABORTING),
             "closer": self._closer,
@@ -107,13 +110,6 @@ class WatchApp(App[None]):
             "help": self._help,
             "suspend": self.action_suspend_process,
             "leave": self.action_leave,
-        }
-
-    def _deeds(self) -> dict[str, Callable[[], None]]:
-        return {
-            "hold": lambda: self._do(Deed.HOLD),
-            "release": lambda: self._do(Deed.RELEASE),
-            "skip": lambda: self._do(Deed.SKIP),
         }
 
     # --- layout ---------------------------------------------------------------------------------------------
@@ -198,7 +194,7 @@ class WatchApp(App[None]):
         view = self._view
         self._drawing.aim(view.place if view is not None else None)
         if view is not None:
-            self._drawing.tell_time(_seconds_of(view.clock))
+            self._drawing.tell_time(seconds_of(view.clock))
             robot = (view.pose.x, view.pose.y) if view.pose is not None else None
             along = sight.going_along(self._sight, self._drawing.scale, robot)
             if along != self._sight:
@@ -405,9 +401,3 @@ class WatchApp(App[None]):
     def _help(self) -> None:
         self._page_at = 0
         self._turn_to(Mode.READING)
-
-
-def _seconds_of(clock: str) -> float:
-    """Seconds since midnight of HH:MM:SS."""
-    hours, minutes, seconds = (int(part) for part in clock.split(":"))
-    return hours * 3600.0 + minutes * 60.0 + seconds

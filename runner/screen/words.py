@@ -80,7 +80,12 @@ def laps(view: View) -> str:
 
 
 def _clock_at(view: View, stamp: float) -> str:
-    """The time of day at a stamp, as HH:MM. ValueError never: before the first view nothing is known of it."""
-    hours, minutes, seconds = (int(part) for part in view.clock.split(":"))
-    at = round((hours * 3600 + minutes * 60 + seconds + stamp - view.stamp) / 60) % 1440
+    """The time of day at a stamp, as HH:MM."""
+    at = round((seconds_of(view.clock) + stamp - view.stamp) / 60) % 1440
     return f"{at // 60:02}:{at % 60:02}"
+
+
+def seconds_of(clock: str) -> float:
+    """Seconds since midnight of HH:MM:SS."""
+    hours, minutes, seconds = (int(part) for part in clock.split(":"))
+    return hours * 3600.0 + minutes * 60.0 + seconds

@@ -24,7 +24,8 @@ GROWTH_MOST = 3_000_000
 
 def test_ten_thousand_events_leave_the_screen_responsive_and_its_memory_flat(tmp_path: Path) -> None:
     """In far less than the minute that it may take."""
-    views, sizes = driving(), []
+    views = driving()
+    sizes: list[int] = []
 
     async def step(pilot: Pilot[None]) -> None:
         await until(pilot, "M O V I N G")
