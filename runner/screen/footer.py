@@ -35,7 +35,7 @@ def rule(width: int, glyphs: Glyphs, with_floor: bool, any_shut: bool, remark: s
 
 
 def _ruled(middle: tuple[str, Ink], width: int, glyphs: Glyphs) -> Row:
-    rest = max(width - 2 - len(middle[0]), 0)
+    rest = max(width - 2 - row_width((middle,)), 0)
     return ((glyphs.rule * 2, Ink.FAINT), middle, (glyphs.rule * rest, Ink.FAINT))
 
 
@@ -122,7 +122,7 @@ def key_at(row: Row, column: int) -> str:
     at, cap = 0, ""
     for text, ink in row:
         cap = text.strip() if ink is Ink.KEY else cap
-        at += len(text)
+        at += row_width(((text, ink),))
         if column < at:
             return cap
     return ""

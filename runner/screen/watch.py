@@ -43,8 +43,7 @@ PULL_S = 0.25
 FEED_KEPT = 500
 _KEYS = {command.key: command.name for command in COMMANDS} | {"equals_sign": "closer"}
 _ARROWS = {"left": (-1, 0), "right": (1, 0), "up": (0, 1), "down": (0, -1)}
-_FOLLOWED_FROM = 2
-"""Steps closer than the whole floor, from which it is worth going along."""
+_FOLLOWED_FROM = 2  # steps closer than the whole floor, from which it is worth going along
 
 
 def watch(showing: Showing, source: Source, read_only: bool = False) -> bool:
@@ -145,8 +144,7 @@ class WatchApp(App[None]):
         now, view = time.monotonic(), self._source.view()
         for done in self._source.answers():
             self._desk.answered(done, now)
-        lines = self._source.feed()
-        self._feed.extend(lines)
+        self._feed.extend(lines := self._source.feed())
         self._kept.take_lines(lines)
         if view is not None and view != self._view:
             self._view = view
@@ -177,8 +175,8 @@ class WatchApp(App[None]):
             if arranged.floor_rows:
                 self._show_floor()
             self._steps.show(self._step_rows())
-        remark, with_floor = self._desk.remark(time.monotonic()), arranged.floor_rows > 0
-        self._rule.show([rule(width, glyphs, with_floor, bool(self._drawing.shut), remark)])
+        remark = self._desk.remark(time.monotonic())
+        self._rule.show([rule(width, glyphs, arranged.floor_rows > 0, bool(self._drawing.shut), remark)])
         if self._mode is Mode.ANSWERING:
             self._lines.show(answers(*self._asked, width, arranged.feed_rows, glyphs))
         else:
@@ -195,8 +193,7 @@ class WatchApp(App[None]):
         self._drawing.aim(view.place if view is not None else None)
         if view is not None:
             self._drawing.tell_time(seconds_of(view.clock))
-            robot = (view.pose.x, view.pose.y) if view.pose is not None else None
-            along = sight.going_along(self._sight, self._drawing.scale, robot)
+            along = sight.going_along(self._sight, self._drawing.scale, self._robot())
             if along != self._sight:
                 self._look(along)
         self._floor.show(self._drawing.still, self._drawing.moving(view, self._kept, self._lost))
