@@ -231,9 +231,11 @@ def _way_to(draft: Draft, place: int) -> float:
 
 
 def _ask(draft: Draft, _: Action) -> None:
-    block = draft.block()
+    """Ask, with the time that is left: all of it, or, when asked again, what the interruption left."""
+    block, deadline = draft.block(), draft.state.timers.get(Timer.UP_TO)
+    left = block.seconds or 0.0 if deadline is None else deadline - draft.stamp
     draft.state.answer = ""
-    draft.effects.append(Asked(block.text, block.answers, block.seconds or 0.0, block.word))
+    draft.effects.append(Asked(block.text, block.answers, left, block.word))
 
 
 def _silence(draft: Draft, _: Action) -> None:

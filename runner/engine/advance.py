@@ -115,7 +115,7 @@ def _run_timers(draft: Draft, stamp: float) -> None:
         due = [(deadline, timer.value, timer) for timer, deadline in draft.state.timers.items() if deadline <= stamp]
         end_by = None if draft.state.end_by is None else draft.state.end_by - draft.state.clock
         if end_by is not None and end_by <= stamp and all(end_by <= deadline for deadline, _, _ in due):
-            draft.stamp = end_by
+            draft.stamp = max(end_by, draft.state.now)  # the clock may have been set past it
             draft.state.end_by = None
             _happen(draft, Event.END_BY_TIME)
         elif due:

@@ -163,8 +163,8 @@ def loop_fragment(bound: str, paced: bool) -> Fragment:
         State("next lap", _bounded(guard, stops, Row(Event.AT_ONCE, LOOP_PAUSE) if paced else into_lap)),
     ]
     if paced:
-        stop = Action(Verb.STOP, timer=Timer.LAP)
-        rows = (Row(Event.LAP_DUE, target, lap), Row(Event.SKIP, target, (stop, *lap)))
+        skipped = (Action(Verb.HALT), Action(Verb.STOP, timer=Timer.LAP), *lap)
+        rows = (Row(Event.LAP_DUE, target, lap), Row(Event.SKIP, target, skipped))
         start = Action(Verb.START_LAP, timer=Timer.LAP)
         states.append(State("until the next lap", rows, (start,), resume=LOOP_PAUSE, restart=LOOP_PAUSE))
     if looks_again:
