@@ -104,7 +104,7 @@ def inputs(machine: Machine, chosen: list[tuple[str, int, float]]) -> tuple[list
                 ends = (Event.ARRIVED, *GOAL_ENDS)
                 give(GoalNews(now, state.goal or 0, ends[number % len(ends)]))
             case "old goal":
-                give(GoalNews(now, number % (state.goals_sent + 2), Event.FAILED))
+                give(GoalNews(now, number % (state.goals_sent + 1), Event.FAILED))
             case "done" | "not done":
                 give(ActionNews(now, state.action or 0, what == "done"))
             case "see":
