@@ -55,12 +55,9 @@ class World:
     def holds(self, asked: Expression, watch: float, loop: Loop | None) -> bool:
         """`watch` is the time on the wall at which the watch of the clock began."""
         match asked.kind:
-            case Kind.AND:
-                return all(self.holds(part, watch, loop) for part in asked.parts)
-            case Kind.OR:
-                return any(self.holds(part, watch, loop) for part in asked.parts)
-            case Kind.NOT:
-                return not self.holds(asked.parts[0], watch, loop)
+            case Kind.AND | Kind.OR | Kind.NOT:
+                parts = [self.holds(part, watch, loop) for part in asked.parts]
+                return {Kind.AND: all(parts), Kind.OR: any(parts), Kind.NOT: not parts[0]}[asked.kind]
             case Kind.LAST_LEG:
                 return self.last_leg is not None and self.last_leg.value == asked.word
             case Kind.ANSWER:

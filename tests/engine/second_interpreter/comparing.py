@@ -26,7 +26,7 @@ from runner.engine.values import (
     StepBegan,
 )
 from runner.engine.watching import next_deadline
-from runner.language.mission import Ask, Charge, Go, Mark, Mission, Order, Visit, Wait
+from runner.language.mission import Ask, Charge, Go, Mark, Mission, Visit, Wait
 from runner.machine.compiler import compile_mission
 from runner.machine.table import Machine
 from runner.machine.table_checks import check_table
@@ -62,8 +62,8 @@ def told(machine: Machine, effect: Effect) -> Effect:
     match effect:
         case StepBegan(step=step):
             return replace(effect, step=0, text="", line=machine.steps[step].mark.line)
-        case OrderBegan(step=step):
-            return replace(effect, step=None if step is None else machine.steps[step].mark.line)
+        case OrderBegan():
+            return replace(effect, step=None)
         case Ended(reason=reason):
             return replace(effect, reason=reason if reason == AS_WRITTEN else "")
         case OperatorActed(action=action):
@@ -99,22 +99,30 @@ class Both(Play):
     def __init__(self, mission: Mission, machine: Machine, chance: random.Random, seen: Counter[str]) -> None:
         super().__init__(machine, chance, seen)
         self.timely = timely(mission)
+        self.shuffled: Counter[int] = Counter()
         self.second = Interpreter(mission, length, self.order)
 
-    def order(self, seed: int, line: int, begun: int, places: int) -> list[int]:
-        """The order of a shuffled visit. LANGUAGE.md leaves it to chance, so it is the engine's own."""
-        [number] = (
+    def order(self, seed: int, line: int, places: int) -> list[int]:
+        """The order of a shuffled visit. LANGUAGE.md leaves it to chance, so it is the engine's own: of the blocks made
+        of this step (each leg of a visit has an `otherwise` of its own), the one that the engine has begun once more.
+        """
+        number = next(
             number
-            for number, block in enumerate(self.machine.blocks)
-            if block.order is Order.SHUFFLED
-            and block.step is not None
-            and self.machine.steps[block.step].mark.line == line
+            for number, visit in sorted(self.state.visits.items())
+            if self.line(number) == line and visit.begun > self.shuffled[number]
         )
-        return sorted(range(places), key=lambda index: sha256(f"{seed},{number},{begun},{index}".encode()).digest())
+        self.shuffled[number] += 1
+        drawn = [f"{seed},{number},{self.shuffled[number]},{index}".encode() for index in range(places)]
+        return sorted(range(places), key=lambda index: sha256(drawn[index]).digest())
+
+    def line(self, block: int) -> int | None:
+        step = self.machine.blocks[block].step
+        return None if step is None else self.machine.steps[step].mark.line
 
     def give(self, given: Input) -> None:
         self.inputs.append(given)
         self.state, effects = advance(self.machine, self.state, given)
+        self.last_goal = max(self.last_goal, self.state.goal or 0)
         ours = self.second.take(given)
         theirs = [told(self.machine, effect) for effect in effects]
         theirs = [one for one in theirs if not isinstance(one, StepBegan) or one.line in self.timely]

@@ -1,4 +1,4 @@
-"""What the interpreter keeps of a course of steps (the mission's own, or a standing order's), and what interrupts it."""
+"""What is kept of a course of steps, the mission's own or a standing order's, and what interrupts it."""
 
 from __future__ import annotations
 
@@ -26,23 +26,23 @@ Told = Seen | GoalNews | ActionNews | Timer | Word
 Walk = Generator[None, Told, None]
 
 
-class SkipStep(Exception):
+class SkipStep(Exception):  # noqa: N818 - no error, but news
     """A person skips the present step."""
 
 
-class StepAnew(Exception):
+class StepAnew(Exception):  # noqa: N818 - no error, but news
     """The present step begins anew."""
 
 
-class LegTimeOver(Exception):
+class LegTimeOver(Exception):  # noqa: N818 - no error, but news
     """`within` or `give up after` ran out."""
 
 
-class LegArrived(Exception):
+class LegArrived(Exception):  # noqa: N818 - no error, but news
     """The robot is there."""
 
 
-class MissionEnds(Exception):
+class MissionEnds(Exception):  # noqa: N818 - no error, but news
     def __init__(self, ending: Ending, reason: str = "") -> None:
         super().__init__(ending)
         self.ending, self.reason = ending, reason
@@ -76,7 +76,6 @@ class Course:
     frozen: bool = False
     watched: Watched | None = None
     question: Ask | None = None
-    line: int = 0
 
     def freeze(self, now: float) -> None:
         self.timers = {timer: deadline - now for timer, deadline in self.timers.items()}

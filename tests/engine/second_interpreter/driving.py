@@ -25,7 +25,7 @@ from runner.engine.values import (
 )
 from runner.language.mission import Mark, Mission, Recovery, RecoveryKind, RetryRule
 from runner.machine.table import Event, Outcome, Timer
-from runner.site.values import Place, Pose
+from runner.site.values import Place
 from tests.engine.second_interpreter.asking import World
 from tests.engine.second_interpreter.courses import (
     Course,
@@ -64,14 +64,10 @@ class Driver:
         self.speed = min(mission.limits.speed or mission.robot.speed, mission.robot.speed)
         self.at: Place | None = mission.start
         """The place the last leg arrived at, None if it did not."""
-        self.pose: Pose = mission.start.pose
         self.seen: Seen | None = None
         self.goal: int | None = None
         self.action: int | None = None
         self.goals = self.actions = self.legs = self.incidents = 0
-
-    def see(self, seen: Seen) -> None:
-        self.seen, self.pose = seen, seen.pose
 
     @property
     def driven(self) -> float:
@@ -208,7 +204,9 @@ class Driver:
         """Whether the leg drives again after it."""
         if recovery.kind is RecoveryKind.REST:
             self.halt()
-            yield from self._rest(recovery.amount, course)
+            with course.timed(Timer.REST, self.world.now + recovery.amount):
+                while (yield) not in (Timer.REST, Word.ON):
+                    pass
             return True
         self._command(recovery)
         with course.timed(Timer.ACTION, self.world.now + ACTION_S):

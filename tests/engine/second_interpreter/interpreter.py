@@ -42,8 +42,8 @@ from tests.engine.second_interpreter.courses import (
 from tests.engine.second_interpreter.walking import Walker
 
 Lengths = Callable[[Place, Place], float]
-Shuffle = Callable[[int, int, int, int], list[int]]
-"""From the seed, the line of the visit, how often it has begun, and the number of places: their order."""
+Shuffle = Callable[[int, int, int], list[int]]
+"""From the seed, the line of the visit, and the number of places: their order."""
 
 FIRST_OF_EQUALS = (Timer.ACTION, Timer.GIVE_UP, Timer.LAP, Timer.LEG, Timer.REST, Timer.UP_TO, Timer.WAIT)
 
@@ -119,7 +119,7 @@ class Interpreter:
         match given:
             case Seen():
                 self.world.battery = given.battery
-                self.driver.see(given)
+                self.driver.seen = given
                 if not self.held:
                     self._tell(given)
             case GoalNews() if given.event is not None and given.goal_id == self.driver.goal:
@@ -139,7 +139,7 @@ class Interpreter:
                 pass
 
     def _answer(self, given: Answer) -> None:
-        question = self.courses[-1].question
+        question = None if self.held else self.courses[-1].question
         answers = {answer.lower(): answer for answer in question.answers} if question else {}
         answer = answers.get(given.word.lower())
         if answer is None:
@@ -150,9 +150,9 @@ class Interpreter:
         self._tell(Word.ANSWERED)
 
     def _act(self, given: Operator) -> None:
-        accepted = given.event in (Event.SKIP, Event.ABORT) or self.held == (given.event is Event.RELEASE)
+        accepted = self.held or given.event is not Event.RELEASE
         self.effects.append(OperatorActed(given.event.value, given.who, accepted))
-        if not accepted:
+        if not accepted or (self.held and given.event is Event.HOLD):
             return
         course = self.courses[-1]
         match given.event:
@@ -241,7 +241,7 @@ class Interpreter:
         order = self.mission.orders[first]
         self.driver.halt()
         self.courses[-1].freeze(self.world.now)
-        self.effects.append(OrderBegan(order.name, self.courses[-1].line))
+        self.effects.append(OrderBegan(order.name, None))
         self._set_out(Course(order))
         return True
 

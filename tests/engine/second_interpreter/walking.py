@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from collections import Counter
 from collections.abc import Callable, Generator
-from math import hypot
+from math import ceil, hypot
 
 from runner.engine.values import Answered, Asked, Counted, Effect, Notified, StartCharging, StepBegan
 from runner.language.expressions import Condition
@@ -35,6 +34,9 @@ from tests.engine.second_interpreter.driving import Drive, Driver
 
 Around = tuple[Loop, ...]
 
+ROUNDING = 1e-9
+"""A lap that ends on a multiple of its interval, but for the last digits, ends on it."""
+
 
 class Walker:
     """Walks steps. `scope` is the loop that `laps` means, None outside of one; `around` are all loops around."""
@@ -45,14 +47,13 @@ class Walker:
         world: World,
         effects: list[Effect],
         length: Callable[[Place, Place], float],
-        shuffle: Callable[[int, int, int, int], list[int]],
+        shuffle: Callable[[int, int, int], list[int]],
     ) -> None:
         self.world, self.effects = world, effects
         self.driver = Driver(mission, world, effects)
         self.length, self.shuffle = length, shuffle
         self.began = 0.0
         self.seed = 0
-        self.shuffled: Counter[int] = Counter()
 
     def walk(self, steps: tuple[Step, ...], course: Course, scope: Loop | None = None, around: Around = ()) -> Walk:
         for step in steps:
@@ -77,7 +78,8 @@ class Walker:
                 holds = self.world.holds(step.condition.expression, self.began, scope)
                 yield from self.walk(step.then if holds else step.otherwise, course, scope, around)
             case Run():
-                yield from self.walk(step.steps, course, None, around)
+                # The reader lets nothing in a routine ask for laps of a loop outside, so the scope may stay.
+                yield from self.walk(step.steps, course, scope, around)
             case Count():
                 self.world.counts[step.name] = self.world.counts.get(step.name, 0) + step.by
                 self.effects.append(Counted(step.name, self.world.counts[step.name]))
@@ -86,8 +88,7 @@ class Walker:
             case End():
                 raise MissionEnds(Ending.COMPLETED if step.completed else Ending.GIVEN_UP, step.because)
 
-    def _begins(self, mark: Mark, course: Course, around: Around) -> None:
-        course.line = mark.line
+    def _begins(self, mark: Mark, around: Around) -> None:
         self.effects.append(StepBegan(0, "", mark.line, tuple(loop.laps for loop in around)))
 
     # --- legs -----------------------------------------------------------------------------------------------------
@@ -106,7 +107,7 @@ class Walker:
 
     def _leg(self, drive: Drive, course: Course, around: Around) -> Generator[None, Told, Outcome]:
         while True:
-            self._begins(drive.mark, course, around)
+            self._begins(drive.mark, around)
             try:
                 return (yield from self.driver.leg(drive, course))
             except StepAnew:
@@ -123,14 +124,13 @@ class Walker:
     def _visit(self, step: Visit, course: Course, scope: Loop | None, around: Around) -> Walk:
         left = list(range(len(step.places)))
         if step.order is Order.SHUFFLED:
-            self.shuffled[step.mark.line] += 1
-            left = self.shuffle(self.seed, step.mark.line, self.shuffled[step.mark.line], len(left))
+            left = self.shuffle(self.seed, step.mark.line, len(left))
         while left:
             choice = min(left, key=lambda one: self._far(step, one)) if step.order is Order.NEAREST else left[0]
             left.remove(choice)
             mark, place = step.places[choice]
             if step.each:
-                yield from self.walk(step.each[choice], course, None, around)
+                yield from self.walk(step.each[choice], course, scope, around)
             else:
                 drive = Drive(mark, place, False, step.rule, step.within)
                 yield from self._go(drive, step.otherwise, course, scope, around)
@@ -139,14 +139,16 @@ class Walker:
         place = step.places[choice][1]
         if self.driver.at is not None:
             return self.length(self.driver.at, place)
-        return hypot(self.driver.pose.x - place.pose.x, self.driver.pose.y - place.pose.y)
+        if self.driver.seen is None:
+            return 0.0
+        return hypot(self.driver.seen.pose.x - place.pose.x, self.driver.seen.pose.y - place.pose.y)
 
     # --- standing still -------------------------------------------------------------------------------------------
 
     def _wait(self, step: Wait, course: Course, scope: Loop | None, around: Around) -> Walk:
         for_time = step.until is None
         while True:
-            self._begins(step.mark, course, around)
+            self._begins(step.mark, around)
             timer, seconds = (Timer.WAIT, step.seconds) if for_time else (Timer.UP_TO, step.up_to)
             try:
                 over = yield from self._until(step.until, timer, seconds, course, scope)
@@ -183,7 +185,7 @@ class Walker:
 
     def _ask(self, step: Ask, course: Course, around: Around) -> Walk:
         while True:
-            self._begins(step.mark, course, around)
+            self._begins(step.mark, around)
             try:
                 with course.timed(Timer.UP_TO, self.world.now + step.up_to):
                     yield from self._question(step, course)
@@ -216,7 +218,7 @@ class Walker:
             return
         over = None
         while outcome is Outcome.ARRIVED:
-            self._begins(step.mark, course, around)
+            self._begins(step.mark, around)
             self._plug_in()
             try:
                 over = yield from self._until(step.until, Timer.UP_TO, step.up_to, course, scope, self._plug_in)
@@ -236,7 +238,7 @@ class Walker:
         loop = Loop(self.world.now, self.world.wall)
         while self._goes_on(step, loop):
             if step.every is not None and loop.laps > 0:
-                yield from self._pause(step, loop, course, around)
+                yield from self._pause(step, loop, course)
                 if not self._goes_on(step, loop):
                     return
             loop.laps += 1
@@ -252,18 +254,13 @@ class Walker:
             return loop.laps < step.times
         return step.seconds is None or self.world.now - loop.entered < step.seconds
 
-    def _pause(self, step: Repeat, loop: Loop, course: Course, around: Around) -> Walk:
+    def _pause(self, step: Repeat, loop: Loop, course: Course) -> Walk:
         assert step.every is not None
         while True:
-            lasted = self.world.now - loop.lap_began
             intervals = 1
-            if lasted > step.every:
-                if step.overrun is Overrun.AT_ONCE:
-                    return
-                intervals = -int(-lasted // step.every)
-            due = loop.lap_began + intervals * step.every
-            if due <= self.world.now:
-                return
+            if step.overrun is Overrun.NEXT_INTERVAL:
+                intervals = max(1, ceil((self.world.now - loop.lap_began) / step.every - ROUNDING))
+            due = max(self.world.now, loop.lap_began + intervals * step.every)
             try:
                 with course.timed(Timer.LAP, due):
                     while (yield) is not Timer.LAP:
