@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator
+from difflib import unified_diff
 
+from runner.machine.codec import to_json
 from runner.machine.table import ALWAYS, Action, Address, Block, Exit, Guard, Machine, Row, State, Test
 from runner.machine.wording import say_clock, say_seconds
 
@@ -169,5 +171,21 @@ def _plain(text: str) -> str:
     return text.replace("\\", "/").replace('"', "'").replace(":", " -").replace(";", ",")
 
 
-FORMATS: dict[str, Callable[[Machine], str]] = {"table": as_text, "dot": as_dot, "mermaid": as_mermaid}
+def as_json(machine: Machine) -> str:
+    """The machine as a record keeps it; reading it gives the same machine."""
+    return to_json(machine) + "\n"
+
+
+def differences(one: Machine, other: Machine) -> list[str]:
+    """The lines in which two machines differ, as a unified diff of their tables; none where they are the same."""
+    lines = unified_diff(as_text(one).splitlines(), as_text(other).splitlines(), "recorded", "now", lineterm="", n=1)
+    return [] if one == other else list(lines) or ["They differ in what the table does not show."]
+
+
+FORMATS: dict[str, Callable[[Machine], str]] = {
+    "table": as_text,
+    "dot": as_dot,
+    "mermaid": as_mermaid,
+    "json": as_json,
+}
 """The forms in which a machine can be printed, by the word for it."""

@@ -111,11 +111,22 @@ def test_a_mistake_in_a_command_is_told_in_words(words: tuple[str, ...], sentenc
     assert "Traceback" not in done.stderr
 
 
-@pytest.mark.parametrize("form", ["table", "dot", "mermaid"])
+def test_a_machine_is_compared_with_that_of_a_run(home: dict[str, str]) -> None:
+    assert trundle("run", "short-errand", "--pace", "max", "--plain", env=home).returncode == 0
+    same = trundle("machine", "short-errand", "--compare", "latest", env=home)
+    assert (same.returncode, same.stdout) == (0, "The run's machine is the same.\n")
+    other = trundle("machine", "evening-round", "--compare", "latest", env=home)
+    assert other.returncode == 0
+    assert "+machine: Evening specimen round" in other.stdout
+
+
+@pytest.mark.parametrize("form", ["table", "dot", "mermaid", "json"])
 def test_the_machine_is_printed_in_each_form(form: str, home: dict[str, str]) -> None:
     shown = trundle("machine", "short-errand", "--as", form, env=home)
     assert shown.returncode == 0
-    assert {"table": "machine: ", "dot": "digraph ", "mermaid": "stateDiagram-v2"}[form] in shown.stdout
+    assert {"table": "machine: ", "dot": "digraph ", "mermaid": "stateDiagram-v2", "json": '{"name":'}[
+        form
+    ] in shown.stdout
 
 
 def test_a_blocked_corridor_is_got_through_and_the_report_says_how(home: dict[str, str]) -> None:
