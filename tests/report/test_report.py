@@ -245,6 +245,7 @@ def test_runs_as_json_gives_mission_times_outcome_and_legs(runs: Path, capsys: p
             "legs_arrived": 2,
             "legs_ended": 5,
             "trouble": "",
+            "now": None,
         }
     ]
 
