@@ -17,6 +17,7 @@ from backends.sim.memory import Memory
 from backends.sim.people import People
 from backends.sim.robot import Robot
 from backends.sim.sensing import Scanner
+from backends.sim.trouble import Trouble
 from backends.sim.world import World
 from runner.site.floor import rasterize
 from runner.site.values import Pose
@@ -57,6 +58,7 @@ class Simulator:
     def __init__(self, setup: Setup) -> None:
         """ValueError, with a sentence, where the robot cannot stand at its start."""
         self.setup = setup
+        self.trouble = Trouble()
         streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(3)]
         floor = rasterize(setup.site)
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
