@@ -86,7 +86,7 @@ class Robot:
 
     def halt(self, now: float) -> None:
         """End the goal and any action, and stop."""
-        if easing := self._easing.stop():
+        if (easing := self._easing.stop()) is not None:
             self.news.append(ActionReport(now, easing, False, "The robot was halted."))
         self._answer_replan(now, False, "The robot was halted.")
         if self._goal is not None:
@@ -108,7 +108,7 @@ class Robot:
 
     def ease_back(self, action_id: int, distance: float, now: float) -> None:
         """Drive backward before anything else."""
-        if replaced := self._easing.stop():
+        if (replaced := self._easing.stop()) is not None:
             self.news.append(ActionReport(now, replaced, False, "Another drive backward was asked for."))
         self._body.charge.charging = False
         self._easing.begin(action_id, distance)

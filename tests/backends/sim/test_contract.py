@@ -11,7 +11,7 @@ from hypothesis import strategies as st
 from backends.contract import ActionReport, Goal, GoalReport, Report
 from backends.sim.simulator import Simulator
 from runner.site.values import Carton, DoorChange, Pose, Walkers
-from tests.backends.sim.support import ENDS, TWO_ROOMS, Drive, start
+from tests.backends.sim.support import ENDS, HALL, TWO_ROOMS, Drive, start
 
 
 @dataclass(frozen=True)
@@ -106,6 +106,15 @@ def test_every_action_is_answered_exactly_once(commands: list[Command]) -> None:
     answered = Counter(report.action_id for report in play(commands, [5.0]) if isinstance(report, ActionReport))
     asked = [i for i, one in enumerate(commands) if one.name in ("clear", "replan", "ease back", "relocate")]
     assert answered == Counter(asked)
+
+
+def test_an_action_numbered_zero_is_answered_when_the_robot_is_halted() -> None:
+    drive = start(HALL, Pose(2, 4, 0))
+    drive.simulator.ease_back(0, 0.5)
+    drive.simulator.halt()
+    answer = drive.until_answer(0, 2.0)
+    assert answer is not None
+    assert not answer.done
 
 
 @FEW
