@@ -17,6 +17,7 @@ NEAR = Amount("The distance to the robot", LENGTH, "0.5 m", "50 m")
 STAYS = Amount("The time a carton stays", DURATION, "1 s", "168 h")
 COUNT = Count("The number of walkers", 1, 200)
 WALKING = Amount("The walking speed", SPEED, "0.1 m/s", "3 m/s")
+UNEVEN = Amount("The unevenness of the floor", LENGTH, "0 mm", "50 mm")
 DEVIATION = Amount("The spread of walking speeds", SPEED, "0 m/s", "1 m/s")
 
 CONDITIONS_KEYS: Keys = {
@@ -26,6 +27,7 @@ CONDITIONS_KEYS: Keys = {
     "cartons": "[{at: [20 m, 12 m], size: 60 cm x 40 cm}]",
     "doors": "[{shut: pharmacy door, at: 5 min}]",
     "walkers": "[{count: 4}]",
+    "uneven floor": "5 mm",
 }
 CARTON_KEYS: Keys = {
     "at": "[20 m, 12 m]",
@@ -58,6 +60,7 @@ def read_conditions_page(page: Page, site: Site) -> Conditions:
         cartons=tuple(_read_carton(page, node, site, coordinates) for node in fields.items("cartons")),
         doors=tuple(_read_door_change(page, node, site) for node in fields.items("doors")),
         walkers=tuple(_read_walkers(page, node, site) for node in fields.items("walkers")),
+        uneven_floor=fields.number_or("uneven floor", UNEVEN, 0.0),
     )
 
 

@@ -1,26 +1,24 @@
-"""Robot files: outline, speeds, lidar and battery. The format is written down in FILES.md."""
+"""Robot files: outline, speeds and battery; the senses are read in `senses`. The format is in FILES.md."""
 
 from __future__ import annotations
 
 from runner.language.fields import Fields, Keys, mapping
-from runner.language.geometry import polygon_area, read_coordinates, read_points
+from runner.language.geometry import Coordinates, polygon_area, read_coordinates, read_points
 from runner.language.nodes import Scalar
 from runner.language.pages import Page
 from runner.language.phrases import parse_size
 from runner.language.quantities import (
     ACCELERATION,
-    ANGLE,
     ENERGY,
     LENGTH,
     POWER,
-    RATE,
     SPEED,
     TURN_ACCELERATION,
     TURN_SPEED,
     Amount,
-    Count,
 )
-from runner.site.values import Battery, Lidar, Point, RobotDescription
+from runner.language.senses import parse_unseen_space, read_filters, read_lidar, read_posts, read_sweep
+from runner.site.values import Battery, Point, RobotDescription, UnseenSpace
 
 SIDE = Amount("A side of the footprint", LENGTH, "10 cm", "3 m")
 MOST_FROM_CENTER = 3.0  # meters
@@ -35,18 +33,13 @@ ROBOT_KEYS: Keys = {
     "turn acceleration": "160 deg/s2",
     "lidar": "{field of view: 270 deg, beams: 180, range: 12 m, rate: 8 Hz, noise: 1.5 cm}",
     "battery": "{capacity: 240 Wh, idle: 22 W, driving: 85 W, charging: 300 W}",
-}
-LIDAR_KEYS: Keys = {
-    "field of view": "270 deg",
-    "beams": "180",
-    "range": "12 m",
-    "rate": "8 Hz",
-    "noise": "1.5 cm",
-    "forward": "15 cm",
+    "posts": "[{at: [25 cm, 20 cm], thickness: 3 cm}]",
+    "sweep": "{field of view: 90 deg, columns: 60, range: 3.5 m, period: 2 s}",
+    "filters": "{shadow points: off}",
+    "unseen space": "keep out",
 }
 BATTERY_KEYS: Keys = {"capacity": "240 Wh", "idle": "22 W", "driving": "85 W", "charging": "300 W"}
 
-NO_LIDAR = Lidar(0.0, 0, 0.0, 0.0, 0.0)
 NO_BATTERY = Battery(0.0, 0.0, 0.0, 0.0)
 
 
@@ -55,9 +48,10 @@ def read_robot_page(page: Page) -> RobotDescription | None:
     if page.root is None:
         return None
     fields = Fields(page, page.root, "a robot", ROBOT_KEYS)
+    coordinates = read_coordinates(fields)
     return RobotDescription(
         name=fields.name("robot"),
-        footprint=_read_footprint(fields),
+        footprint=_read_footprint(fields, coordinates),
         speed=fields.number("speed", Amount("The speed", SPEED, "0.05 m/s", "3 m/s")),
         reverse_speed=fields.number("reverse speed", Amount("The reverse speed", SPEED, "0.01 m/s", "3 m/s")),
         acceleration=fields.number("acceleration", Amount("The acceleration", ACCELERATION, "0.05 m/s2", "5 m/s2")),
@@ -65,12 +59,16 @@ def read_robot_page(page: Page) -> RobotDescription | None:
         turn_acceleration=fields.number(
             "turn acceleration", Amount("The turn acceleration", TURN_ACCELERATION, "5 deg/s2", "2000 deg/s2")
         ),
-        lidar=_read_lidar(fields),
+        lidar=read_lidar(fields),
         battery=_read_battery(fields),
+        posts=read_posts(fields, coordinates),
+        sweep=read_sweep(fields),
+        filters=read_filters(fields),
+        unseen_space=fields.phrase("unseen space", parse_unseen_space, UnseenSpace.KEEP_OUT),
     )
 
 
-def _read_footprint(fields: Fields) -> tuple[Point, ...]:
+def _read_footprint(fields: Fields, coordinates: Coordinates) -> tuple[Point, ...]:
     node = fields.need("footprint")
     if node is None:
         return ()
@@ -81,29 +79,13 @@ def _read_footprint(fields: Fields) -> tuple[Point, ...]:
         )
         x, y = length / 2.0, width / 2.0
         return (x, y), (-x, y), (-x, -y), (x, -y)
-    corners = read_points(page, node, read_coordinates(fields), 3, "a footprint")
+    corners = read_points(page, node, coordinates, 3, "a footprint")
     if corners and polygon_area(corners) < 0.01:
         page.report(node, "This footprint encloses next to nothing.", "List its corners in order, around the robot.")
     if any(abs(x) > MOST_FROM_CENTER or abs(y) > MOST_FROM_CENTER for x, y in corners):
         sentence = f"A corner of this footprint is over {MOST_FROM_CENTER:.0f} m from the turning center."
         page.report(node, sentence, "Check the unit: is it in meters?")
     return corners
-
-
-def _read_lidar(fields: Fields) -> Lidar:
-    node = fields.need("lidar")
-    body = None if node is None else mapping(fields.page, node, '"lidar"', ROBOT_KEYS["lidar"])
-    if body is None:
-        return NO_LIDAR
-    inner = Fields(fields.page, body, "a lidar", LIDAR_KEYS)
-    return Lidar(
-        field_of_view=inner.number("field of view", Amount("The field of view", ANGLE, "10 deg", "360 deg")),
-        beams=inner.count("beams", Count("The number of beams", 8, 4000)),
-        range_max=inner.number("range", Amount("The range", LENGTH, "0.5 m", "100 m")),
-        rate=inner.number("rate", Amount("The rate of scans", RATE, "0.5 Hz", "100 Hz")),
-        noise=inner.number("noise", Amount("The noise of a range", LENGTH, "0 cm", "50 cm")),
-        forward=inner.number_or("forward", Amount("The mounting of the lidar", LENGTH, "-2 m", "2 m"), 0.0),
-    )
 
 
 def _read_battery(fields: Fields) -> Battery:

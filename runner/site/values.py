@@ -9,6 +9,7 @@ counterclockwise from +x. Nothing here reads a file (that is `runner.language`) 
 from __future__ import annotations
 
 from dataclasses import dataclass, field
+from enum import StrEnum
 
 Point = tuple[float, float]
 """x, y in the site frame, meters."""
@@ -100,6 +101,55 @@ class Lidar:
     """Standard deviation of one range, meters."""
     forward: float = 0.0
     """How far ahead of the robot's turning center it is mounted, meters."""
+    dropouts: float = 0.0
+    """Share of the beams that do not come back although they should."""
+    latency: float = 0.0
+    """Seconds from a scan to its use."""
+    beam_width: float = 0.0
+    """Angle that a beam's light fills; a beam with no width sees no mixture of two surfaces."""
+    height: float = 0.0
+    """Of the scanning plane above the floor, meters; 0 where the floor is never met."""
+
+
+@dataclass(frozen=True, slots=True)
+class Sweep:
+    """A slow sensor that looks at one column after the other, each from the floor up to the height of the lidar.
+
+    It sees low things too. Once in `period` seconds it has looked at all of `field_of_view` radians ahead.
+    """
+
+    field_of_view: float
+    columns: int
+    range_max: float
+    period: float = 2.0
+    noise: float = 0.0
+    """Standard deviation of one range, meters."""
+    forward: float = 0.0
+    """How far ahead of the robot's turning center it is mounted, meters."""
+
+
+@dataclass(frozen=True, slots=True)
+class Post:
+    """An upright part of the robot itself that stands in the lidar's view: where, in the robot frame, and how thick."""
+
+    at: Point
+    thickness: float
+
+
+@dataclass(frozen=True, slots=True)
+class Filters:
+    """Which false returns of the lidar the robot takes out before it believes them."""
+
+    shadow_points: bool = True
+    own_body: bool = True
+    floor_returns: bool = True
+
+
+class UnseenSpace(StrEnum):
+    """What the robot does about space that it has not seen since it cleared its memory there."""
+
+    KEEP_OUT = "keep out"
+    DRIVE_SLOWLY = "drive slowly"
 
 
 @dataclass(frozen=True, slots=True)
@@ -129,6 +179,10 @@ class RobotDescription:
     turn_acceleration: float
     lidar: Lidar
     battery: Battery
+    posts: tuple[Post, ...] = ()
+    sweep: Sweep | None = None
+    filters: Filters = Filters()
+    unseen_space: UnseenSpace = UnseenSpace.KEEP_OUT
 
 
 @dataclass(frozen=True, slots=True)
@@ -181,3 +235,5 @@ class Conditions:
     cartons: tuple[Carton, ...] = ()
     doors: tuple[DoorChange, ...] = ()
     walkers: tuple[Walkers, ...] = field(default=())
+    uneven_floor: float = 0.0
+    """Standard deviation of the floor's height from one spot to the next, meters."""
