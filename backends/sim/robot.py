@@ -9,13 +9,17 @@ from __future__ import annotations
 from dataclasses import dataclass, replace
 from math import cos, sin
 
+import numpy as np
+from numpy.typing import NDArray
+
 from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report
 from backends.sim.body import Body
+from backends.sim.caution import Caution
 from backends.sim.easing import Easing
 from backends.sim.follower import STAND, Follower, Wish
 from backends.sim.memory import Memory
 from backends.sim.planner import Planner, Route
-from runner.site.values import Pose
+from runner.site.values import Pose, UnseenSpace
 
 PATIENCE_S = 1.0
 """An obstruction of the route must last this long before a new one is planned: people walk by."""
@@ -44,6 +48,7 @@ class Robot:
         self.route: Route | None = None
         self.route_number = 0
         self.follower = Follower(body.outline, body.drive)
+        self.caution = Caution(body.drive.limits, body.outline, memory)
         self._body = body
         self._planner = Planner(body.outline)
         self._easing = Easing(body)
@@ -147,7 +152,8 @@ class Robot:
         self._supervise(goal, now)
         if self.route is None or self._ending is not None:
             return STAND
-        wish = self.follower.steer(self.memory.field, self.route, self.pose, goal.pose, goal.speed)
+        fastest = min(goal.speed, self.caution.fastest(self.route, self.follower.covered, self.pose))
+        wish = self.follower.steer(self.memory.field, self.route, self.pose, goal.pose, fastest)
         if wish.arrived:
             self._ending = _Ending(GoalStatus.ARRIVED, "")
             self._end_when_still(now)
@@ -179,7 +185,7 @@ class Robot:
     def _attempt(self, goal: Goal, now: float, anew: bool) -> bool:
         """Plan once. Where that fails the old route is kept and followed as far as it goes, unless `anew`."""
         plan = self._planner.straight if goal.relative else self._planner.plan
-        route = plan(self.memory.field, self.pose, goal.pose)
+        route = plan(self._passable(), self.pose, goal.pose)
         self._next_attempt = now + BETWEEN_ATTEMPTS_S
         if route is None:
             self._attempts += 1
@@ -222,12 +228,19 @@ class Robot:
             return ""
         return f"The goal at {pose.x:.2f} m, {pose.y:.2f} m lies in a wall, too near to one, or off the floor."
 
+    def _passable(self) -> NDArray[np.float32]:
+        """The distance field to plan on: with what is unseen solid, unless the robot is told to drive there."""
+        told = self._body.drive.limits.unseen_space is UnseenSpace.DRIVE_SLOWLY
+        return self.memory.field if told else self.memory.without_unseen()
+
     def _why_no_route(self, goal: Goal) -> str:
         """The reason, from what the robot knows: its map, or what it remembers."""
         if self._planner.plan(self.memory.known, self.pose, goal.pose) is None:
             return "The map has no way to the goal."
         if not self._planner.fits(self.memory.field, goal.pose):
             return "Something that the map does not know stands at the goal."
+        if self._planner.plan(self.memory.field, self.pose, goal.pose) is not None:
+            return "Every way to the goal leads through space that the robot has cleared and not seen since."
         return "Something that the map does not know stands in every way to the goal."
 
 

@@ -9,14 +9,16 @@ from collections.abc import Sequence
 from datetime import datetime, timedelta
 
 import numpy as np
+from numpy.typing import NDArray
 
 from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry
 from backends.sim.belief import Localization
 from backends.sim.body import Body
-from backends.sim.memory import Memory
+from backends.sim.memory import Memory, surveyed
 from backends.sim.people import People
 from backends.sim.robot import Robot
 from backends.sim.sensing import Scanner
+from backends.sim.sweep import Sweeper
 from backends.sim.trouble import Trouble
 from backends.sim.world import World
 from runner.site.floor import rasterize
@@ -59,16 +61,19 @@ class Simulator:
         """ValueError, with a sentence, where the robot cannot stand at its start."""
         self.setup = setup
         self.trouble = Trouble()
-        streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(3)]
+        streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(8)]
         floor = rasterize(setup.site)
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
         self.world = World(setup.site, floor, setup.conditions, (setup.begins - midnight).total_seconds())
         self.body = Body(setup.robot, setup.start, self.world)
         start = (setup.start.x, setup.start.y)
         self.people = People(setup.conditions.walkers, setup.site, self.world, start, streams[0])
-        self.memory = Memory(floor.blocked(), self.body.outline, setup.robot.lidar)
+        mapped = floor.blocked()
+        self.memory = Memory(mapped, self.body.outline, setup.robot.lidar, surveyed(mapped, setup.site, setup.start))
         self.robot = Robot(self.body, self.memory, self.body.pose)
-        self._scanner = Scanner(setup.robot.lidar, streams[1])
+        uneven = setup.conditions.uneven_floor
+        self._scanner = Scanner(setup.robot, self.body.outline, uneven, TICKS_PER_S, streams[1], streams[3])
+        self._sweeper = None if setup.robot.sweep is None else Sweeper(setup.robot.sweep, TICKS_PER_S, streams[4])
         self._localization = Localization(streams[2], TICK_S)
         self._clock = VirtualClock(setup.begins)
         self._ticks = 0
@@ -139,9 +144,7 @@ class Simulator:
         self.people.advance(now, place, self.body.outline, TICK_S)
         robot = self.robot
         robot.pose = self._localization.estimate(self.body.pose)
-        if self._ticks % (IDLE_TICKS_PER_LOOK if robot.idle else self._ticks_per_look) == 0:
-            scan = self._scanner.look(self.body.pose, self.world.distance, bodies)
-            self.memory.take(scan, robot.pose)
+        self._sense(bodies)
         wish = robot.think(now)
         self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
         if now >= self._next_telemetry:
@@ -151,6 +154,20 @@ class Simulator:
             if robot.idle:
                 self._next_telemetry = max(self._next_telemetry, now + TELEMETRY_IDLE_S)
             robot.news.append(self._telemetry(now))
+
+    def _sense(self, people: NDArray[np.float64]) -> None:
+        """Look around, and take in what has been seen."""
+        robot, world = self.robot, self.world
+        idle = robot.idle
+        if self._ticks % (IDLE_TICKS_PER_LOOK if idle else self._ticks_per_look) == 0:
+            self._scanner.look(
+                self._ticks, self.body.pose, self.body.driven, robot.pose, world.distance, people,
+                self.trouble.lidar_blind,
+            )  # fmt: skip
+        if self._sweeper is not None and not idle:
+            self._sweeper.look(self.body.pose, robot.pose, world.distance, people, self.memory)
+        if scan := self._scanner.deliver(self._ticks, robot.pose):
+            self.memory.take(scan, robot.pose)
 
     def _telemetry(self, now: float) -> Telemetry:
         robot, body = self.robot, self.body

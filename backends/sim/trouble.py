@@ -1,4 +1,4 @@
-"""What is wrong with the robot right now, whatever made it so. Parts of the robot read it; only the faults change it."""
+"""What is wrong with the robot right now, whatever made it so. Parts of the robot read it, only faults change it."""
 
 from __future__ import annotations
 

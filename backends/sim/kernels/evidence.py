@@ -4,6 +4,9 @@ Evidence is counted in scans: a scan that hits a cell adds one, up to a cap; a s
 cell and comes back from beyond it takes one away. A beam that does not come back says nothing. Cells with evidence
 stand in a list, so that a scan costs by what is remembered and not by the size of the floor.
 
+The columns of a sweep count likewise, each for as many scans as are taken meanwhile. What only the sweep saw is low:
+the lidar looks over it, so its beams take nothing from it. Cells cleared and not seen since stand in their own list.
+
 `field` is the distance to the nearest solid cell of the map or remembered cell, right up to the radius of `disc`
 and the map's own beyond it.
 """
@@ -27,6 +30,8 @@ CELL = 0.05
 BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center to have passed it
 TURN = 2.0 * math.pi
 TILE = 16
+UNTOLD, PASSED, OPEN = 0, 1, 2
+BY_LIDAR, BY_SWEEP = 0, 1  # which sensor saw what stands in a cell
 
 
 @kernel
@@ -110,14 +115,18 @@ def restore(
 
 
 @kernel
-def passes(
+def looked(
     ranges: NDArray[Any], x: float, y: float, first: float, step: float, cell_x: float, cell_y: float, reach: float
-) -> bool:
-    """Whether the beam nearest to a cell's center, as wide as the step to the next, comes back from beyond the cell."""
+) -> int:
+    """What the beam nearest to a cell's center, as wide as the step to the next, tells of the cell.
+
+    `PASSED` where it comes back from beyond the cell, `OPEN` where it does not come back at all, else `UNTOLD`, as
+    where the cell is farther than `reach`.
+    """
     to_x, to_y = cell_x - x, cell_y - y
     apart = math.sqrt(to_x * to_x + to_y * to_y)
     if apart > reach:
-        return False
+        return UNTOLD
     bearing = math.atan2(to_y, to_x) - first
     bearing -= math.floor(bearing / TURN) * TURN
     beam = int(bearing / step + 0.5)
@@ -125,8 +134,10 @@ def passes(
     if beam >= ranges.shape[0]:
         beam, off = 0, TURN - bearing
     if off > 0.5 * step:
-        return False
-    return bool(apart + BEYOND < ranges[beam] < np.inf)
+        return UNTOLD
+    if ranges[beam] == np.inf:
+        return OPEN
+    return PASSED if apart + BEYOND < ranges[beam] else UNTOLD
 
 
 @kernel
@@ -142,7 +153,11 @@ def take_hits(
     evidence: NDArray[Any],
     seen: NDArray[Any],
     number: int,
+    amount: int,
     cap: int,
+    sensor: int,
+    by: NDArray[Any],
+    unseen: NDArray[Any],
     cells: NDArray[Any],
     count: int,
     field: NDArray[Any],
@@ -150,7 +165,8 @@ def take_hits(
 ) -> int:
     """Add the returns nearer than `trust` that the map does not explain; the new number of remembered cells.
 
-    A return within `tolerance` plus 1 % of its range of a mapped cell is that cell.
+    A return within `tolerance` plus 1 % of its range of a mapped cell is that cell. Each adds `amount`; `by` keeps
+    which sensor it was, the lidar before the sweep. What is seen occupied is not `unseen`.
     """
     columns = field.shape[1]
     for beam in range(ranges.shape[0]):
@@ -170,8 +186,11 @@ def take_hits(
                 continue
             cells[count] = row * columns + column
             count += 1
+            by[row, column] = sensor
+            unseen[row, column] = 0
             paint(field, disc, row, column)
-        evidence[row, column] = min(evidence[row, column] + 1, cap)
+        by[row, column] = min(by[row, column], sensor)
+        evidence[row, column] = min(evidence[row, column] + amount, cap)
     return count
 
 
@@ -186,24 +205,38 @@ def fade(
     evidence: NDArray[Any],
     seen: NDArray[Any],
     number: int,
+    amount: int,
+    sensor: int,
+    by: NDArray[Any],
     cells: NDArray[Any],
     count: int,
     lost: NDArray[Any],
     gone: int,
 ) -> tuple[int, int]:
-    """Take evidence from the cells that this scan saw through; the new number of remembered cells.
+    """Take `amount` of evidence from the cells that this scan saw through; the new number of remembered cells.
 
     Those forgotten are added to `lost`, of which `gone` are in use; the second number returned is how many then are.
     The field still has to be made right (`repaint`). Where `lost` is full, no more are forgotten this time.
     """
     columns = evidence.shape[1]
+    half = 0.5 * ranges.shape[0] * step
+    narrow = half < 0.25 * math.pi
+    middle_x, middle_y = math.cos(first + half - 0.5 * step), math.sin(first + half - 0.5 * step)
     index = 0
     while index < count and gone < lost.shape[0]:
         row, column = cells[index] // columns, cells[index] % columns
-        if seen[row, column] != number and passes(
-            ranges, x, y, first, step, (column + 0.5) * CELL, (row + 0.5) * CELL, reach
+        if narrow:  # a few columns of a sweep: most cells lie well beside them
+            to_x, to_y = (column + 0.5) * CELL - x, (row + 0.5) * CELL - y
+            along = to_x * middle_x + to_y * middle_y
+            if along < 0.0 or along > reach or abs(to_x * middle_y - to_y * middle_x) > along:
+                index += 1
+                continue
+        if (
+            seen[row, column] != number
+            and by[row, column] <= sensor
+            and looked(ranges, x, y, first, step, (column + 0.5) * CELL, (row + 0.5) * CELL, reach) == PASSED
         ):
-            evidence[row, column] -= 1
+            evidence[row, column] = max(evidence[row, column] - amount, 0)
             if evidence[row, column] == 0:
                 lost[gone] = cells[index]
                 gone += 1
@@ -212,6 +245,43 @@ def fade(
                 continue
         index += 1
     return count, gone
+
+
+@kernel
+def reveal(
+    ranges: NDArray[Any],
+    x: float,
+    y: float,
+    first: float,
+    step: float,
+    reach: float,
+    trust: float,
+    unseen: NDArray[Any],
+    hidden: NDArray[Any],
+    count: int,
+) -> int:
+    """See anew what was cleared, the cells in `hidden`; the new number of those still unseen.
+
+    A beam that comes back from beyond shows a cell to be free. Of beams that do not come back it takes as many as
+    `unseen` says, nearer than `trust`: the lidar sees what is near, so nothing there sends nothing back.
+    """
+    columns = unseen.shape[1]
+    index = 0
+    while index < count:
+        row, column = hidden[index] // columns, hidden[index] % columns
+        if unseen[row, column] > 0:
+            cell_x, cell_y = (column + 0.5) * CELL, (row + 0.5) * CELL
+            told = looked(ranges, x, y, first, step, cell_x, cell_y, reach)
+            if told == PASSED:
+                unseen[row, column] = 0
+            elif told == OPEN and (cell_x - x) ** 2 + (cell_y - y) ** 2 < trust * trust:
+                unseen[row, column] -= 1
+        if unseen[row, column] == 0:
+            count -= 1
+            hidden[index] = hidden[count]
+            continue
+        index += 1
+    return count
 
 
 @kernel
@@ -227,13 +297,13 @@ def forget(
     count: int,
     field: NDArray[Any],
     disc: NDArray[Any],
+    lost: NDArray[Any],
 ) -> int:
     """Forget the cells within `radius` of a pose, or of these only those under an outline where it has corners.
 
-    Returns the new number of remembered cells.
+    Those forgotten are listed in `lost`, which has room for all; returns how many they are.
     """
     columns = field.shape[1]
-    lost = np.empty(count, dtype=np.int64)
     gone = 0
     index = 0
     while index < count:
@@ -252,7 +322,7 @@ def forget(
         index += 1
     if gone:
         repaint(field, known, disc, cells, count, lost[:gone])
-    return count
+    return gone
 
 
 @kernel

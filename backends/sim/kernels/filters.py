@@ -1,0 +1,65 @@
+"""What the robot takes out of a scan before it believes it. Each filter is for one of the artefacts in `artefacts`."""
+
+from __future__ import annotations
+
+import math
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from runner.site.compiled import kernel_compiler
+
+kernel = kernel_compiler(__file__)
+
+FLAT = math.tan(math.radians(10.0))  # a line between two neighboring returns flatter to the beam than this is a mixture
+FLOOR_MARGIN = math.radians(0.3)  # of the angle to the floor: what the inertial sensor may be wrong by, and more
+
+
+@kernel
+def drop_body(raw: NDArray[Any], body: NDArray[Any], ranges: NDArray[Any]) -> None:
+    """Drop what lies nearer than `body`: how far each beam runs over the robot itself, and a little more."""
+    for beam in range(raw.shape[0]):
+        if raw[beam] < body[beam]:
+            ranges[beam] = np.inf
+
+
+@kernel
+def drop_shadows(raw: NDArray[Any], body: NDArray[Any], step: float, ranges: NDArray[Any]) -> None:
+    """Of two neighboring returns on a line that is flat to the beam, drop the farther: a mixture, or beside one.
+
+    The nearer stays, so nothing that really stands there is lost. Returns from the robot itself are left out of it.
+    """
+    sine, cosine = math.sin(step), math.cos(step)
+    for beam in range(raw.shape[0] - 1):
+        one, other = raw[beam], raw[beam + 1]
+        near, far = min(one, other), max(one, other)
+        if far == np.inf or one < body[beam] or other < body[beam + 1]:
+            continue
+        if near * sine < FLAT * (far * cosine - near):
+            ranges[beam if one > other else beam + 1] = np.inf
+
+
+@kernel
+def drop_floor(raw: NDArray[Any], ahead: NDArray[Any], height: float, nod: float, ranges: NDArray[Any]) -> None:
+    """Drop what lies where the beams meet the floor, or beyond, with the nose as far down as the robot measures."""
+    for beam in range(raw.shape[0]):
+        fall = nod * ahead[beam] + FLOOR_MARGIN
+        if fall > 0.0 and raw[beam] < np.inf and raw[beam] * fall > height:
+            ranges[beam] = np.inf
+
+
+@kernel
+def sight_of(raw: NDArray[Any], body: NDArray[Any], sight: NDArray[Any]) -> int:
+    """How far each beam saw, infinite where nothing stopped it; the number of returns.
+
+    Behind its own parts the robot takes it to be as far as beside them.
+    """
+    returns = 0
+    last = np.inf
+    for beam in range(raw.shape[0]):
+        returns += raw[beam] < np.inf
+        if raw[beam] >= body[beam]:
+            last = raw[beam]
+        sight[beam] = last
+    return returns

@@ -1,0 +1,59 @@
+"""A slow sensor that sees low things: it looks at a few columns a tick, so what it shows of most places is old.
+
+Each column is put into the memory from where the robot believed it was when it looked there. A carton put down behind
+the sweep is found when the sweep comes round again.
+"""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.sim.kernels.sight import columns
+from backends.sim.memory import Memory
+from runner.site.values import Pose, Sweep
+
+
+class Sweeper:
+    """Looks from right to left once in a period, then begins again at the right."""
+
+    def __init__(self, sweep: Sweep, ticks_per_s: int, generator: np.random.Generator) -> None:
+        self._sweep = sweep
+        self._random = generator
+        self._ticks = max(1, round(sweep.period * ticks_per_s))
+        self._tick = 0
+        self._step = sweep.field_of_view / sweep.columns
+        self._ranges = np.zeros(sweep.columns)
+
+    def look(
+        self, true: Pose, believed: Pose, distance: NDArray[np.float32], people: NDArray[np.float64], memory: Memory
+    ) -> None:
+        """Look at the columns of one tick. `distance` is the world's at floor level."""
+        sweep = self._sweep
+        low, high = (sweep.columns * (self._tick + more) // self._ticks for more in (0, 1))
+        self._tick = (self._tick + 1) % self._ticks
+        if low == high:
+            return
+        ranges = self._ranges[: high - low]
+        turned = (low + 0.5) * self._step - 0.5 * sweep.field_of_view
+        x, y = _eye(true, sweep)
+        columns(
+            distance,
+            people,
+            x,
+            y,
+            true.heading + turned,
+            self._step,
+            sweep.range_max,
+            sweep.noise,
+            self._random,
+            ranges,
+        )
+        x, y = _eye(believed, sweep)
+        memory.take_columns(ranges, x, y, believed.heading + turned, self._step, sweep)
+
+
+def _eye(pose: Pose, sweep: Sweep) -> tuple[float, float]:
+    return pose.x + sweep.forward * math.cos(pose.heading), pose.y + sweep.forward * math.sin(pose.heading)
