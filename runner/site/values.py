@@ -154,12 +154,16 @@ class UnseenSpace(StrEnum):
 
 @dataclass(frozen=True, slots=True)
 class Battery:
-    """Energy store: capacity in watt-hours, draws and charging in watts."""
+    """Energy store: capacity in watt-hours, draws and charging in watts.
+
+    It takes the whole charging power up to the fraction `tapers_from`, then less and less.
+    """
 
     capacity: float
     idle: float
     driving: float
     charging: float
+    tapers_from: float = 0.8
 
 
 @dataclass(frozen=True, slots=True)
@@ -200,6 +204,25 @@ class Carton:
     until_s: float | None = None
     when_near: float | None = None
     stays_s: float | None = None
+    low: bool = False
+    """It is lower than the lidar, which looks over it."""
+
+
+@dataclass(frozen=True, slots=True)
+class Clutter:
+    """Things that people leave on the floor at random times and places, each for a while.
+
+    `per_hour` is the mean number an hour within `hours` (daily spans, seconds since midnight; none for always),
+    `stays_s` the mean of the exponential time each stays, `sides` the shortest and the longest side, `low` the share
+    that is lower than the lidar, `moved` the share that somebody moves elsewhere in between.
+    """
+
+    per_hour: float
+    stays_s: float = 600.0
+    sides: tuple[float, float] = (0.3, 0.6)
+    low: float = 0.0
+    moved: float = 0.0
+    hours: tuple[tuple[float, float], ...] = ()
 
 
 @dataclass(frozen=True, slots=True)
@@ -223,6 +246,69 @@ class Walkers:
     speed_mean: float = 1.34
     speed_deviation: float = 0.26
     between: tuple[str, ...] = ()
+    together: int = 1
+    """How many of them walk side by side, as one group."""
+
+
+@dataclass(frozen=True, slots=True)
+class Bystander:
+    """Somebody who stands still at a spot for a while and then walks off to a place. The times are those of a carton."""
+
+    at: Point
+    from_s: float = 0.0
+    until_s: float | None = None
+    when_near: float | None = None
+    stays_s: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class Crowd:
+    """`count` people who come from the places around, gather round the robot, look at it, and walk off again.
+
+    They come at `at_s` seconds since the run began, or, where `per_hour` is given, so many times an hour at random.
+    They stay for `stays_s` seconds from when the first of them stands there.
+    """
+
+    count: int
+    stays_s: float
+    at_s: float | None = None
+    per_hour: float | None = None
+
+
+@dataclass(frozen=True, slots=True)
+class AboutShare:
+    """Of all the people, the share that is about during a daily span of hours, seconds since midnight."""
+
+    start: float
+    end: float
+    share: float
+
+
+class FaultKind(StrEnum):
+    """What can be made to go wrong with the robot."""
+
+    WHEELS_STUCK = "wheels stuck"
+    SLIP = "slip"
+    LIDAR_BLIND = "lidar blind"
+    CARRIED = "carried"
+    EMERGENCY_STOP = "emergency stop"
+    SILENT = "silent"
+
+
+@dataclass(frozen=True, slots=True)
+class Fault:
+    """Something goes wrong with the robot for `for_s` seconds: once at `at_s`, or `per_hour` times an hour at random.
+
+    `slip` is the share of the way that the floor does not give. `to` is where the robot is carried; None for a spot
+    somewhere on the floor, drawn at random.
+    """
+
+    kind: FaultKind
+    for_s: float = 0.0
+    at_s: float | None = None
+    per_hour: float | None = None
+    slip: float = 0.0
+    to: Pose | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -237,3 +323,17 @@ class Conditions:
     walkers: tuple[Walkers, ...] = field(default=())
     uneven_floor: float = 0.0
     """Standard deviation of the floor's height from one spot to the next, meters."""
+    clutter: tuple[Clutter, ...] = ()
+    missing: tuple[Solid, ...] = ()
+    """Solids of the site that are not really there."""
+    extra: tuple[Solid, ...] = ()
+    """Solids that are really there and not on the map."""
+    bystanders: tuple[Bystander, ...] = ()
+    crowds: tuple[Crowd, ...] = ()
+    about: tuple[AboutShare, ...] = ()
+    """How many of the walkers are about at which hours; all of them at all others."""
+    doors_shut_by_people: float = 0.0
+    """Probability that somebody who walks through a door shuts it behind him. Whoever comes to it opens it again."""
+    faults: tuple[Fault, ...] = ()
+    battery: float = 1.0
+    """What the battery holds when the run begins, as a fraction."""
