@@ -6,6 +6,7 @@ A tick depends only on the state before it and on the commands given since, neve
 from __future__ import annotations
 
 from collections.abc import Sequence
+from dataclasses import replace
 from datetime import datetime, timedelta
 
 import numpy as np
@@ -14,6 +15,8 @@ from numpy.typing import NDArray
 from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry
 from backends.sim.belief import Localization
 from backends.sim.body import Body
+from backends.sim.carrying import spot_for
+from backends.sim.faults import Faults
 from backends.sim.memory import Memory, surveyed
 from backends.sim.people import People
 from backends.sim.robot import Robot
@@ -32,6 +35,9 @@ TELEMETRY_S, TELEMETRY_IDLE_S = 0.25, 1.0
 """Time between two telemetry reports, at least: with something to do, and without."""
 IDLE_TICKS_PER_LOOK = 5
 """With nothing to do the robot looks around only every so many ticks."""
+STREAMS = 10
+"""Streams of random numbers: people, lidar, localization, artefacts of sensing, sweep, odometry, faults, doors that
+people shut, clutter, where the robot is carried. New ones are added at the end, so that the others stay as they are."""
 ROUTE_POINTS = 64
 """Points of the route in telemetry, at most."""
 
@@ -61,10 +67,10 @@ class Simulator:
         """ValueError, with a sentence, where the robot cannot stand at its start."""
         self.setup = setup
         self.trouble = Trouble()
-        streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(8)]
+        streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(STREAMS)]
         floor = rasterize(setup.site)
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
-        self.world = World(setup.site, floor, setup.conditions, (setup.begins - midnight).total_seconds())
+        self.world = World(setup.site, setup.conditions, (setup.begins - midnight).total_seconds(), streams[8])
         self.body = Body(setup.robot, setup.start, self.world)
         start = (setup.start.x, setup.start.y)
         self.people = People(setup.conditions.walkers, setup.site, self.world, start, streams[0])
@@ -75,6 +81,8 @@ class Simulator:
         self._scanner = Scanner(setup.robot, self.body.outline, uneven, TICKS_PER_S, streams[1], streams[3])
         self._sweeper = None if setup.robot.sweep is None else Sweeper(setup.robot.sweep, TICKS_PER_S, streams[4])
         self._localization = Localization(streams[2], TICK_S)
+        self._faults = Faults(setup.conditions.faults, self.trouble, self._carry, streams[6])
+        self._random_spots = streams[9]
         self._clock = VirtualClock(setup.begins)
         self._ticks = 0
         self._next_telemetry = 0.0
@@ -125,10 +133,11 @@ class Simulator:
     def reports(self, until: float) -> Sequence[Report]:
         """Compute ticks until there is news, at most up to `until`."""
         news = self.robot.news
-        while not news and (self._ticks + 1) / TICKS_PER_S <= until:
+        while (self.trouble.silent or not news) and (self._ticks + 1) / TICKS_PER_S <= until:
             self._tick()
-        if not news:
+        if self.trouble.silent or not news:
             self._clock.seconds = max(self._clock.seconds, until)
+            return []
         taken = list(news)
         news.clear()
         return taken
@@ -140,6 +149,7 @@ class Simulator:
         self._ticks += 1
         now = self._clock.seconds = self._ticks / TICKS_PER_S
         place, bodies = self.body.place, self.people.bodies
+        self._go_wrong(now)
         self.world.advance(now, place.tolist(), self.body.outline, bodies, self._ticks % TICKS_PER_S == 0)
         self.people.advance(now, place, self.body.outline, TICK_S)
         robot = self.robot
@@ -153,7 +163,24 @@ class Simulator:
                 self._next_telemetry += TELEMETRY_S
             if robot.idle:
                 self._next_telemetry = max(self._next_telemetry, now + TELEMETRY_IDLE_S)
-            robot.news.append(self._telemetry(now))
+            if not self.trouble.silent:
+                robot.news.append(self._telemetry(now))
+
+    def _go_wrong(self, now: float) -> None:
+        """Let faults begin and end. What was kept back by silence is told, as of now, when the silence ends."""
+        silent = self.trouble.silent
+        self._faults.advance(now)
+        if silent and not self.trouble.silent:
+            self.robot.news[:] = [replace(report, stamp=now) for report in self.robot.news]
+
+    def _carry(self, to: Pose | None) -> None:
+        """Somebody carries the robot to a pose, or to anywhere."""
+        spot = spot_for(
+            to, self.setup.site, self.world, self.people.bodies, self.body.outline, self._random_spots
+        )  # fmt: skip
+        if spot is not None:
+            self.body.place[:] = (spot.x, spot.y, spot.heading)
+            self.body.drive.stop()
 
     def _sense(self, people: NDArray[np.float64]) -> None:
         """Look around, and take in what has been seen."""
@@ -161,7 +188,7 @@ class Simulator:
         idle = robot.idle
         if self._ticks % (IDLE_TICKS_PER_LOOK if idle else self._ticks_per_look) == 0:
             self._scanner.look(
-                self._ticks, self.body.pose, self.body.driven, robot.pose, world.distance, people,
+                self._ticks, self.body.pose, self.body.driven, robot.pose, world.sight, people,
                 self.trouble.lidar_blind,
             )  # fmt: skip
         if self._sweeper is not None and not idle:

@@ -333,7 +333,7 @@ class Conditions:
     about: tuple[AboutShare, ...] = ()
     """How many of the walkers are about at which hours; all of them at all others."""
     doors_shut_by_people: float = 0.0
-    """Probability that somebody who walks through a door shuts it behind him. Whoever comes to it opens it again."""
+    """Probability that somebody who walks through a door shuts it behind them. Whoever comes to it opens it again."""
     faults: tuple[Fault, ...] = ()
     battery: float = 1.0
     """What the battery holds when the run begins, as a fraction."""
