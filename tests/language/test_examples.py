@@ -47,7 +47,8 @@ def test_a_name_of_nothing_is_answered_with_the_nearest_example() -> None:
 
 
 @pytest.mark.parametrize("argument", ["", "\0", "missions/nothing.yaml", "../x", "caf\u00e9", "x" * 10_000])
-def test_no_argument_breaks_the_search(argument: str) -> None:
+def test_no_argument_breaks_the_search(argument: str, tmp_path: Path, monkeypatch: pytest.MonkeyPatch) -> None:
+    monkeypatch.chdir(tmp_path)
     with pytest.raises(LanguageError) as caught:
         resolve_mission(argument)
     assert str(caught.value).isascii()
