@@ -92,6 +92,8 @@ class Memory:
             return
         x, y, first = scan.origin(pose)
         self._learn(scan.ranges, x, y, first, scan.step, TRUST_M, self._reach, 1, BY_LIDAR)
+        if self.unseen:
+            self._reveal(scan.sight, x, y, first, scan.step, self._reach)
         self._scans += 1
         if self._scans % SCANS_PER_REPAINT == 0 or self._gone == len(self._lost):
             self._drop(pose, self._outline.outer, self._outline.hull)
@@ -102,6 +104,8 @@ class Memory:
         """Learn from some columns of the sweep, looked at from (x, y); beyond the range where they meet only floor."""
         amount = max(1, round(self._rate * sweep.period))
         self._learn(ranges, x, y, first, step, sweep.range_max, sweep.range_max, amount, BY_SWEEP)
+        if self.unseen:
+            self._reveal(ranges, x, y, first, step, sweep.range_max)
 
     def _learn(
         self,
@@ -125,8 +129,9 @@ class Memory:
                 ranges, x, y, first, step, reach, self._evidence, self._seen, self._number, amount, sensor, self._by,
                 self._cells, self.count, self._lost, self._gone,
             )  # fmt: skip
-        if self.unseen:
-            self.unseen = reveal(ranges, x, y, first, step, reach, TRUST_M, self._unseen, self._hidden, self.unseen)
+
+    def _reveal(self, sight: NDArray[np.float64], x: float, y: float, first: float, step: float, reach: float) -> None:
+        self.unseen = reveal(sight, x, y, first, step, reach, TRUST_M, self._unseen, self._hidden, self.unseen)
 
     # --- knowing ----------------------------------------------------------------------------------------------
 

@@ -46,7 +46,8 @@ class Scan:
     back: Step = (0.0, 0.0, 0.0)
     """Where the robot was when it was taken, seen from where it is now."""
     sight: NDArray[np.float64] = field(default_factory=lambda: NOWHERE)
-    """How far each beam saw, infinite where nothing stopped it; nothing at all where the lidar is blind."""
+    """How far each beam saw, infinite where nothing stopped it; negative where the robot itself is in its way, and then
+    that of the beam beside it."""
     blind: bool = False
     """Nothing at all came back."""
 
@@ -122,8 +123,6 @@ class Scanner:
         self._next = (self._next + 1) % len(self._spare)
         self._filter(nod, ranges)
         returns = sight_of(self._raw, self._eye.body, seen)
-        if not returns:
-            seen.fill(0.0)
         self._under_way.append(_Taken(tick + self._delay, odometry, ranges, seen, not returns))
 
     def deliver(self, tick: int, odometry: Pose) -> Scan | None:

@@ -53,13 +53,15 @@ def drop_floor(raw: NDArray[Any], ahead: NDArray[Any], height: float, nod: float
 def sight_of(raw: NDArray[Any], body: NDArray[Any], sight: NDArray[Any]) -> int:
     """How far each beam saw, infinite where nothing stopped it; the number of returns.
 
-    Behind its own parts the robot takes it to be as far as beside them.
+    Beams that end at the robot itself say, negative, how far the one beside them saw.
     """
     returns = 0
     last = np.inf
     for beam in range(raw.shape[0]):
         returns += raw[beam] < np.inf
-        if raw[beam] >= body[beam]:
-            last = raw[beam]
+        if raw[beam] < body[beam]:
+            sight[beam] = -last
+            continue
+        last = raw[beam]
         sight[beam] = last
     return returns

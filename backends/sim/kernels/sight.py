@@ -29,7 +29,7 @@ FLOOR_M = 1.0  # a column that meets only floor reads so much more than its rang
 
 @kernel
 def is_seen(sight: NDArray[Any], x: float, y: float, first: float, step: float, at_x: float, at_y: float) -> bool:
-    """Whether the beam that points at a place runs at least as far."""
+    """Whether the beam that points at a place runs at least as far, or the one beside the robot's own post there."""
     to_x, to_y = at_x - x, at_y - y
     bearing = math.atan2(to_y, to_x) - first
     bearing -= math.floor(bearing / TURN) * TURN
@@ -38,7 +38,7 @@ def is_seen(sight: NDArray[Any], x: float, y: float, first: float, step: float, 
         if TURN - bearing > 0.5 * step:
             return False
         beam = 0
-    return bool(math.sqrt(to_x * to_x + to_y * to_y) <= sight[beam] + SHORT_M)
+    return bool(math.sqrt(to_x * to_x + to_y * to_y) <= abs(sight[beam]) + SHORT_M)
 
 
 @kernel
