@@ -70,10 +70,12 @@ class Simulator:
         streams = [np.random.Generator(np.random.PCG64(s)) for s in np.random.SeedSequence(setup.seed).spawn(STREAMS)]
         floor = rasterize(setup.site)
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
-        self.world = World(setup.site, setup.conditions, (setup.begins - midnight).total_seconds(), streams[8])
+        begins = (setup.begins - midnight).total_seconds()
+        self.world = World(setup.site, setup.conditions, begins, streams[8])
         self.body = Body(setup.robot, setup.start, self.world)
-        start = (setup.start.x, setup.start.y)
-        self.people = People(setup.conditions.walkers, setup.site, self.world, start, streams[0])
+        self.people = People(
+            setup.conditions, setup.site, self.world, begins, self.body.place, streams[0], streams[7]
+        )  # fmt: skip
         mapped = floor.blocked()
         self.memory = Memory(mapped, self.body.outline, setup.robot.lidar, surveyed(mapped, setup.site, setup.start))
         self.robot = Robot(self.body, self.memory, self.body.pose)
@@ -150,8 +152,9 @@ class Simulator:
         now = self._clock.seconds = self._ticks / TICKS_PER_S
         place, bodies = self.body.place, self.people.bodies
         self._go_wrong(now)
-        self.world.advance(now, place.tolist(), self.body.outline, bodies, self._ticks % TICKS_PER_S == 0)
-        self.people.advance(now, place, self.body.outline, TICK_S)
+        whole_second = self._ticks % TICKS_PER_S == 0
+        self.world.advance(now, place.tolist(), self.body.outline, bodies, whole_second)
+        self.people.advance(now, place, self.body.outline, TICK_S, whole_second)
         robot = self.robot
         robot.pose = self._localization.estimate(self.body.pose)
         self._sense(bodies)

@@ -24,12 +24,17 @@ CELL = 0.05
 RELAX_S = 0.5  # tau
 PUSH, PUSH_REACH_M = 2.1, 0.3  # V0, m^2/s^2, and sigma
 WALL, WALL_REACH_M = 10.0, 0.2  # U0, m^2/s^2, and R
-FORESIGHT_S = 2.0  # the time step of the other's stride, by which its ellipse is stretched
+FORESIGHT_S = (
+    1.2  # the time step of the other's stride, by which its ellipse is stretched (MODEL.md: not the paper's 2 s)
+)
 HALF_VIEW = math.cos(math.radians(100.0))  # effective angle of sight 2 phi = 200 degrees
 BEHIND = 0.5  # c
 FASTER = 1.3  # highest speed over the preferred one
 ASIDE_COSINE, ASIDE_SINE = math.cos(math.radians(80.0)), math.sin(math.radians(80.0))  # a step aside
 IGNORED_M = 4.0  # beyond this a push is under 1e-4 m/s^2
+CATCH_UP, SLOWEST_SHARE, FASTEST_SHARE = 0.4, 0.6, 1.3  # of a group: per meter behind its leader, and its bounds
+LAGGING_M, WAITING_SHARE = 1.5, 0.7  # a leader slows down when somebody is so far behind
+APART_M = 6.0  # farther from the leader than this one walks alone
 
 
 @kernel
@@ -190,3 +195,27 @@ def fits(
         return True
     after = gap(outline, robot[0], robot[1], robot[2], new_x, new_y)
     return after >= radius or after > gap(outline, robot[0], robot[1], robot[2], x, y)
+
+
+@kernel
+def keep_together(
+    people: NDArray[Any], target: NDArray[Any], wished: NDArray[Any], speeds: NDArray[Any], leader: NDArray[Any]
+) -> None:
+    """Let those who walk with somebody hurry or dawdle until they are abreast. `leader` is oneself for who is alone."""
+    for one in range(people.shape[0]):
+        if wished[one] > 0.0:
+            wished[one] = speeds[one]
+    for one in range(people.shape[0]):
+        lead = leader[one]
+        if lead == one or wished[one] == 0.0 or wished[lead] == 0.0:
+            continue
+        to_x, to_y = target[one, 0] - people[one, 0], target[one, 1] - people[one, 1]
+        off_x, off_y = people[lead, 0] - people[one, 0], people[lead, 1] - people[one, 1]
+        length = math.sqrt(to_x * to_x + to_y * to_y)
+        if length < 1e-6 or off_x * off_x + off_y * off_y > APART_M * APART_M:
+            continue
+        behind = (off_x * to_x + off_y * to_y) / length
+        share = min(max(1.0 + CATCH_UP * behind, SLOWEST_SHARE), FASTEST_SHARE)
+        wished[one] = share * speeds[one]
+        if behind > LAGGING_M:
+            wished[lead] = WAITING_SHARE * speeds[lead]

@@ -4,8 +4,9 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Iterable, Sequence
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from datetime import datetime
+from typing import Any
 
 from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report, Setup, Telemetry
 from backends.sim.simulator import Simulator
@@ -25,6 +26,7 @@ from runner.site.values import (
     Wall,
 )
 
+QUIET = Conditions("test", 0.0)
 EVENING = datetime(2026, 1, 5, 18, 0)
 
 CART = RobotDescription(
@@ -117,9 +119,11 @@ def start(
     walkers: Sequence[Walkers] = (),
     robot: RobotDescription = CART,
     begins: datetime = EVENING,
+    conditions: Conditions = QUIET,
 ) -> Drive:
-    """A robot standing at a pose, its clock at 0."""
-    conditions = Conditions("test", 0.0, tuple(cartons), tuple(doors), tuple(walkers))
+    """A robot standing at a pose, its clock at 0. The cartons, doors and walkers take the place of the conditions'."""
+    given: dict[str, Any] = {"cartons": tuple(cartons), "doors": tuple(doors), "walkers": tuple(walkers)}
+    conditions = replace(conditions, **{key: value for key, value in given.items() if value})
     return Drive(Simulator(Setup(site, robot, at, conditions, seed, begins)))
 
 

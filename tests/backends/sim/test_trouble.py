@@ -2,12 +2,10 @@
 
 from __future__ import annotations
 
-import math
-
 import pytest
 
 from backends.contract import GoalStatus
-from runner.site.values import Carton, DoorChange, Place, Pose, Site, Walkers, Wall
+from runner.site.values import Bystander, Carton, Conditions, DoorChange, Place, Pose, Site, Wall
 from tests.backends.sim.support import CORRIDOR, TWO_ROOMS, Drive, box, go, start
 
 NARROW = Site(
@@ -106,10 +104,9 @@ def test_with_both_doors_shut_there_is_no_route(seed: int) -> None:
 
 
 def test_a_person_who_stands_in_the_doorway_holds_the_robot_up_untouched() -> None:
-    drive = start(TWO_ROOMS, Pose(2.0, 2.0, 0.0), doors=[SHUT_NORTH], walkers=[Walkers(1)])
+    standing = Conditions(bystanders=(Bystander((7.0, 2.1)),))
+    drive = start(TWO_ROOMS, Pose(2.0, 2.0, 0.0), doors=[SHUT_NORTH], conditions=standing)
     people = drive.simulator.people
-    people.bodies[0, :2] = (7.0, 2.1)
-    people._wake[0] = math.inf
     go(drive, 1, Pose(12.0, 2.0, 0.0))
     drive.until_end(120.0)
     assert GoalStatus.ARRIVED not in drive.statuses()
