@@ -96,6 +96,7 @@ class Scanner:
         self._delay = round(lidar.latency * ticks_per_s)
         self._under_way: deque[_Taken] = deque()
         self._raw = np.full(lidar.beams, np.inf)
+        self._normal, self._even = np.zeros(lidar.beams), np.ones(lidar.beams)
         self._spare = [(np.full(lidar.beams, np.inf), np.full(lidar.beams, np.inf)) for _ in range(self._delay + 2)]
         self._next = 0
 
@@ -138,14 +139,17 @@ class Scanner:
         x = pose.x + lidar.forward * math.cos(pose.heading)
         y = pose.y + lidar.forward * math.sin(pose.heading)
         first = pose.heading + eye.first
-        scan(sight, people, x, y, first, eye.step, lidar.range_max, lidar.noise, self._noise, raw)
+        normal, even = self._normal, self._even
+        self._noise.standard_normal(out=normal)
+        scan(sight, people, x, y, first, eye.step, lidar.range_max, lidar.noise, normal, raw)
+        if lidar.beam_width > 0.0 or lidar.dropouts > 0.0:
+            self._artefacts.random(out=even)
         if lidar.beam_width > 0.0:
-            mix(sight, people, x, y, first, eye.step, lidar.range_max, lidar.beam_width, self._artefacts, raw)
+            mix(sight, people, x, y, first, eye.step, lidar.range_max, lidar.beam_width, even, raw)
         if eye.posts or nod != 0.0 or lidar.dropouts > 0.0:
             spoil(
-                raw, eye.own, eye.ahead, lidar.range_max, lidar.noise, lidar.height, nod, lidar.dropouts,
-                self._artefacts,
-            )  # fmt: skip
+                raw, eye.own, eye.ahead, lidar.range_max, lidar.noise, lidar.height, nod, lidar.dropouts, normal, even
+            )
 
     def _filter(self, nod: float, ranges: NDArray[np.float64]) -> None:
         """Fill `ranges` with what of the raw ones is believed."""

@@ -5,7 +5,20 @@ from __future__ import annotations
 from datetime import datetime
 
 from backends.contract import Backend, Goal, Setup
-from runner.site.values import Battery, Carton, Conditions, Lidar, Place, Pose, RobotDescription, Site, Walkers, Wall
+from runner.site.values import (
+    Battery,
+    Carton,
+    Conditions,
+    Lidar,
+    Place,
+    Pose,
+    Post,
+    RobotDescription,
+    Site,
+    Sweep,
+    Walkers,
+    Wall,
+)
 
 
 def warm_up() -> None:
@@ -33,10 +46,11 @@ def _small_setup() -> Setup:
         site=Site("small", 5.0, 3.0, (Wall(corners, 0.1),), (), (), places),
         robot=RobotDescription(
             "small", ((0.2, 0.2), (-0.2, 0.2), (-0.2, -0.2), (0.2, -0.2)), 0.5, 0.3, 0.5, 1.0, 2.0,
-            Lidar(4.0, 60, 8.0, 10.0, 0.01), Battery(100.0, 10.0, 50.0, 100.0),
+            Lidar(4.0, 60, 8.0, 10.0, 0.01, dropouts=0.01, beam_width=0.01, height=0.1),
+            Battery(100.0, 10.0, 50.0, 100.0), posts=(Post((0.1, 0.1), 0.02),), sweep=Sweep(1.5, 20, 3.0),
         ),
         start=Pose(1.0, 1.0, 0.0),
-        conditions=Conditions(cartons=(Carton((2.5, 1.2), (0.3, 0.3)),), walkers=(Walkers(2),)),
+        conditions=Conditions(cartons=(Carton((2.5, 1.2), (0.3, 0.3)),), walkers=(Walkers(2),), uneven_floor=0.01),
         seed=1,
         begins=datetime(2024, 1, 1, 18, 0),
     )  # fmt: skip

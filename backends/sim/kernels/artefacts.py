@@ -64,12 +64,13 @@ def mix(
     step: float,
     reach: float,
     width: float,
-    generator: np.random.Generator,
+    drawn: NDArray[Any],
     ranges: NDArray[Any],
 ) -> None:
     """Where the light of a beam, `width` radians wide, falls on two surfaces, return something between the two.
 
     Only where neighboring ranges jump is it worth looking: there the rim of the beam is cast as a ray of its own.
+    `drawn` holds an even number from 0 to 1 for each beam, which is where between the two it lies.
     """
     count = ranges.shape[0]
     farther, before = np.inf, np.inf
@@ -84,7 +85,7 @@ def mix(
         if rim != 0.0:
             other = ray(distance, people, x, y, first + beam * step + rim, reach)
             if LEAST_JUMP_M < abs(other - here) <= MOST_JUMP_M:
-                ranges[beam] = here + generator.random() * (other - here)
+                ranges[beam] = here + drawn[beam] * (other - here)
         farther, before = before, here
 
 
@@ -98,18 +99,20 @@ def spoil(
     height: float,
     nod: float,
     dropouts: float,
-    generator: np.random.Generator,
+    normal: NDArray[Any],
+    even: NDArray[Any],
 ) -> None:
     """Put the robot's own posts and the floor before what the beams meet, and lose some of them.
 
     `own` is the range of the robot's own parts, infinite where there are none; `ahead` the cosine of each beam's angle
     to the robot's heading; `height` that of the lidar above the floor, and `nod` how far its nose is down, radians.
+    `normal` and `even` hold random numbers for each beam, standard normal and from 0 to 1.
     """
     for beam in range(ranges.shape[0]):
         if own[beam] < ranges[beam]:
-            ranges[beam] = max(own[beam] + noise * generator.standard_normal(), 0.0)
+            ranges[beam] = max(own[beam] + noise * normal[beam], 0.0)
         fall = nod * ahead[beam]
         if height > 0.0 and fall > 0.0 and height < fall * min(ranges[beam], reach):
-            ranges[beam] = max(height / fall + noise * generator.standard_normal(), 0.0)
-        if dropouts > 0.0 and generator.random() < dropouts:
+            ranges[beam] = max(height / fall + noise * normal[beam], 0.0)
+        if even[beam] < dropouts:
             ranges[beam] = np.inf

@@ -9,7 +9,6 @@ from __future__ import annotations
 import math
 from typing import Any
 
-import numpy as np
 from numpy.typing import NDArray
 
 from backends.sim.kernels import artefacts, grid, path, rays
@@ -95,15 +94,18 @@ def columns(
     step: float,
     reach: float,
     noise: float,
-    generator: np.random.Generator,
+    drawn: NDArray[Any],
     ranges: NDArray[Any],
 ) -> None:
-    """Fill `ranges` with what columns from the floor upward meet; where that is only floor, with more than `reach`."""
+    """Fill `ranges` with what columns from the floor upward meet; where that is only floor, with more than `reach`.
+
+    `drawn` holds a standard normal number for each.
+    """
     for column in range(ranges.shape[0]):
         angle = first + column * step
         along_x, along_y = math.cos(angle), math.sin(angle)
         met = cast(distance, x, y, along_x, along_y, reach)
         for index in range(people.shape[0]):
             met = min(met, met_person(people[index], x, y, along_x, along_y))
-        met += noise * generator.standard_normal()
+        met += noise * drawn[column]
         ranges[column] = max(met, 0.0) if met <= reach else reach + FLOOR_M
