@@ -132,3 +132,12 @@ def mapping(page: Page, node: Node, what: str, example: str) -> Mapping | None:
         return node
     page.report(node, f"Keys and values are meant for {what}.", f"Write for example {example}.")
     return None
+
+
+def known(page: Page, node: Node, names: list[str], kind: str, example: str) -> str:
+    """One of the names there are; '' after a report."""
+    text = page.text(node, f"a {kind}", example)
+    if text is None or text in names:
+        return text or ""
+    page.report(node, f"There is no {kind} called {quoted(text)}.", nearest(text, names, kind))
+    return ""

@@ -44,6 +44,8 @@ SHARE = Measure("a share", {"%": 0.01})
 ENERGY = Measure("an energy", {"Wh": 1.0, "kWh": 1000.0})
 POWER = Measure("a power", {"W": 1.0, "kW": 1000.0})
 RATE = Measure("a rate", {"Hz": 1.0})
+FREQUENCY = Measure("a number an hour", {"/h": 1.0, "/d": 1.0 / 24.0})
+"""How often something happens, per hour."""
 
 _MISSPELLED = {
     "sec": "s", "secs": "s", "second": "s", "seconds": "s", "mins": "min", "minute": "min", "minutes": "min",

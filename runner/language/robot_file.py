@@ -12,6 +12,7 @@ from runner.language.quantities import (
     ENERGY,
     LENGTH,
     POWER,
+    SHARE,
     SPEED,
     TURN_ACCELERATION,
     TURN_SPEED,
@@ -38,7 +39,14 @@ ROBOT_KEYS: Keys = {
     "filters": "{shadow points: off}",
     "unseen space": "keep out",
 }
-BATTERY_KEYS: Keys = {"capacity": "240 Wh", "idle": "22 W", "driving": "85 W", "charging": "300 W"}
+BATTERY_KEYS: Keys = {
+    "capacity": "240 Wh",
+    "idle": "22 W",
+    "driving": "85 W",
+    "charging": "300 W",
+    "full power until": "80 %",
+}
+TAPERS = Amount("What the battery takes full power up to", SHARE, "10 %", "100 %")
 
 NO_BATTERY = Battery(0.0, 0.0, 0.0, 0.0)
 
@@ -99,4 +107,5 @@ def _read_battery(fields: Fields) -> Battery:
         idle=inner.number("idle", Amount("The draw at rest", POWER, "0 W", "5 kW")),
         driving=inner.number("driving", Amount("The draw while driving", POWER, "1 W", "20 kW")),
         charging=inner.number("charging", Amount("The charging power", POWER, "1 W", "50 kW")),
+        tapers_from=inner.number_or("full power until", TAPERS, NO_BATTERY.tapers_from),
     )

@@ -252,7 +252,7 @@ class Walkers:
 
 @dataclass(frozen=True, slots=True)
 class Bystander:
-    """Somebody who stands still at a spot for a while and then walks off to a place. The times are those of a carton."""
+    """Somebody who stands still at a spot for a while, then walks off to a place. The times are those of a carton."""
 
     at: Point
     from_s: float = 0.0

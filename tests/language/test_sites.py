@@ -10,11 +10,24 @@ import pytest
 
 import runner.language
 from runner.language.reader import load_robot, read_conditions, read_site
-from runner.site.values import Carton, DoorChange, Pose, Solid, Walkers
+from runner.site.values import (
+    AboutShare,
+    Bystander,
+    Carton,
+    Clutter,
+    Crowd,
+    DoorChange,
+    Fault,
+    FaultKind,
+    Pose,
+    Solid,
+    Walkers,
+)
 from tests.language import texts
 
 FILES = (Path(runner.language.__file__).parent / "FILES.md").read_text()
 LEGEND = "legend: {a: {place: hall, facing: south}, D: {door: gate}}\n"
+HEAD = "conditions: Busy\ncoordinates: in meters\n"
 EXAMPLES = re.findall(r"```yaml\n(.*?)```", FILES, flags=re.DOTALL)
 
 
@@ -60,13 +73,46 @@ def test_the_conditions_of_the_reference_are_read() -> None:
     assert conditions.begins_at == 64_800.0
     assert conditions.cartons == (
         Carton((20.0, 12.5), (0.6, 0.4), from_s=120.0, until_s=600.0),
-        Carton((31.0, 12.5), (0.5, 0.5), when_near=3.0, stays_s=90.0),
+        Carton((31.0, 12.5), (0.5, 0.5), when_near=3.0, stays_s=90.0, low=True),
     )
     assert conditions.doors == (
         DoorChange("pharmacy door", 0.0, open=False),
         DoorChange("pharmacy door", 900.0, open=True),
     )
-    assert conditions.walkers == (Walkers(4, 1.3, 0.26, ("ward east", "kitchen")),)
+    assert conditions.walkers == (Walkers(4, 1.3, 0.26, ("ward east", "kitchen"), together=2),)
+    assert (conditions.uneven_floor, conditions.battery) == (0.005, 0.6)
+
+
+def test_people_clutter_and_furniture_of_the_reference_are_read() -> None:
+    site = read_site(example("site: Harbour clinic"), "site.yaml")
+    conditions = read_conditions(HEAD + example("people about:"), "busy.yaml", site)
+    assert conditions.about == (AboutShare(79_200.0, 21_600.0, 0.1),)
+    assert conditions.doors_shut_by_people == 0.3
+    assert conditions.bystanders == (
+        Bystander((33.6, 14.0), from_s=120.0, until_s=180.0),
+        Bystander((20.0, 12.5), when_near=3.0, stays_s=40.0),
+    )
+    assert conditions.crowds == (Crowd(6, 40.0, at_s=300.0), Crowd(4, 60.0, per_hour=2.0))
+    assert conditions.clutter == (Clutter(6.0, 600.0, (0.3, 0.6), 0.3, 0.2, ((25_200.0, 68_400.0),)),)
+    assert conditions.missing == site.solids
+    moved, extra = conditions.extra
+    assert moved.corners == tuple((x + 0.5, y) for x, y in site.solids[1].corners)
+    assert extra == Solid(((24.7, 13.3), (25.3, 13.3), (25.3, 13.7), (24.7, 13.7)))
+
+
+def test_the_faults_of_the_reference_are_read() -> None:
+    site = read_site(example("site: Harbour clinic"), "site.yaml")
+    conditions = read_conditions(HEAD + example("faults:"), "faults.yaml", site)
+    assert conditions.faults == (
+        Fault(FaultKind.WHEELS_STUCK, 20.0, at_s=300.0),
+        Fault(FaultKind.SLIP, 15.0, per_hour=2.0, slip=0.4),
+        Fault(FaultKind.LIDAR_BLIND, 30.0, per_hour=1.0),
+        Fault(FaultKind.EMERGENCY_STOP, 60.0, at_s=1200.0),
+        Fault(FaultKind.SILENT, 45.0, at_s=1800.0),
+        Fault(FaultKind.CARRIED, at_s=2400.0, to=site.places[1].pose),
+        Fault(FaultKind.CARRIED, at_s=3000.0, to=Pose(12.0, 12.5, math.pi / 2)),
+        Fault(FaultKind.CARRIED, per_hour=3.0 / 24.0),
+    )
 
 
 def test_walls_of_a_drawing_cover_exactly_its_wall_squares() -> None:
