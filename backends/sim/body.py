@@ -7,7 +7,8 @@ import math
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.sim.drive import Charge, Drive
+from backends.sim.battery import Charge
+from backends.sim.drive import Drive
 from backends.sim.kernels.overlap import FREE, PERSON, SOLID, covers_solid, moved
 from backends.sim.outline import Outline, outline_of
 from backends.sim.world import World

@@ -1,10 +1,10 @@
-"""What wheels and battery can do: speeds change no faster than the limits allow, energy runs out."""
+"""What wheels can do: speeds change no faster than the limits allow."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
 
-from runner.site.values import Battery, RobotDescription
+from runner.site.values import RobotDescription
 
 
 @dataclass(slots=True)
@@ -34,27 +34,3 @@ class Drive:
 
 def _approach(value: float, wanted: float, most: float) -> float:
     return min(max(wanted, value - most), value + most)
-
-
-@dataclass(slots=True)
-class Charge:
-    """The energy in the battery, watt-hours. It is full when the run begins."""
-
-    battery: Battery
-    energy: float
-    charging: bool = False
-
-    @property
-    def fraction(self) -> float:
-        return self.energy / self.battery.capacity
-
-    @property
-    def empty(self) -> bool:
-        return self.energy <= 0.0
-
-    def spend(self, driving: bool, time: float) -> None:
-        """Let `time` seconds pass: what is drawn is taken, what the charger gives is added."""
-        power = -self.battery.driving if driving else -self.battery.idle
-        if self.charging:
-            power = self.battery.charging
-        self.energy = min(max(self.energy + power * time / 3600.0, 0.0), self.battery.capacity)

@@ -5,6 +5,7 @@ A tick depends only on the state before it and on the commands given since, neve
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from dataclasses import replace
 from datetime import datetime, timedelta
@@ -35,6 +36,8 @@ TELEMETRY_S, TELEMETRY_IDLE_S = 0.25, 1.0
 """Time between two telemetry reports, at least: with something to do, and without."""
 IDLE_TICKS_PER_LOOK = 5
 """With nothing to do the robot looks around only every so many ticks."""
+CHARGER_REACH_M = 0.5
+"""A charger is taken to stand at every place of the site; so near to one the robot charges."""
 STREAMS = 10
 """Streams of random numbers: people, lidar, localization, artefacts of sensing, sweep, odometry, faults, doors that
 people shut, clutter, where the robot is carried. New ones are added at the end, so that the others stay as they are."""
@@ -73,6 +76,7 @@ class Simulator:
         begins = (setup.begins - midnight).total_seconds()
         self.world = World(setup.site, setup.conditions, begins, streams[8])
         self.body = Body(setup.robot, setup.start, self.world)
+        self.body.charge.energy *= setup.conditions.battery
         self.people = People(
             setup.conditions, setup.site, self.world, begins, self.body.place, streams[0], streams[7]
         )  # fmt: skip
@@ -130,7 +134,9 @@ class Simulator:
         self.robot.news.append(ActionReport(self._clock.seconds, action_id, True))
 
     def charge(self) -> None:
-        self.body.charge.charging = True
+        x, y, _ = self.body.place.tolist()
+        chargers = (place.pose for place in self.setup.site.places)
+        self.body.charge.charging = any(math.hypot(x - at.x, y - at.y) <= CHARGER_REACH_M for at in chargers)
 
     def reports(self, until: float) -> Sequence[Report]:
         """Compute ticks until there is news, at most up to `until`."""

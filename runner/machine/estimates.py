@@ -21,6 +21,7 @@ from runner.machine.leg_costs import Lengths, drive_span, leg_cost
 from runner.machine.loop_costs import TICK_S, loop_cost
 from runner.machine.spans import FREE, INFINITE, NOTHING, UNKNOWN, Cost, Span, one_of, product
 from runner.machine.table import Block, Exit, Machine, Verb
+from runner.site.charging import charging_seconds
 from runner.site.values import DAY_S
 from runner.site.ways import Way
 
@@ -341,7 +342,10 @@ def _charging(work: _Estimator, block: Block, flow: _Flow) -> Span:
     )
     if not work.recording:
         missing = replace(missing, least=0.0)
-    return watched(block, missing.each(lambda energy: max(0.0, energy) * 3600.0 / battery.charging))
+    return watched(
+        block,
+        missing.each(lambda energy: charging_seconds(battery, level - max(0.0, energy) / battery.capacity, level)),
+    )
 
 
 def _used_after(work: _Estimator, block: Block, used: Used) -> Used:

@@ -204,6 +204,7 @@ def test_an_empty_battery_ends_the_drive_and_charging_fills_it() -> None:
     end = drive.until_end(60.0)
     assert end is not None
     assert (end.status, end.reason) == (GoalStatus.FAILED, "The battery is empty.")
+    drive.simulator.body.place[:] = (10.0, 4.0, 0.0)  # somebody pushes it to a charger
     drive.simulator.charge()
     drive.until(end.stamp + 5.0)
     assert drive.telemetry()[-1].battery == 1.0
