@@ -60,6 +60,8 @@ SLICE_UNPACED_S = 1.0
 """Virtual seconds computed at a stretch where no pace is set."""
 VIEW_S = 0.1
 """Between two views of a real robot, at least, where nothing happened."""
+VIEW_REAL_S = 0.02
+"""Wall seconds between two views where time is virtual: a night in a minute is not shown a thousand times a second."""
 SILENT_S = 30.0
 """Longer without telemetry is trouble; a link gets over shorter cuts by itself."""
 LOST_SPREAD_M, LOST_S = 3.0, 60.0
@@ -178,10 +180,17 @@ class Host:
         self._look_around()
         if clock.virtual:
             self._pacer.hold(self.state.held is not None, clock.now())
-        if clock.virtual or reports or clock.now() >= self._view_due:
-            self._view_due = clock.now() + VIEW_S
+        if self._is_view_due(bool(reports)):
             self._post_view()
         self.after_turn()
+
+    def _is_view_due(self, news: bool) -> bool:
+        clock = self.backend.clock
+        now, between = (time.monotonic(), VIEW_REAL_S) if clock.virtual else (clock.now(), VIEW_S)
+        if now < self._view_due and (clock.virtual or not news):
+            return False
+        self._view_due = now + between
+        return True
 
     def _wishes(self, waiting: bool = True) -> None:
         """Carry out what people ask for; wait for it as long as virtual time is ahead of the pace."""
