@@ -21,8 +21,8 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import dataclass
 from datetime import datetime
-from enum import Enum
-from typing import Protocol
+from enum import Enum, StrEnum
+from typing import Protocol, runtime_checkable
 
 from runner.site.values import Conditions, Point, Pose, RobotDescription, Site
 
@@ -145,6 +145,38 @@ class Telemetry:
 Report = GoalReport | ActionReport | Telemetry
 
 
+class Cause(StrEnum):
+    """Why a simulated robot really stands or gets on badly."""
+
+    NOTHING = ""
+    PERSON = "person in the way"
+    CARTON = "carton in the way"
+    DOOR = "door shut"
+    FURNITURE = "furniture in the way"
+    NARROW = "gap too narrow"
+    GONE = "remembered obstacle that is gone"
+    WHEELS_STUCK = "wheels stuck"
+    SLIP = "slip"
+    STOPPED = "emergency stop"
+    BLIND = "lidar blind"
+    CARRIED = "carried"
+    ASTRAY = "not where it believes"
+    SILENT = "silent"
+    BATTERY = "battery empty"
+
+
+@dataclass(frozen=True, slots=True)
+class Truth:
+    """What really was the case in a simulated world. It is kept beside the record, to score by; nothing decides by it.
+
+    `pose` is where the robot really was, `cause` why it stood or got on badly from then on, if it did.
+    """
+
+    stamp: float
+    pose: Pose
+    cause: Cause
+
+
 class Clock(Protocol):
     """The time a run lives in."""
 
@@ -196,3 +228,11 @@ class Backend(Protocol):
     def reports(self, until: float) -> Sequence[Report]: ...
 
     def close(self) -> None: ...
+
+
+@runtime_checkable
+class TellsTruth(Protocol):
+    """What a backend may offer beside `Backend`: a simulator knows what really is the case."""
+
+    def truths(self) -> Sequence[Truth]:
+        """What became true since the last call: each change of the cause, and about once a second under way."""

@@ -13,7 +13,7 @@ from datetime import datetime, timedelta
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry
+from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry, Truth
 from backends.sim.belief import Localization
 from backends.sim.body import Body
 from backends.sim.carrying import spot_for
@@ -24,6 +24,7 @@ from backends.sim.robot import Robot
 from backends.sim.sensing import Scanner
 from backends.sim.sweep import Sweeper
 from backends.sim.trouble import Trouble
+from backends.sim.truth import BETWEEN_LOOKS_TICKS, Witness
 from backends.sim.world import World
 from runner.site.floor import rasterize
 from runner.site.values import Pose
@@ -89,6 +90,7 @@ class Simulator:
         self._localization = Localization(streams[2], TICK_S)
         self._faults = Faults(setup.conditions.faults, self.trouble, self._carry, streams[6])
         self._random_spots = streams[9]
+        self._witness = Witness(self.world, self.body, self.robot, self.memory, self.trouble)
         self._clock = VirtualClock(setup.begins)
         self._ticks = 0
         self._next_telemetry = 0.0
@@ -115,6 +117,8 @@ class Simulator:
         warm_up()
 
     def go(self, goal: Goal) -> None:
+        if not goal.relative:
+            self._witness.head_for(goal.pose)
         self.robot.go(goal, self._clock.seconds)
 
     def halt(self) -> None:
@@ -150,6 +154,10 @@ class Simulator:
         news.clear()
         return taken
 
+    def truths(self) -> Sequence[Truth]:
+        """What really was the case since the last call."""
+        return self._witness.take()
+
     def close(self) -> None:
         """Nothing is held."""
 
@@ -166,6 +174,8 @@ class Simulator:
         self._sense(bodies)
         wish = robot.think(now)
         self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
+        if self._ticks % BETWEEN_LOOKS_TICKS == 0:
+            self._witness.look(now, bodies)
         if now >= self._next_telemetry:
             self._next_telemetry += TELEMETRY_S
             while self._next_telemetry <= now:
@@ -188,6 +198,7 @@ class Simulator:
             to, self.setup.site, self.world, self.people.bodies, self.body.outline, self._random_spots
         )  # fmt: skip
         if spot is not None:
+            self._witness.carried()
             self.body.place[:] = (spot.x, spot.y, spot.heading)
             self.body.drive.stop()
 

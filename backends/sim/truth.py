@@ -1,0 +1,154 @@
+"""What really is the case: where the robot is and why it stands or gets on badly. For scoring; the robot never asks.
+
+What is wrong with the robot comes before what is in its way. In the way is what really stands on the next meters of
+its route, or, where it has none, first on the way that the map has.
+"""
+
+from __future__ import annotations
+
+import math
+from collections import deque
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.contract import Cause, Truth
+from backends.sim.body import Body
+from backends.sim.kernels.grid import value_at
+from backends.sim.kernels.overlap import covers_solid
+from backends.sim.kernels.weights import halved
+from backends.sim.memory import Memory
+from backends.sim.planner import find_halved
+from backends.sim.robot import Robot
+from backends.sim.trouble import Trouble
+from backends.sim.world import World
+from runner.site.values import CELL_M, Pose
+
+BETWEEN_LOOKS_TICKS = 5
+EVERY_S = 1.0
+"""Between two truths at least, while the cause stays the same and the robot is under way."""
+SLOW, SLOW_TURN = 0.1, 0.1
+"""Slower than this, m/s and rad/s, it stands."""
+AHEAD_M = 2.0
+ELBOW_M = 0.2
+"""A person this near to where the robot's disc would pass is in the way."""
+ASTRAY_M, ASTRAY = 0.5, math.radians(20.0)
+"""Farther from where it believes to be, it does not know where it is."""
+MOST_KEPT = 100_000
+"""Where nobody asks for them, the oldest are dropped."""
+
+Points = NDArray[np.float64]
+
+
+class Witness:
+    """Watches one robot in its world."""
+
+    def __init__(self, world: World, body: Body, robot: Robot, memory: Memory, trouble: Trouble) -> None:
+        self._world = world
+        self._body = body
+        self._robot = robot
+        self._memory = memory
+        self._trouble = trouble
+        self._goal: Pose | None = None
+        self._map_way: Points | None = None
+        self._carried = False
+        self._told = Truth(-math.inf, body.pose, Cause.NOTHING)
+        self._truths: deque[Truth] = deque(maxlen=MOST_KEPT)
+
+    def head_for(self, goal: Pose) -> None:
+        """The robot has been sent to a pose on the map."""
+        self._goal, self._map_way = goal, None
+
+    def carried(self) -> None:
+        """Somebody has carried the robot."""
+        self._carried = True
+
+    def look(self, now: float, people: NDArray[np.float64]) -> None:
+        """See what is the case; `people` has rows (x, y, radius). To be called every `BETWEEN_LOOKS_TICKS` ticks."""
+        idle = self._robot.idle
+        cause = self._cause(idle, people)
+        if cause is self._told.cause and (idle or now - self._told.stamp < EVERY_S):
+            return
+        self._told = Truth(now, self._body.pose, cause)
+        self._truths.append(self._told)
+
+    def take(self) -> list[Truth]:
+        """What was seen since the last time."""
+        taken = list(self._truths)
+        self._truths.clear()
+        return taken
+
+    def _cause(self, idle: bool, people: NDArray[np.float64]) -> Cause:
+        wrong = self._wrong()
+        if wrong is not Cause.NOTHING or idle or not self._stands():
+            return wrong
+        return self._in_the_way(people)
+
+    def _wrong(self) -> Cause:
+        trouble = self._trouble
+        astray = self._is_astray()
+        self._carried = self._carried and astray
+        causes = (
+            (self._body.charge.empty, Cause.BATTERY),
+            (trouble.stopped, Cause.STOPPED),
+            (trouble.wheels_stuck, Cause.WHEELS_STUCK),
+            (trouble.lidar_blind, Cause.BLIND),
+            (self._carried, Cause.CARRIED),
+            (trouble.slip > 0.0, Cause.SLIP),
+            (astray, Cause.ASTRAY),
+            (trouble.silent, Cause.SILENT),
+        )
+        return next((cause for holds, cause in causes if holds), Cause.NOTHING)
+
+    def _is_astray(self) -> bool:
+        believed, true = self._robot.pose, self._body.pose
+        if math.hypot(believed.x - true.x, believed.y - true.y) > ASTRAY_M:
+            return True
+        return abs(math.remainder(believed.heading - true.heading, 2.0 * math.pi)) > ASTRAY
+
+    def _stands(self) -> bool:
+        drive = self._body.drive
+        return abs(drive.speed) < SLOW and abs(drive.turn) < SLOW_TURN
+
+    def _in_the_way(self, people: NDArray[np.float64]) -> Cause:
+        points = self._way_ahead()
+        inner = self._body.outline.inner
+        for index in range(len(points) - 1):
+            x, y = points[index].tolist()
+            if (np.hypot(people[:, 0] - x, people[:, 1] - y) < people[:, 2] + inner + ELBOW_M).any():
+                return Cause.PERSON
+            heading = math.atan2(points[index + 1, 1] - y, points[index + 1, 0] - x)
+            if covers_solid(self._world.blocked, self._body.outline.hull, x, y, heading):
+                return self._solid_at(x, y)
+        remembered = any(value_at(self._memory.field, x, y) < inner for x, y in points.tolist())
+        return Cause.GONE if remembered else Cause.NOTHING
+
+    def _solid_at(self, x: float, y: float) -> Cause:
+        """What stands under the robot's outline at a point of its way."""
+        reach = math.ceil(self._body.outline.outer / CELL_M)
+        row, column = int(y / CELL_M), int(x / CELL_M)
+        rows, columns = np.mgrid[-reach : reach + 1, -reach : reach + 1]
+        near = np.hypot(rows, columns) <= reach
+        cells = np.column_stack([row + rows[near], column + columns[near]])
+        shape = self._world.blocked.shape
+        inside = (cells >= 0).all(axis=1) & (cells[:, 0] < shape[0]) & (cells[:, 1] < shape[1])
+        cells = cells[inside]
+        what = self._world.what_stands_in(cells)
+        if what in ("door", "carton"):
+            return Cause.DOOR if what == "door" else Cause.CARTON
+        blocked = cells[self._world.blocked[cells[:, 0], cells[:, 1]]]
+        mapped = self._memory.known[blocked[:, 0], blocked[:, 1]] <= 0.0
+        return Cause.NARROW if mapped.all() else Cause.FURNITURE
+
+    def _way_ahead(self) -> Points:
+        """Points of the way ahead, some cells apart: of the robot's route, or of the map's way to the goal."""
+        route = self._robot.route
+        if route is not None:
+            covered = self._robot.follower.covered
+            ahead = (route.along >= covered) & (route.along <= covered + AHEAD_M)
+            return route.points[ahead]
+        if self._map_way is None and self._goal is not None:
+            weight = halved(self._memory.known, self._body.outline.inner + CELL_M, self._body.outline.outer + 0.3, 8.0)
+            found = find_halved(weight, (self._robot.pose.x, self._robot.pose.y), (self._goal.x, self._goal.y))
+            self._map_way = np.empty((0, 2)) if found is None else found
+        return np.empty((0, 2)) if self._map_way is None else self._map_way
