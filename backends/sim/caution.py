@@ -9,6 +9,7 @@ from __future__ import annotations
 import math
 
 from backends.sim.kernels.motion import admissible
+from backends.sim.kernels.grid import value_at
 from backends.sim.kernels.sight import seen_length
 from backends.sim.memory import Memory
 from backends.sim.outline import Outline
@@ -21,6 +22,8 @@ SLOW_M_S = 0.2
 """Through unseen space, where it is told to drive there."""
 REACTION_S = 0.2
 """From the scan to the brakes: a tick until it is used and one until the wheels obey."""
+MAPPED_SHARE = 0.65
+"""A wall nearer than this share of the range comes into view even where it is right behind a lidar of 270 degrees."""
 SPARE_M = 0.1
 """How much farther than needed to stop from full speed the robot looks along its route."""
 
@@ -47,7 +50,7 @@ class Caution:
         memory, scan = self._memory, self._memory.scan
         if scan is None:
             return CREEP_M_S
-        if scan.blind:
+        if scan.blind and self._must_see(pose):
             return 0.0
         x, y, first = scan.origin(pose)
         self.seen, clear = seen_length(
@@ -55,6 +58,11 @@ class Caution:
             pose.x, pose.y, memory.known, memory.is_unseen(),
         )  # fmt: skip
         return min(max(self._within(self.seen), CREEP_M_S), max(self._within(clear), self._slowest_unseen))
+
+    def _must_see(self, pose: Pose) -> bool:
+        """Whether a lidar that works would see something here: the robot's own posts, or what the map shows."""
+        near: float = value_at(self._memory.known, pose.x, pose.y)
+        return bool(self._limits.posts) or near < MAPPED_SHARE * self._limits.lidar.range_max
 
     def _within(self, length: float) -> float:
         """The speed from which the robot stops within a length of its route, having reacted."""

@@ -19,7 +19,7 @@ from backends.sim.outline import Outline
 from runner.site.values import Filters, Lidar, Point, Pose, Post, RobotDescription
 
 FULL_CIRCLE = 2.0 * math.pi - 1e-6
-UNEVEN_OVER_M = 0.3
+UNEVEN_OVER_M = 0.1
 """How far apart two spots of an uneven floor are whose heights have little to do with each other."""
 NOD_ERROR = math.radians(0.1)
 """Standard deviation of what the robot's inertial sensor says of its nod."""

@@ -13,6 +13,8 @@ from runner.site.compiled import kernel_compiler
 kernel = kernel_compiler(__file__)
 
 FLAT = math.tan(math.radians(10.0))  # a line between two neighboring returns flatter to the beam than this is a mixture
+SLANTED = math.tan(math.radians(30.0))  # flatter than this it is one unless it is part of a wall
+STRAIGHT_M = 0.15  # how far off the line of a wall a return may lie
 FLOOR_MARGIN = math.radians(0.3)  # of the angle to the floor: what the inertial sensor may be wrong by, and more
 
 
@@ -25,19 +27,35 @@ def drop_body(raw: NDArray[Any], body: NDArray[Any], ranges: NDArray[Any]) -> No
 
 
 @kernel
+def continues(before: float, here: float, after: float) -> bool:
+    """Whether three neighboring ranges lie on one straight wall, where 1 / range is linear."""
+    expected = 2.0 / here - 1.0 / before
+    return bool(before < np.inf and expected > 0.0 and abs(1.0 / expected - after) <= STRAIGHT_M)
+
+
+@kernel
 def drop_shadows(raw: NDArray[Any], body: NDArray[Any], step: float, ranges: NDArray[Any]) -> None:
     """Of two neighboring returns on a line that is flat to the beam, drop the farther: a mixture, or beside one.
 
-    The nearer stays, so nothing that really stands there is lost. Returns from the robot itself are left out of it.
+    A line that is less flat is spared where a wall continues it to one side. The nearer return stays, so nothing that
+    really stands there is lost. Returns from the robot itself are left out of it.
     """
     sine, cosine = math.sin(step), math.cos(step)
-    for beam in range(raw.shape[0] - 1):
+    count = raw.shape[0]
+    for beam in range(count - 1):
         one, other = raw[beam], raw[beam + 1]
         near, far = min(one, other), max(one, other)
         if far == np.inf or one < body[beam] or other < body[beam + 1]:
             continue
-        if near * sine < FLAT * (far * cosine - near):
-            ranges[beam if one > other else beam + 1] = np.inf
+        across, along = near * sine, far * cosine - near
+        if across >= SLANTED * along:
+            continue
+        if across >= FLAT * along:
+            before = raw[beam - 1] if beam > 0 else np.inf
+            after = raw[beam + 2] if beam + 2 < count else np.inf
+            if continues(before, one, other) or continues(after, other, one):
+                continue
+        ranges[beam if one > other else beam + 1] = np.inf
 
 
 @kernel
