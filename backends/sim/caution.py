@@ -8,8 +8,8 @@ from __future__ import annotations
 
 import math
 
-from backends.sim.kernels.motion import admissible
 from backends.sim.kernels.grid import value_at
+from backends.sim.kernels.motion import admissible
 from backends.sim.kernels.sight import seen_length
 from backends.sim.memory import Memory
 from backends.sim.outline import Outline
