@@ -14,7 +14,7 @@ import threading
 from collections.abc import Callable, Sequence
 from typing import Any
 
-from backends.contract import Backend, Report
+from backends.contract import Backend, Report, TellsTruth, Truth
 
 
 class RobotError(Exception):
@@ -69,6 +69,15 @@ class Gate:
                 self._halt_once()
             reports: Sequence[Report] = self._call(self._backend.reports, until)
             return reports
+
+    def truths(self) -> Sequence[Truth]:
+        """What really was the case since the last call; nothing where the backend cannot tell."""
+        backend = self._backend
+        if not isinstance(backend, TellsTruth):
+            return ()
+        with self._lock:
+            truths: Sequence[Truth] = self._call(backend.truths)
+            return truths
 
     def _halt_once(self) -> None:
         """Whoever gets the lock first after an abort halts, so that an abort never waits for its turn."""

@@ -21,7 +21,7 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from backends.contract import Backend
+from backends.contract import Backend, TellsTruth
 from runner.engine.advance import advance
 from runner.engine.codec import state_to_bytes
 from runner.engine.state import EngineState
@@ -111,6 +111,7 @@ class Host:
     _quiet_from: float = field(default=0.0, init=False)
     _lost_since: float | None = field(default=None, init=False)
     _told_at: float = field(default=0.0, init=False)
+    _tells_truth: bool = field(default=False, init=False)
 
     def __post_init__(self) -> None:
         clock = self.backend.clock
@@ -119,6 +120,7 @@ class Host:
         self._wall = WallWatch(clock)
         self._snapshot_due = clock.now() + SNAPSHOT_S
         self._quiet_from = clock.now()
+        self._tells_truth = isinstance(self.backend, TellsTruth)
 
     def run(self) -> Ending:
         """Run the mission to its end. Whatever goes wrong, the robot is told to halt before this returns or raises.
@@ -175,6 +177,7 @@ class Host:
         for report in reports:
             self._wishes(waiting=False)
             self._give(to_input(report))
+        self._keep_truths()
         if deadline is not None and (clock.now() >= deadline or (not reports and until >= deadline)):
             self._give(Tick(max(deadline, clock.now())))
         self._look_around()
@@ -183,6 +186,12 @@ class Host:
         if self._is_view_due(bool(reports)):
             self._post_view()
         self.after_turn()
+
+    def _keep_truths(self) -> None:
+        """Journal what really was the case in a simulated world. Nothing here ever looks at it."""
+        if self._tells_truth:
+            for truth in self.gate.truths():
+                self.journal.truth(truth.stamp, truth.pose, truth.cause.value)
 
     def _is_view_due(self, news: bool) -> bool:
         clock = self.backend.clock

@@ -87,6 +87,15 @@ class Reading:
     driven: float
 
 
+@dataclass(frozen=True, slots=True)
+class TruthRow:
+    """What really was the case in a simulated world: where the robot was, and what held it up, if anything."""
+
+    stamp: float
+    pose: Pose
+    cause: str
+
+
 class Record:
     """An open record. Made by `open_record`; close it, or use it in a `with`."""
 
@@ -152,6 +161,16 @@ class Record:
             for row in page:
                 route = _route_after(route, *row[13:])
                 yield TrackRow(row[0], row[1], _seen(row[2:13], route))
+            after = page[-1][0]
+
+    def truths(self) -> Iterator[TruthRow]:
+        """What really was the case, in order; nothing of a real robot, or in a record that is older than this table."""
+        if not self._rows("SELECT 1 FROM sqlite_schema WHERE type = 'table' AND name = 'truth'"):
+            return
+        query, after = "SELECT seq, stamp, x, y, heading, cause FROM truth WHERE seq > ? ORDER BY seq LIMIT ?", 0
+        while page := self._rows(query, (after, PAGE_ROWS)):
+            for _, stamp, x, y, heading, what in page:
+                yield TruthRow(stamp, Pose(x, y, heading), what)
             after = page[-1][0]
 
     def snapshots(self) -> list[Snapshot]:

@@ -15,6 +15,8 @@ A record is one SQLite file, readable with the stock `sqlite3` tool:
 - `track`: telemetry. `after_entry` is the last entry before it, which puts both in one order. `route` is kept only
   where it changed: the new points at its head, followed by the last `route_kept` points of the route before it; both
   are null where nothing changed. Points are little-endian float32 pairs, meters.
+- `truth`: of a simulated run, where the robot really was and what really was the case, to score by. No entry follows
+  from it and no digest covers it; records made before there was such a table lack it.
 
 Each entry's digest is SHA-256, in hexadecimal, of six lines: the digest before it, seq, stamp (shortest decimal that
 reads back the same), kind, name, body. The first digest starts from the machine and the sources.
@@ -32,7 +34,7 @@ FILE_NAME = "journal.sqlite"
 APPLICATION_ID = 0x5472646C
 """Marks the file as ours (bytes 68 to 71 of the header); the letters "Trdl"."""
 FORMAT = 1
-"""Version of the tables, kept as `user_version`."""
+"""Version of the tables, kept as `user_version`. A table that older programs need not know of does not raise it."""
 
 _STRICT = " STRICT" if sqlite3.sqlite_version_info >= (3, 37) else ""
 
@@ -74,6 +76,16 @@ TABLES = (
         route_kept INTEGER
     ){_STRICT}""",
 )
+"""Without these it is no record."""
+
+TRUTH_TABLE = f"""CREATE TABLE IF NOT EXISTS truth (
+        seq INTEGER PRIMARY KEY,
+        stamp REAL NOT NULL,
+        x REAL NOT NULL,
+        y REAL NOT NULL,
+        heading REAL NOT NULL,
+        cause TEXT NOT NULL
+    ){_STRICT}"""
 
 
 def text_digest(text: str) -> str:

@@ -33,7 +33,7 @@ from runner.journal.errors import JournalError, cause
 from runner.journal.header import RunHeader
 from runner.journal.reader import open_record
 from runner.language.mission import Source
-from runner.site.values import Point
+from runner.site.values import Point, Pose
 
 TRACK_ROWS_AT_MOST = 64
 TRACK_SECONDS_AT_MOST = 10.0
@@ -58,6 +58,7 @@ _INSERT_TRACK = (
     "INSERT INTO track (after_entry, stamp, x, y, heading, spread, speed, battery, driven, remaining,"
     " route_number, obstacles, route, route_kept) VALUES (?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?, ?)"
 )
+_INSERT_TRUTH = "INSERT INTO truth (stamp, x, y, heading, cause) VALUES (?, ?, ?, ?, ?)"
 _INSERT_SNAPSHOT = (
     "INSERT INTO snapshot (entry, track, stamp, state) VALUES (?, (SELECT coalesce(max(seq), 0) FROM track), ?, ?)"
 )
@@ -73,6 +74,7 @@ class JournalWriter:
         self._digest = digest
         self._seq = seq
         self._waiting: list[Row] = []
+        self._waiting_truths: list[Row] = []
         self._waiting_since = 0.0
         self._route: tuple[Point, ...] | None = ()
         """The route of the newest row; None where the next row must hold its whole route."""
@@ -115,6 +117,7 @@ class JournalWriter:
                 pass  # says in words what is wrong with the file
             connection = _set_up(sqlite3.connect(path, timeout=BUSY_S, isolation_level=None))
             connection.execute("DELETE FROM run WHERE key IN ('closed', 'trouble')")
+            connection.execute(schema.TRUTH_TABLE)
             seq, digest = _last_entry(connection)
         except sqlite3.Error as error:
             os.close(lock)
@@ -161,6 +164,10 @@ class JournalWriter:
             self._waiting_since, self._route = before
             raise
 
+    def truth(self, stamp: float, pose: Pose, cause: str) -> None:
+        """Keep what really was the case in a simulated world. It waits for the next entries, or for the track."""
+        self._waiting_truths.append((stamp, pose.x, pose.y, pose.heading, cause))
+
     def snapshot(self, stamp: float, state: bytes, track_seconds: float | None = None) -> None:
         """Commit the engine's state as it is after all that was written and tracked so far.
 
@@ -184,6 +191,7 @@ class JournalWriter:
             (stamp,),
         )
         self._connection.execute(f"DELETE FROM snapshot WHERE seq < ({oldest})", (stamp,))  # noqa: S608
+        self._connection.execute("DELETE FROM truth WHERE stamp < (SELECT min(stamp) FROM snapshot)")
 
     def close(self, trouble: str = "") -> None:
         """End the record. `trouble` says in a sentence what ended it, where it was not the mission.
@@ -248,19 +256,22 @@ class JournalWriter:
         )
 
     def _commit(self, entries: Sequence[Row], snapshot: tuple[float, bytes] | None = None) -> None:
-        if not entries and not self._waiting and snapshot is None:
+        if not entries and not self._waiting and not self._waiting_truths and snapshot is None:
             return
         connection = self._connection
         try:
             with _Transaction(connection):
                 if self._waiting:
                     connection.executemany(_INSERT_TRACK, self._waiting)
+                if self._waiting_truths:
+                    connection.executemany(_INSERT_TRUTH, self._waiting_truths)
                 connection.executemany(_INSERT_ENTRY, entries)
                 if snapshot is not None:
                     connection.execute(_INSERT_SNAPSHOT, (self._seq, *snapshot))
         except sqlite3.Error as error:
             raise _said(error, self.path) from error
         self._waiting.clear()
+        self._waiting_truths.clear()
 
 
 def _route_change(before: tuple[Point, ...] | None, route: tuple[Point, ...]) -> tuple[bytes | None, int | None]:
@@ -304,7 +315,7 @@ def _new_file(
         connection.execute(f"PRAGMA application_id = {schema.APPLICATION_ID}")
         connection.execute(f"PRAGMA user_version = {schema.FORMAT}")
         with _Transaction(connection):
-            for table in schema.TABLES:
+            for table in (*schema.TABLES, schema.TRUTH_TABLE):
                 connection.execute(table)
             connection.executemany("INSERT INTO run VALUES (?, ?)", run_header.to_rows(header))
             digests = [(source.path, source.text, schema.text_digest(source.text)) for source in sources]
