@@ -280,7 +280,7 @@ def _check_marks(file: Path, connection: sqlite3.Connection) -> None:
     with _in_words(file):
         application = connection.execute("PRAGMA application_id").fetchone()[0]
         version = connection.execute("PRAGMA user_version").fetchone()[0]
-        tables = connection.execute("SELECT count(*) FROM sqlite_schema WHERE type = 'table'").fetchone()[0]
+        tables = {row[0] for row in connection.execute("SELECT name FROM sqlite_schema WHERE type = 'table'")}
     if application != schema.APPLICATION_ID:
         raise JournalError(f"{file} is not the record of a run: it is the database of another program.")
     if version > schema.FORMAT:
@@ -288,7 +288,7 @@ def _check_marks(file: Path, connection: sqlite3.Connection) -> None:
             f"{file} was written by a newer Trundle (format {version}; this one reads up to {schema.FORMAT})."
             " Update Trundle to read it."
         )
-    if tables < len(schema.TABLES):
+    if not tables.issuperset(schema.TABLE_NAMES):
         raise JournalError(f"{file} holds no run: it was cut off before the run began.")
 
 

@@ -76,6 +76,7 @@ TABLES = (
         route_kept INTEGER
     ){_STRICT}""",
 )
+TABLE_NAMES = ("run", "source", "machine", "plan", "snapshot", "entry", "track")
 """Without these it is no record."""
 
 TRUTH_TABLE = f"""CREATE TABLE IF NOT EXISTS truth (
