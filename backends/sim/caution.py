@@ -24,6 +24,10 @@ REACTION_S = 0.2
 """From the scan to the brakes: a tick until it is used and one until the wheels obey."""
 MAPPED_SHARE = 0.65
 """A wall nearer than this share of the range comes into view even where it is right behind a lidar of 270 degrees."""
+EASY = 0.7
+"""Share of the drive's deceleration that is counted on."""
+BERTH_M = 0.4
+"""How far beside its way the robot wants to see the floor: somebody may stand there."""
 SPARE_M = 0.1
 """How much farther than needed to stop from full speed the robot looks along its route."""
 
@@ -36,6 +40,7 @@ class Caution:
         self._half = outline.inner
         self._front = max(float(outline.hull[:, 0].max()) - outline.inner, 0.0)
         self._limits = robot
+        self._braking = EASY * robot.acceleration
         self._enough = self.needed(robot.speed) + SPARE_M
         self._slowest_unseen = SLOW_M_S if robot.unseen_space is UnseenSpace.DRIVE_SLOWLY else 0.0
         self.seen = self._enough
@@ -43,7 +48,7 @@ class Caution:
 
     def needed(self, speed: float) -> float:
         """How far the route must be seen for a speed: the way to stop, what passes before, and the robot's nose."""
-        return speed * speed / (2.0 * self._limits.acceleration) + REACTION_S * speed + self._front
+        return speed * speed / (2.0 * self._braking) + REACTION_S * speed + self._front
 
     def fastest(self, route: Route, covered: float, pose: Pose) -> float:
         """The highest speed now, m/s."""
@@ -54,7 +59,7 @@ class Caution:
             return 0.0
         x, y, first = scan.origin(pose)
         self.seen, clear = seen_length(
-            route.points, route.along, covered, self._enough, scan.sight, x, y, first, scan.step, self._half,
+            route.points, route.along, covered, self._enough, scan.sight, x, y, first, scan.step, self._half, BERTH_M,
             pose.x, pose.y, memory.known, memory.is_unseen(),
         )  # fmt: skip
         return min(max(self._within(self.seen), CREEP_M_S), max(self._within(clear), self._slowest_unseen))
@@ -69,6 +74,6 @@ class Caution:
         left = length - self._front
         if left <= 0.0:
             return 0.0
-        fast = float(admissible(left, self._limits.acceleration))
-        lag = REACTION_S * self._limits.acceleration
+        fast = float(admissible(left, self._braking))
+        lag = REACTION_S * self._braking
         return math.sqrt(lag * lag + fast * fast) - lag

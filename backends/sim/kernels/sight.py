@@ -27,15 +27,20 @@ FLOOR_M = 1.0  # a column that meets only floor reads so much more than its rang
 
 
 @kernel
-def is_seen(sight: NDArray[Any], x: float, y: float, first: float, step: float, at_x: float, at_y: float) -> bool:
-    """Whether the beam that points at a place runs at least as far, or the one beside the robot's own post there."""
+def is_seen(
+    sight: NDArray[Any], x: float, y: float, first: float, step: float, at_x: float, at_y: float, beside: bool
+) -> bool:
+    """Whether the beam that points at a place runs at least as far, or the one beside the robot's own post there.
+
+    `beside` is the answer where no beam points.
+    """
     to_x, to_y = at_x - x, at_y - y
     bearing = math.atan2(to_y, to_x) - first
     bearing -= math.floor(bearing / TURN) * TURN
     beam = int(bearing / step + 0.5)
     if beam >= sight.shape[0]:
         if TURN - bearing > 0.5 * step:
-            return False
+            return beside
         beam = 0
     return bool(math.sqrt(to_x * to_x + to_y * to_y) <= abs(sight[beam]) + SHORT_M)
 
@@ -52,6 +57,7 @@ def seen_length(
     first: float,
     step: float,
     half: float,
+    berth: float,
     here_x: float,
     here_y: float,
     known: NDArray[Any],
@@ -59,29 +65,33 @@ def seen_length(
 ) -> tuple[float, float]:
     """How far from `covered` on, at most `most`, the route is seen now, and how far it leads through no unseen cell.
 
-    `half` is the radius of the disc; where the robot stands, at `here`, nothing need be seen. What the map shows to be
-    solid need not be seen either. (x, y, first, step) are those of the scan that `sight` belongs to.
+    `half` is the radius of the disc, `berth` how far beside it, up to the next wall of the map, the floor must be in
+    sight as well. Where the robot stands, at `here`, nothing need be seen, nor what is beside it and out of the field
+    of view. (x, y, first, step) are those of the scan that `sight` belongs to.
     """
     length = 0.0
-    seen, known_free = -1.0, -1.0
+    seen, free = -1.0, -1.0
     from_x, from_y = point_at(points, along, covered)
-    while length < most and covered + length < along[-1] and (seen < 0.0 or known_free < 0.0):
+    while length < most and covered + length < along[-1] and (seen < 0.0 or free < 0.0):
         length += STEP_M
         to_x, to_y = point_at(points, along, covered + length)
-        way_x, way_y = to_x - from_x, to_y - from_y
-        size = max(math.sqrt(way_x * way_x + way_y * way_y), 1e-9)
-        for side in range(-1, 2):
-            at_x, at_y = to_x - side * half * way_y / size, to_y + side * half * way_x / size
-            if known_free < 0.0 and value_at(unseen, at_x, at_y) > 0.0:
-                known_free = length - STEP_M
-            if seen >= 0.0 or value_at(known, at_x, at_y) <= SHORT_M:
-                continue
-            if (at_x - here_x) ** 2 + (at_y - here_y) ** 2 <= (half + STEP_M) ** 2:
-                continue
-            if not is_seen(sight, x, y, first, step, at_x, at_y):
-                seen = length - STEP_M
+        size = max(math.sqrt((to_x - from_x) ** 2 + (to_y - from_y) ** 2), 1e-9)
+        left_x, left_y = (from_y - to_y) / size, (to_x - from_x) / size
+        for side in range(-1, 2, 2):
+            for place in range(4):
+                off = side * (0.0, half, half + 0.5 * berth, half + berth)[place]
+                at_x, at_y = to_x + off * left_x, to_y + off * left_y
+                if value_at(known, at_x, at_y) <= SHORT_M:
+                    break
+                if place < 2 and free < 0.0 and value_at(unseen, at_x, at_y) > 0.0:
+                    free = length - STEP_M
+                away = math.sqrt((at_x - here_x) ** 2 + (at_y - here_y) ** 2)
+                if seen >= 0.0 or away <= half + STEP_M:
+                    continue
+                if not is_seen(sight, x, y, first, step, at_x, at_y, away <= half + berth + STEP_M):
+                    seen = length - STEP_M
         from_x, from_y = to_x, to_y
-    return most if seen < 0.0 else seen, most if known_free < 0.0 else known_free
+    return most if seen < 0.0 else seen, most if free < 0.0 else free
 
 
 @kernel
