@@ -18,6 +18,9 @@ from runner.site.values import CELL_M
 
 Weights = NDArray[np.float32] | NDArray[np.float64]
 
+NOTHING_KNOWN: NDArray[np.float32] = np.empty(0, dtype=np.float32)
+"""Of the costs ahead: then the distance and the least weight bound them."""
+
 
 @dataclass(frozen=True, slots=True)
 class GridRoute:
@@ -45,24 +48,52 @@ def weight_from_clearance(
     return np.where(clearance < hard, np.inf, weight).astype(np.float32)
 
 
-def find_route(weight: Weights, start: Cell, goal: Cell) -> GridRoute | None:
+def find_route(
+    weight: Weights, start: Cell, goal: Cell, ahead: NDArray[np.float32] = NOTHING_KNOWN
+) -> GridRoute | None:
     """The cheapest route, or None where there is none or where an end is blocked or off the grid.
 
     `weight` has shape (rows, columns), positive, infinite where blocked. Costs are summed in double precision. The
-    same arguments give the same cells. ValueError on a weight that is not positive.
+    same arguments give the same cells. `ahead` is what `costs_ahead` gives for this goal on weights that are nowhere
+    higher than these: the nearer those are, the fewer cells are looked at. ValueError on a weight that is not positive.
     """
     if not (_is_open(weight, start) and _is_open(weight, goal)):
         return None
-    least = float(np.min(weight))
-    most = float(np.max(weight, where=np.isfinite(weight), initial=least))
-    if not least > 0.0:
-        raise ValueError("Every weight of a grid must be above 0.")
     from runner.site.route_kernels import search
 
-    cells, cost = search(np.ascontiguousarray(weight), *start, *goal, least, most)
+    cells, cost = search(np.ascontiguousarray(weight), *start, *goal, ahead, *_span(weight))
     if len(cells) == 0:
         return None
     return GridRoute(cells, float(cost), _length(cells))
+
+
+def costs_ahead(weight: Weights, goal: Cell) -> NDArray[np.float32]:
+    """A bound, for `find_route`, of the cost from each cell to a goal. Worth having where weights rise now and then.
+
+    The cost on these weights, which is the best bound there is (Hart, Nilsson and Raphael, 1968), found once by going
+    out from the goal (Dijkstra, 1959). ValueError on a weight that is not positive.
+    """
+    from runner.site.route_kernels import costs_to
+
+    if not _is_open(weight, goal):
+        return NOTHING_KNOWN
+    return np.asarray(costs_to(np.ascontiguousarray(weight), *goal, *_span(weight)), dtype=np.float32)
+
+
+def is_joined(weight: Weights, start: Cell, goal: Cell) -> bool:
+    """Whether there is a route at all: sooner told than found, above all where one end is shut in."""
+    from runner.site.route_kernels import joined
+
+    both_open = _is_open(weight, start) and _is_open(weight, goal)
+    return both_open and bool(joined(np.ascontiguousarray(weight), *start, *goal))
+
+
+def _span(weight: Weights) -> tuple[float, float]:
+    """The least weight, and the highest that is not infinite."""
+    least = float(np.min(weight))
+    if not least > 0.0:
+        raise ValueError("Every weight of a grid must be above 0.")
+    return least, float(np.max(weight, where=np.isfinite(weight), initial=least))
 
 
 def regions(free: NDArray[np.bool_]) -> NDArray[np.int32]:

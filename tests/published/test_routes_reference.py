@@ -13,7 +13,7 @@ import numpy as np
 import pytest
 from skimage.graph import MCP_Geometric
 
-from runner.site.routes import find_route
+from runner.site.routes import costs_ahead, find_route
 from tests.site.grids import least_costs, random_weights
 
 
@@ -51,3 +51,21 @@ def test_costs_equal_scikit_images_where_no_corner_can_be_cut() -> None:
     route = find_route(weight, (0, 0), (59, 79))
     assert route is not None
     assert route.cost == pytest.approx(costs[59, 79], rel=1e-9)
+
+
+@pytest.mark.parametrize("raised_share", [0.0, 0.05, 0.4])
+def test_costs_equal_scipys_dijkstra_where_the_search_is_told_the_costs_ahead_before_weights_rose(
+    raised_share: float,
+) -> None:
+    for seed in range(12):
+        before = random_weights(seed, (37, 53), 0.15)
+        generator = np.random.Generator(np.random.PCG64(seed))
+        rose = generator.random(before.shape) < raised_share
+        weight = np.where(rose, before * generator.choice([1.0, 3.0, np.inf], before.shape), before)
+        for goal in ((36, 52), (18, 26), (0, 52)):
+            costs = least_costs(weight, (0, 0))
+            route = find_route(weight, (0, 0), goal, costs_ahead(before, goal))
+            if route is None:
+                assert np.isinf(costs[goal]) or np.isinf(weight[goal]) or np.isinf(weight[0, 0])
+            else:
+                assert route.cost == pytest.approx(costs[goal], rel=1e-9)

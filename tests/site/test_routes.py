@@ -10,7 +10,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from runner.site.routes import find_route, regions, weight_from_clearance
+from runner.site.routes import find_route, is_joined, regions, weight_from_clearance
 from runner.site.values import CELL_M
 from tests.site.grids import least_costs, random_weights
 
@@ -94,6 +94,13 @@ def test_regions_tell_where_a_route_exists(seed: int, blocked: float) -> None:
     numbers = regions(np.isfinite(weight))
     reached = np.isfinite(least_costs(weight, (0, 0)))
     assert np.array_equal(numbers == numbers[0, 0], reached)
+
+
+@settings(max_examples=60, deadline=None)
+@given(seed=SEEDS, blocked=st.floats(0.2, 0.6), row=st.integers(-1, 12), column=st.integers(-1, 12))
+def test_two_cells_are_joined_where_a_route_is_found(seed: int, blocked: float, row: int, column: int) -> None:
+    weight = random_weights(seed, (12, 12), blocked)
+    assert is_joined(weight, (3, 4), (row, column)) == (find_route(weight, (3, 4), (row, column)) is not None)
 
 
 def test_there_and_back_cost_the_same_and_the_same_question_gives_the_same_cells() -> None:
