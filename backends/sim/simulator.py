@@ -173,9 +173,9 @@ class Simulator:
         robot.pose = self._localization.estimate(self.body.pose)
         self._sense(bodies)
         wish = robot.think(now)
-        self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
         if self._ticks % BETWEEN_LOOKS_TICKS == 0:
-            self._witness.look(now, bodies)
+            self._witness.look(now, bodies)  # before the robot moves on: telemetry tells of where it was sensed to be
+        self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
         if now >= self._next_telemetry:
             self._next_telemetry += TELEMETRY_S
             while self._next_telemetry <= now:

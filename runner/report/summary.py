@@ -26,6 +26,7 @@ from runner.journal.header import RunHeader
 from runner.journal.outcome import outcome_from
 from runner.journal.reader import Entry, Reading, Record, Status
 from runner.machine.table import Ending, Event, Outcome, Target
+from runner.report.truth import truth_score
 from runner.report.values import Attempt, Incident, Intervention, Leg, Summary, Totals
 from runner.site.values import Pose
 
@@ -35,7 +36,7 @@ HOLD = Event.HOLD.value
 def summary_of(record: Record) -> Summary:
     """Sum up a record as far as it goes."""
     status, last = record.status, record.last_stamp()  # first: what ends meanwhile is then still taken in whole
-    return summarize(
+    summary = summarize(
         record.header,
         record.entries(),
         status,
@@ -44,6 +45,7 @@ def summary_of(record: Record) -> Summary:
         last=last,
         trouble=record.trouble,
     )
+    return replace(summary, truth=truth_score(summary.incidents, record.truths(), record.track()))
 
 
 def summarize(

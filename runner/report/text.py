@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
+import math
 import textwrap
 import unicodedata
 from datetime import timedelta
 
 from runner.journal.outcome import RunOutcome
 from runner.machine.table import Outcome
-from runner.report.values import Attempt, Incident, Intervention, Leg, Summary, Totals
+from runner.report.values import Attempt, Incident, Intervention, Leg, Summary, Totals, TruthScore
 
 WIDTH = 80
 LABEL = 16
@@ -20,6 +21,8 @@ LEG_ROW = "{:>4}  {:<20} {:<16} {:<8} {:>7} {:>8} {:>5} {:>4}"
 def report_text(summary: Summary) -> str:
     """The whole report, ending in a line break."""
     parts = [_head(summary), _legs(summary), _incidents(summary), _interventions(summary), _totals(summary.totals)]
+    if summary.truth is not None:
+        parts.append(_truth(summary.truth))
     return "\n\n".join("\n".join(part) for part in parts) + "\n"
 
 
@@ -185,6 +188,35 @@ def _battery(totals: Totals) -> str:
         return "not known"
     first, last = 100.0 * totals.battery_first, 100.0 * totals.battery_last
     return f"{first - last:.1f} % used, from {first:.1f} % to {last:.1f} %"
+
+
+def _truth(truth: TruthScore) -> list[str]:
+    """What the simulator knows and the robot did not."""
+    told = [score for score in truth.scores if score.right is not None]
+    right = sum(score.right is True for score in told)
+    lines = [
+        (
+            "  Diagnoses",
+            f"{right} of {len(told)} agree with what really was the case" if told else "none to hold against it",
+        )
+    ]
+    for score in truth.scores:
+        verdict = {True: "right", False: "wrong", None: "not scored"}[score.right]
+        really = ", ".join(score.really) or "nothing was wrong"
+        lines.append((f"  Incident {score.incident}", f"{verdict}: {score.diagnosis}. Really: {really}"))
+    if (off := truth.whereabouts) is not None:
+        lines.append(
+            (
+                "  Position",
+                f"off by {100.0 * off.mean:.1f} cm on average, under {100.0 * off.most_of:.1f} cm in 95 of 100"
+                f" readings, {100.0 * off.most:.1f} cm at most",
+            )
+        )
+        degrees = math.degrees(off.heading_mean), math.degrees(off.heading_most_of)
+        lines.append(("  Heading", f"off by {degrees[0]:.1f} deg on average, under {degrees[1]:.1f} deg in 95 of 100"))
+    return ["Truth (of a simulated run; the robot did not know it)"] + [
+        line for label, text in lines for line in _labeled(label, text)
+    ]
 
 
 def _clock(summary: Summary, stamp: float) -> str:

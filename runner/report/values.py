@@ -100,8 +100,40 @@ class Totals:
 
 
 @dataclass(frozen=True, slots=True)
+class Score:
+    """A diagnosis held against the truth. `really` is what was the case, longest first; `right` None where the
+    diagnosis says nothing that could be held against it."""
+
+    incident: int
+    diagnosis: str
+    really: tuple[str, ...]
+    right: bool | None
+
+
+@dataclass(frozen=True, slots=True)
+class Whereabouts:
+    """How far the robot was from where it believed to be: meters and radians, on average, in 95 of 100 readings, and
+    at most."""
+
+    readings: int
+    mean: float
+    most_of: float
+    most: float
+    heading_mean: float
+    heading_most_of: float
+
+
+@dataclass(frozen=True, slots=True)
+class TruthScore:
+    """A simulated run held against the truth."""
+
+    scores: tuple[Score, ...]
+    whereabouts: Whereabouts | None
+
+
+@dataclass(frozen=True, slots=True)
 class Summary:
-    """A run, summed up. `reason` says what ended it."""
+    """A run, summed up. `reason` says what ended it; `truth` is None for a real robot."""
 
     header: RunHeader
     outcome: RunOutcome
@@ -110,3 +142,4 @@ class Summary:
     incidents: tuple[Incident, ...]
     interventions: tuple[Intervention, ...]
     totals: Totals
+    truth: TruthScore | None = None
