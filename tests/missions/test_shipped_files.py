@@ -40,7 +40,14 @@ def room_numbers(floor: Floor, shut: list[str], robot: RobotDescription) -> NDAr
 
 def test_the_files_the_readme_and_the_commands_speak_of_are_there() -> None:
     assert [path.stem for path in MISSIONS] == ["evening-round", "overnight-endurance", "short-errand"]
-    assert {path.stem for path in CONDITIONS} == {"quiet", "busy", "blocked-corridor", "door-shut-for-good"}
+    assert {path.stem for path in CONDITIONS} == {
+        "quiet",
+        "busy",
+        "blocked-corridor",
+        "door-shut-for-good",
+        "twenty-people",
+        "night-with-faults",
+    }
     assert len(SITES) == len(ROBOTS) == 2
 
 
