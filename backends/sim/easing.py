@@ -52,7 +52,7 @@ class Easing:
     def advance(self, field: NDArray[np.float32], pose: Pose) -> tuple[float, Answer | None]:
         """The speed wanted now (0 or below), and the answer once the drive has ended."""
         drive, outline = self._body.drive, self._body.outline
-        if drive.speed > 0.0 or (drive.turn != 0.0 and drive.speed == 0.0):
+        if drive.speed > 0.0 or drive.side != 0.0 or (drive.turn != 0.0 and drive.speed == 0.0):
             self._began_at = self._body.driven
             return 0.0, None
         done = self._body.driven - self._began_at

@@ -45,11 +45,12 @@ EASY = 0.7
 
 @dataclass(frozen=True, slots=True)
 class Wish:
-    """Speeds asked of the drive, m/s and rad/s; `arrived` where the robot stands at the goal."""
+    """Speeds asked of the drive, ahead and to the left in m/s, and rad/s; `arrived` where it stands at the goal."""
 
     speed: float
     turn: float
     arrived: bool = False
+    side: float = 0.0
 
 
 STAND = Wish(0.0, 0.0)

@@ -76,7 +76,7 @@ class Simulator:
         midnight = setup.begins.replace(hour=0, minute=0, second=0, microsecond=0)
         begins = (setup.begins - midnight).total_seconds()
         self.world = World(setup.site, setup.conditions, begins, streams[8])
-        self.body = Body(setup.robot, setup.start, self.world)
+        self.body = Body(setup.robot, setup.start, self.world, self.trouble, streams[5])
         self.body.charge.energy *= setup.conditions.battery
         self.people = People(
             setup.conditions, setup.site, self.world, begins, self.body.place, streams[0], streams[7]
@@ -175,7 +175,7 @@ class Simulator:
         wish = robot.think(now)
         if self._ticks % BETWEEN_LOOKS_TICKS == 0:
             self._witness.look(now, bodies)  # before the robot moves on: telemetry tells of where it was sensed to be
-        self.body.advance(self.world, bodies, wish.speed, wish.turn, TICK_S)
+        self.body.advance(self.world, bodies, wish.speed, wish.side, wish.turn, TICK_S)
         if now >= self._next_telemetry:
             self._next_telemetry += TELEMETRY_S
             while self._next_telemetry <= now:
@@ -199,8 +199,7 @@ class Simulator:
         )  # fmt: skip
         if spot is not None:
             self._witness.carried()
-            self.body.place[:] = (spot.x, spot.y, spot.heading)
-            self.body.drive.stop()
+            self.body.carry(spot)
 
     def _sense(self, people: NDArray[np.float64]) -> None:
         """Look around, and take in what has been seen."""
@@ -222,7 +221,7 @@ class Simulator:
             stamp=now,
             pose=robot.pose,
             spread=self._localization.spread,
-            speed=body.drive.speed,
+            speed=math.hypot(body.drive.speed, body.drive.side) if body.drive.side else body.drive.speed,
             turn_rate=body.drive.turn,
             battery=body.charge.fraction,
             driven=body.driven,

@@ -108,7 +108,7 @@ class Witness:
 
     def _stands(self) -> bool:
         drive = self._body.drive
-        return abs(drive.speed) < SLOW and abs(drive.turn) < SLOW_TURN
+        return abs(drive.speed) < SLOW and abs(drive.side) < SLOW and abs(drive.turn) < SLOW_TURN
 
     def _in_the_way(self, people: NDArray[np.float64]) -> Cause:
         points = self._way_ahead()

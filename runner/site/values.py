@@ -167,6 +167,27 @@ class Battery:
 
 
 @dataclass(frozen=True, slots=True)
+class Odometry:
+    """How far off the wheels' account of a motion is: the six parameters of the velocity motion model.
+
+    Thrun, Burgard and Fox, Probabilistic Robotics, 2005, table 5.3, each as its square root. Standard deviations within
+    one step of 0.1 s, of the way made (meters), of the turn (radians) and of a last turn on the spot after both; each
+    grows with the way and with the turn of the step.
+    """
+
+    way_by_way: float = 0.05
+    """Meters a meter."""
+    way_by_turn: float = 0.01
+    """Meters a radian."""
+    turn_by_way: float = 0.02
+    """Radians a meter."""
+    turn_by_turn: float = 0.03
+    """Radians a radian."""
+    last_turn_by_way: float = 0.005
+    last_turn_by_turn: float = 0.01
+
+
+@dataclass(frozen=True, slots=True)
 class RobotDescription:
     """What the robot is: its outline and what its drive, eyes and battery can do.
 
@@ -187,6 +208,13 @@ class RobotDescription:
     sweep: Sweep | None = None
     filters: Filters = Filters()
     unseen_space: UnseenSpace = UnseenSpace.KEEP_OUT
+    sideways_speed: float = 0.0
+    """0 for a drive that cannot go sideways."""
+    odometry: Odometry = Odometry()
+    planner: str = "disc-search"
+    """Name of an entry point in the group `trundle.planners`."""
+    follower: str = "dynamic-window"
+    """Name of an entry point in the group `trundle.followers`."""
 
 
 @dataclass(frozen=True, slots=True)

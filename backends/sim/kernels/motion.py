@@ -8,6 +8,7 @@ from runner.site.compiled import kernel_compiler
 
 kernel = kernel_compiler(__file__)
 
+QUARTER = 0.5 * math.pi
 STRAIGHT = 1e-6  # rad/s: below this the arc is driven as its chord, which differs by less than a nanometer
 
 
@@ -24,6 +25,18 @@ def arc(x: float, y: float, heading: float, speed: float, turn: float, time: flo
         y + radius * (math.cos(heading) - math.cos(after)),
         after,
     )
+
+
+@kernel
+def glide(
+    x: float, y: float, heading: float, speed: float, side: float, turn: float, time: float
+) -> tuple[float, float, float]:
+    """The same for a robot that also goes sideways, to the left at `side`: both ways are linear in their speeds."""
+    ahead_x, ahead_y, after = arc(x, y, heading, speed, turn, time)
+    if side == 0.0:
+        return ahead_x, ahead_y, after
+    left_x, left_y, _ = arc(0.0, 0.0, heading + QUARTER, side, turn, time)
+    return ahead_x + left_x, ahead_y + left_y, after
 
 
 @kernel

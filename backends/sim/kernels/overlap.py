@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels import grid, motion
 from backends.sim.kernels.grid import CELLS_PER_M
-from backends.sim.kernels.motion import arc
+from backends.sim.kernels.motion import glide
 from runner.site.compiled import kernel_compiler
 
 kernel = kernel_compiler(__file__, grid.__file__, motion.__file__)
@@ -115,6 +115,7 @@ def moved(
     reach: float,
     pose: NDArray[Any],
     speed: float,
+    side: float,
     turn: float,
     time: float,
 ) -> int:
@@ -123,10 +124,10 @@ def moved(
     `people` has rows (x, y, radius); `reach` is the circumscribed radius of the outline. Returns what it came up
     against: `FREE`, `SOLID` or `PERSON`.
     """
-    steps = max(1, math.ceil((abs(speed) + abs(turn) * reach) * time / SUBSTEP))
+    steps = max(1, math.ceil((abs(speed) + abs(side) + abs(turn) * reach) * time / SUBSTEP))
     x, y, heading = pose[0], pose[1], pose[2]
     for step in range(1, steps + 1):
-        new_x, new_y, new_heading = arc(x, y, heading, speed, turn, time * step / steps)
+        new_x, new_y, new_heading = glide(x, y, heading, speed, side, turn, time * step / steps)
         if grid.value_at(distance, new_x, new_y) < reach + 2.0 * CELL and covers_solid(
             blocked, outline, new_x, new_y, new_heading
         ):

@@ -82,7 +82,7 @@ def test_the_wheels_stop_dead_at_a_wall_the_robot_does_not_believe_in() -> None:
     drive = start(TWO_ROOMS, Pose(4.0, 4.0, 0.0))
     body, simulator = drive.simulator.body, drive.simulator
     for _ in range(80):
-        body.advance(simulator.world, simulator.people.bodies, 0.8, 0.0, 0.1)
+        body.advance(simulator.world, simulator.people.bodies, 0.8, 0.0, 0.0, 0.1)
     assert body.met == SOLID
     assert body.drive.still
     assert 6.9 <= body.place[0] + 0.35 <= 6.9501
