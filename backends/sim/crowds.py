@@ -17,8 +17,10 @@ from backends.sim.errands import Errands
 from backends.sim.outline import Outline
 from runner.site.values import Crowd, Point
 
-RING_M = 0.25
+RING_M = 0.15
 """Between the robot's circumscribed circle and the people who stand around it."""
+BESIDE_M = 0.6
+"""Whoever goes to the far side keeps so much farther from the robot."""
 NEAR_M = 0.8
 """Somebody this much farther from the robot than the ring comes after it."""
 FROM_M = 4.0
@@ -39,6 +41,10 @@ class _Gathering:
     leaves: float = math.inf
     met: bool = False
     here: bool = False
+    turned: float = 0.0
+    """Where the first spot of the ring is, radians."""
+    slots: dict[int, int] = field(default_factory=dict)
+    """The spot of the ring that each member has, counted counterclockwise."""
     aims: dict[int, Point] = field(default_factory=dict)
     """Where the robot was when each member last made for it."""
 
@@ -84,6 +90,8 @@ class Crowds:
     def _come(self, one: _Gathering, now: float, robot: NDArray[np.float64], outline: Outline) -> None:
         one.due = math.inf if one.crowd.per_hour is None else now + self._gap(one.crowd)
         one.here, one.met, one.leaves = True, False, now + AT_MOST_ON_THE_WAY_S
+        one.turned = float(robot[2])
+        one.slots.clear()
         places = self._places_around(robot)
         for number, member in enumerate(one.members):
             place = places[number % len(places)]
@@ -119,23 +127,52 @@ class Crowds:
         return outline.outer + RING_M + float(self._errands.feet.bodies[member, 2])
 
     def _approach(self, one: _Gathering, member: int, now: float, robot: NDArray[np.float64], outline: Outline) -> None:
-        """Walk to one's own spot on the ring as it is now, or, where that is in a wall, straight to the robot."""
+        """Walk to the nearest spot on the ring that nobody else has, going round the robot to the far side."""
         feet, ways = self._errands.feet, self._errands.ways
         here, radius = feet.where(member), float(feet.bodies[member, 2])
-        angle = float(robot[2]) + 2.0 * math.pi * (member - one.members.start) / one.crowd.count
-        ring = self._ring(member, outline)
         robot_at = one.aims[member] = (float(robot[0]), float(robot[1]))
-        spot = (robot_at[0] + ring * math.cos(angle), robot_at[1] + ring * math.sin(angle))
-        if not ways.sees(robot_at, spot, 2.0 * ring):
-            spot = robot_at
+        ring = self._ring(member, outline)
+        spot = self._free_spot(one, member, here, robot_at, ring)
         way = ways.straight_or_round(here, spot, radius)
         if way is None:
             feet.stand(member, math.inf)
-        else:
-            feet.walk(member, way, now)
+            return
+        before = here if len(way) == 1 else (float(way[-2, 0]), float(way[-2, 1]))
+        feet.walk(member, np.vstack([way[:-1], *_round(before, spot, robot_at, ring), way[-1:]]), now)
+
+    def _free_spot(self, one: _Gathering, member: int, here: Point, robot_at: Point, ring: float) -> Point:
+        """The nearest spot of the ring that is free; the robot itself where none is, which is as near as one comes."""
+        count, ways = one.crowd.count, self._errands.ways
+        spots = {}
+        for slot in set(range(count)) - {other for who, other in one.slots.items() if who != member}:
+            angle = one.turned + 2.0 * math.pi * slot / count
+            spot = (robot_at[0] + ring * math.cos(angle), robot_at[1] + ring * math.sin(angle))
+            if ways.sees(robot_at, spot, 2.0 * ring):
+                spots[slot] = spot
+        if not spots:
+            return robot_at
+        slot = min(spots, key=lambda slot: (math.dist(spots[slot], here), slot))
+        one.slots[member] = slot
+        return spots[slot]
 
     def _leave(self, one: _Gathering, now: float, robot: NDArray[np.float64]) -> None:
         one.here = False
         for member in one.members:
             if self._errands.feet.is_about(member):
                 self._errands.send_off(member, robot, now)
+
+
+def _round(start: Point, end: Point, middle: Point, ring: float) -> list[Point]:
+    """A point beside the robot by which to go, where the straight line would lead through the ring around it."""
+    along_x, along_y = end[0] - start[0], end[1] - start[1]
+    length = math.hypot(along_x, along_y)
+    if length < ring:
+        return []
+    along_x, along_y = along_x / length, along_y / length
+    to_x, to_y = middle[0] - start[0], middle[1] - start[1]
+    ahead, left = to_x * along_x + to_y * along_y, along_x * to_y - along_y * to_x
+    if not 0.0 < ahead < length or abs(left) > ring:
+        return []
+    side = 1.0 if left < 0.0 else -1.0
+    off = side * (ring + BESIDE_M)
+    return [(middle[0] - along_y * off, middle[1] + along_x * off)]

@@ -14,6 +14,8 @@ from runner.site.values import Point
 OUT_OF_SIGHT_M = 10.0
 """People come and go where the robot cannot see them: farther off than this, or behind something."""
 LOOK_AGAIN_S = 5.0
+OFF_ROBOT_M = 3.0
+"""Somebody who leaves goes to a place at least so far from the robot, if there is one."""
 
 
 class Errands:
@@ -44,8 +46,10 @@ class Errands:
         return True
 
     def send_off(self, one: int, robot: NDArray[np.float64], now: float) -> None:
-        """Let somebody walk away from anywhere, round the robot, to a place drawn at random."""
-        goal = int(self._random.integers(len(self.ways.spots)))
+        """Let somebody walk away from anywhere, round the robot, to a place off it drawn at random."""
+        spots = self.ways.spots
+        off = [place for place, (x, y) in enumerate(spots) if math.hypot(x - robot[0], y - robot[1]) > OFF_ROBOT_M]
+        goal = off[int(self._random.integers(len(off)))] if off else 0
         self.begin_at(one, goal)
         self._take(one, goal, self._round(one, goal, robot), now)
 

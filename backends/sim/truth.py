@@ -1,7 +1,7 @@
 """What really is the case: where the robot is and why it stands or gets on badly. For scoring; the robot never asks.
 
 What is wrong with the robot comes before what is in its way. In the way is what really stands on the next meters of
-its route, or, where it has none, first on the way that the map has.
+its route where it stands or believes it obstructed, or, where it has none, first on the way that the map has.
 """
 
 from __future__ import annotations
@@ -29,7 +29,9 @@ EVERY_S = 1.0
 """Between two truths at least, while the cause stays the same and the robot is under way."""
 SLOW, SLOW_TURN = 0.1, 0.1
 """Slower than this, m/s and rad/s, it stands."""
-AHEAD_M = 2.0
+AHEAD_M, BEYOND_M = 2.0, 1.0
+"""Where it stands, what is so far ahead is in its way; where it believes its route obstructed, all up to there and a
+little beyond."""
 ELBOW_M = 0.2
 """A person this near to where the robot's disc would pass is in the way."""
 ASTRAY_M, ASTRAY = 0.5, math.radians(20.0)
@@ -80,9 +82,12 @@ class Witness:
 
     def _cause(self, idle: bool, people: NDArray[np.float64]) -> Cause:
         wrong = self._wrong()
-        if wrong is not Cause.NOTHING or idle or not self._stands():
+        if wrong is not Cause.NOTHING or idle:
             return wrong
-        return self._in_the_way(people)
+        obstructed = self._obstruction()
+        if obstructed is None and not self._stands():
+            return wrong
+        return self._in_the_way(people, AHEAD_M if obstructed is None else obstructed + BEYOND_M)
 
     def _wrong(self) -> Cause:
         trouble = self._trouble
@@ -110,8 +115,14 @@ class Witness:
         drive = self._body.drive
         return abs(drive.speed) < SLOW and abs(drive.side) < SLOW and abs(drive.turn) < SLOW_TURN
 
-    def _in_the_way(self, people: NDArray[np.float64]) -> Cause:
-        points = self._way_ahead()
+    def _obstruction(self) -> float | None:
+        """How far ahead the robot believes its route to be obstructed, if it does."""
+        route, covered = self._robot.route, self._robot.follower.covered
+        at = None if route is None else route.obstruction(self._memory.field, covered)
+        return None if at is None else at - covered
+
+    def _in_the_way(self, people: NDArray[np.float64], ahead: float) -> Cause:
+        points = self._way_ahead(ahead)
         inner = self._body.outline.inner
         for index in range(len(points) - 1):
             x, y = points[index].tolist()
@@ -140,12 +151,12 @@ class Witness:
         mapped = self._memory.known[blocked[:, 0], blocked[:, 1]] <= 0.0
         return Cause.NARROW if mapped.all() else Cause.FURNITURE
 
-    def _way_ahead(self) -> Points:
-        """Points of the way ahead, some cells apart: of the robot's route, or of the map's way to the goal."""
+    def _way_ahead(self, length: float) -> Points:
+        """Points of the next meters, some cells apart: of the robot's route, or of the map's whole way to the goal."""
         route = self._robot.route
         if route is not None:
             covered = self._robot.follower.covered
-            ahead = (route.along >= covered) & (route.along <= covered + AHEAD_M)
+            ahead = (route.along >= covered) & (route.along <= covered + length)
             return route.points[ahead]
         if self._map_way is None and self._goal is not None:
             weight = halved(self._memory.known, self._body.outline.inner + CELL_M, self._body.outline.outer + 0.3, 8.0)

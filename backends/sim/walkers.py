@@ -113,11 +113,14 @@ class Company:
                 self._stay(member, now)
 
     def _go_home(self, one: int, now: float, robot: NDArray[np.float64]) -> None:
-        """The group goes home; one of it who was seen and stood on goes home alone."""
-        for member in self._members(one) or [one]:
-            if not self._errands.feet.walks(member):
-                leads = self._errands.feet.leader[member] == member
-                self._errands.leave_floor(member, now, robot, self._again(now) if leads else math.inf)
+        """Leave the floor with the group; where the robot could see that, walk on to somewhere else first."""
+        errands, feet = self._errands, self._errands.feet
+        here = [member for member in self._members(one) if feet.is_about(member)]
+        if any(not errands.unseen(feet.where(member), robot) for member in here):
+            self._set_off(one, now)
+            return
+        for member in self._members(one):
+            feet.vanish(member, self._again(now) if member == one else math.inf)
 
     def _come_back(self, one: int, now: float, robot: NDArray[np.float64]) -> None:
         """Step in at a place that the robot cannot see, or wait a while longer."""

@@ -60,12 +60,11 @@ def seen(force_x: float, force_y: float, way_x: float, way_y: float) -> float:
 
 @kernel
 def uphill(distance: NDArray[Any], x: float, y: float) -> tuple[float, float]:
-    """Unit direction away from the nearest wall, by central differences of the distance field; zero on a ridge."""
-    slope_x = value_at(distance, x + CELL, y) - value_at(distance, x - CELL, y)
-    slope_y = value_at(distance, x, y + CELL) - value_at(distance, x, y - CELL)
-    size = math.sqrt(slope_x * slope_x + slope_y * slope_y)
-    if size < 1e-6:
-        return 0.0, 0.0
+    """Gradient of the distance field by central differences, of length 1 at most: the direction away from the nearest
+    wall; shorter where walls on two sides are as near, as in a doorway, for there they push against each other."""
+    slope_x = (value_at(distance, x + CELL, y) - value_at(distance, x - CELL, y)) / (2.0 * CELL)
+    slope_y = (value_at(distance, x, y + CELL) - value_at(distance, x, y - CELL)) / (2.0 * CELL)
+    size = max(math.sqrt(slope_x * slope_x + slope_y * slope_y), 1.0)
     return slope_x / size, slope_y / size
 
 
