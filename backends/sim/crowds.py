@@ -96,9 +96,10 @@ class Crowds:
         for number, member in enumerate(one.members):
             place = places[number % len(places)]
             self._errands.begin_at(member, place)
-            radius = float(self._errands.feet.bodies[member, 2])
-            self._errands.feet.appear(member, self._errands.ways.near(place, radius))
-            self._approach(one, member, now, robot, outline)
+            spot = self._errands.spot_off(place, member, robot)
+            if spot is not None:
+                self._errands.feet.appear(member, spot)
+                self._approach(one, member, now, robot, outline)
 
     def _places_around(self, robot: NDArray[np.float64]) -> list[int]:
         """The nearest places that are not too near; all where there are none such."""
@@ -108,7 +109,7 @@ class Crowds:
 
     def _keep_near(self, one: _Gathering, now: float, robot: NDArray[np.float64], outline: Outline) -> None:
         feet = self._errands.feet
-        for member in one.members:
+        for member in filter(feet.is_about, one.members):
             x, y = feet.where(member)
             away = math.hypot(x - robot[0], y - robot[1]) - self._ring(member, outline)
             if away < NEAR_M and not one.met:

@@ -14,6 +14,8 @@ from runner.site.values import Point
 OUT_OF_SIGHT_M = 10.0
 """People come and go where the robot cannot see them: farther off than this, or behind something."""
 LOOK_AGAIN_S = 5.0
+SPOT_TRIES, ELBOW_M = 10, 1.0
+"""Nobody begins to stand nearer than this to the middle of the robot."""
 OFF_ROBOT_M = 3.0
 """Somebody who leaves goes to a place at least so far from the robot, if there is one."""
 
@@ -62,6 +64,14 @@ class Errands:
                 goal, way = back, self._round(one, back, robot)
             return not self._take(one, goal, way, now)
         return not self.feet.next_bend(one, now)
+
+    def spot_off(self, place: int, one: int, robot: NDArray[np.float64]) -> Point | None:
+        """A free spot near a place and off the robot; None where none is found in some tries."""
+        for _ in range(SPOT_TRIES):
+            spot = self.ways.near(place, float(self.feet.bodies[one, 2]))
+            if math.hypot(spot[0] - robot[0], spot[1] - robot[1]) >= ELBOW_M:
+                return spot
+        return None
 
     def unseen(self, spot: Point, robot: NDArray[np.float64]) -> bool:
         """Whether the robot cannot see a spot."""

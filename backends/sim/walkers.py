@@ -14,7 +14,7 @@ from runner.site.values import DAY_S, AboutShare, Site, Walkers
 
 STAY_MEAN_S = 30.0
 """Mean of the exponential time spent at a place."""
-START_OFF_ROBOT_M = 1.0
+PLACE_TRIES = 20
 COME_BACK_S = 60.0
 """Somebody who is not about is asked again after a time around this."""
 
@@ -85,15 +85,16 @@ class Company:
         return between[int(self._random.integers(len(between)))]
 
     def _put(self, one: int, robot: NDArray[np.float64]) -> None:
-        """Stand near a place and off the robot; after many tries, at whatever place was drawn last."""
-        feet, errands = self._errands.feet, self._errands
-        spot = errands.ways.near(errands.at[one], float(feet.bodies[one, 2]))
-        for _ in range(50):
-            if math.hypot(spot[0] - robot[0], spot[1] - robot[1]) >= START_OFF_ROBOT_M:
+        """Stand near a place and off the robot; at whatever place was drawn last where that takes many tries."""
+        errands = self._errands
+        spot = errands.spot_off(errands.at[one], one, robot)
+        for _ in range(PLACE_TRIES):
+            if spot is not None:
                 break
             errands.begin_at(one, self._draw(one))
-            spot = errands.ways.near(errands.at[one], float(feet.bodies[one, 2]))
-        feet.appear(one, spot)
+            spot = errands.spot_off(errands.at[one], one, robot)
+        if spot is not None:
+            errands.feet.appear(one, spot)
 
     def _stay(self, one: int, now: float) -> None:
         """Stand for a while; who walks with somebody stands until that one sets off."""
@@ -132,8 +133,10 @@ class Company:
         for member in self._members(one):
             if feet.is_about(member):
                 continue
-            errands.begin_at(member, place)
-            feet.appear(member, errands.ways.near(place, float(feet.bodies[member, 2])))
+            spot = errands.spot_off(place, member, robot)
+            if spot is not None:
+                errands.begin_at(member, place)
+                feet.appear(member, spot)
             self._stay(member, now)
 
     def _members(self, one: int) -> list[int]:
