@@ -9,12 +9,12 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from backends.sim.memory import PAINT_M, Memory
+from backends.sim.memory import PAINT_M, Memory, State, surveyed
 from backends.sim.outline import outline_of
 from backends.sim.sensing import Scan
-from runner.site.floor import clearance
-from runner.site.values import CELL_M, Lidar, Pose
-from tests.backends.sim.support import CART
+from runner.site.floor import clearance, rasterize
+from runner.site.values import CELL_M, Lidar, Pose, Site, Solid, Sweep
+from tests.backends.sim.support import CART, TWO_ROOMS
 
 LIDAR = Lidar(math.radians(180.0), 181, 10.0, 10.0, 0.0)
 OUTLINE = outline_of(CART.footprint)
@@ -32,7 +32,7 @@ def scan_of(ranges: dict[int, float]) -> Scan:
     filled = np.full(181, np.inf)
     for beam, reach in ranges.items():
         filled[beam] = reach
-    return Scan(filled, -math.pi / 2, math.pi / 180, 0.0)
+    return Scan(filled, -math.pi / 2, math.pi / 180, 0.0, sight=filled)
 
 
 def test_a_hit_is_remembered_where_it_was() -> None:
@@ -109,6 +109,138 @@ def test_no_more_than_64_points_are_shown_and_none_beyond_4_meters() -> None:
     points = made.shown(STANDING)
     assert 32 <= len(points) <= 64
     assert all(math.dist(point, (2.0, 3.025)) <= 4.0 for point in points)
+
+
+SPOT = (4.0, 3.025)
+"""What a beam of 2 m straight ahead meets."""
+
+
+def cleared() -> Memory:
+    """A memory that had something at the spot and was told to clear."""
+    made = memory()
+    made.take(scan_of({MIDDLE: 2.0}), STANDING)
+    assert made.state(SPOT) is State.OCCUPIED
+    assert made.forget(STANDING, 3.0) == 1
+    return made
+
+
+def test_what_was_cleared_is_unseen_and_not_free() -> None:
+    made = cleared()
+    assert made.state(SPOT) is State.UNSEEN
+    assert (made.unseen, made.count) == (1, 0)
+    assert made.state((3.0, 3.0)) is State.FREE, "only what was remembered there is forgotten"
+
+
+def test_a_beam_that_comes_back_from_beyond_shows_at_once_that_it_is_free() -> None:
+    made = cleared()
+    made.take(scan_of({MIDDLE: 4.0}), STANDING)
+    assert made.state(SPOT) is State.FREE
+    assert made.unseen == 0
+
+
+def test_beams_that_do_not_come_back_show_it_after_a_second_of_them() -> None:
+    made = cleared()
+    for number in range(1, 11):
+        assert made.state(SPOT) is State.UNSEEN
+        made.take(scan_of({}), STANDING)
+        assert made.unseen == (0 if number == 10 else 1)
+    assert made.state(SPOT) is State.FREE
+
+
+def test_beams_that_do_not_come_back_show_nothing_farther_than_they_are_trusted() -> None:
+    made = memory()
+    made.take(scan_of({MIDDLE: 4.9}), STANDING)
+    made.forget(STANDING, 6.0)
+    for _ in range(50):
+        made.take(scan_of({}), Pose(1.0, 3.025, 0.0))
+    assert made.unseen == 1
+
+
+def test_a_blind_scan_shows_nothing() -> None:
+    made = cleared()
+    for _ in range(50):
+        made.take(
+            Scan(np.full(181, np.inf), -math.pi / 2, math.pi / 180, 0.0, sight=np.zeros(181), blind=True), STANDING
+        )
+    assert made.state(SPOT) is State.UNSEEN
+
+
+def test_what_is_hit_again_is_occupied_again_and_what_stands_before_it_hides_it() -> None:
+    made = cleared()
+    made.take(scan_of({MIDDLE: 1.0}), STANDING)
+    assert made.state(SPOT) is State.UNSEEN
+    made.take(scan_of({MIDDLE: 2.0}), STANDING)
+    assert made.state(SPOT) is State.OCCUPIED
+    assert made.unseen == 0
+
+
+def test_a_field_without_unseen_space_counts_it_as_solid_and_the_robots_own_does_not() -> None:
+    made = cleared()
+    row, column = int(SPOT[1] / CELL_M), int(SPOT[0] / CELL_M)
+    assert made.without_unseen()[row, column] == 0.0
+    assert made.field[row, column] > 1.0
+    made.take(scan_of({MIDDLE: 4.0}), STANDING)
+    made.forget(STANDING, 0.1)
+    assert made.without_unseen() is made.field
+
+
+def test_floor_that_hangs_together_with_no_place_was_not_surveyed() -> None:
+    walls = (Solid(((4.0, 0.0), (4.2, 0.0), (4.2, 6.0), (4.0, 6.0))),)
+    mapped = rasterize(Site("two halves", 8.0, 6.0, (), walls, (), ())).blocked()
+    made = Memory(mapped, OUTLINE, LIDAR, surveyed(mapped, Site("x", 8.0, 6.0, (), walls, (), ()), STANDING))
+    states = [made.state(point) for point in ((2.0, 3.0), (4.1, 3.0), (6.0, 3.0), (9.0, 3.0))]
+    assert states == [State.FREE, State.OCCUPIED, State.UNSEEN, State.UNSEEN]
+
+
+def test_all_rooms_with_a_door_were_surveyed() -> None:
+    mapped = rasterize(TWO_ROOMS).blocked()
+    assert (surveyed(mapped, TWO_ROOMS, STANDING) == ~mapped).all()
+
+
+SWEEP = Sweep(math.radians(30.0), 30, 3.5, 2.0)
+
+
+def swept(made: Memory, reach: float) -> None:
+    """Three columns straight ahead, all with the same range."""
+    made.take_columns(np.full(3, reach), STANDING.x, STANDING.y, -math.radians(1.0), math.radians(1.0), SWEEP)
+
+
+def test_what_only_the_sweep_saw_stays_when_the_lidar_looks_over_it() -> None:
+    made = memory()
+    swept(made, 2.0)
+    seen = made.count
+    assert seen >= 1
+    for _ in range(300):
+        made.take(scan_of(dict.fromkeys(range(181), 5.5)), STANDING)
+    assert made.count == seen
+
+
+def test_the_sweep_takes_back_what_it_saw_when_it_meets_only_floor_there() -> None:
+    made = memory()
+    for _ in range(3):
+        swept(made, 2.0)
+    counts = []
+    for _ in range(3):
+        swept(made, SWEEP.range_max + 1.0)
+        counts.append(made.count > 0)
+    assert counts == [True, True, False]
+
+
+def test_the_sweep_shows_cleared_floor_to_be_free() -> None:
+    made = cleared()
+    swept(made, SWEEP.range_max + 1.0)
+    assert made.state(SPOT) is State.FREE
+
+
+def test_what_the_lidar_saw_too_is_the_lidars_to_take_away() -> None:
+    made = memory()
+    swept(made, 2.0)
+    for _ in range(3):
+        made.take(scan_of({MIDDLE: 2.0}), STANDING)
+    assert made.state(SPOT) is State.OCCUPIED
+    for _ in range(40):
+        made.take(scan_of({MIDDLE: 4.0}), STANDING)
+    assert made.state(SPOT) is State.FREE
 
 
 @settings(max_examples=40, deadline=None)

@@ -78,7 +78,7 @@ def test_a_late_scan_is_placed_where_the_robot_was_when_it_was_taken() -> None:
 
 def test_a_scan_without_latency_is_placed_where_the_robot_is() -> None:
     scan = Scan(np.zeros(1), -1.0, 0.1, 0.5)
-    assert scan.origin(Pose(1.0, 2.0, math.pi / 2.0)) == (pytest.approx(1.0), pytest.approx(2.5), math.pi / 2.0 - 1.0)
+    assert scan.origin(Pose(1.0, 2.0, math.pi / 2.0)) == pytest.approx((1.0, 2.5, math.pi / 2.0 - 1.0))
 
 
 # --- lost beams, blindness ----------------------------------------------------------------------------------------
@@ -134,7 +134,7 @@ def test_the_filter_drops_shadow_points_and_keeps_the_surfaces() -> None:
     assert not between(filtered).any()
     kept = np.isfinite(filtered).all(axis=0)
     assert kept.sum() > 0.9 * np.isfinite(exact).sum()
-    face = np.abs(exact - 1.5 / np.cos(np.radians(np.arange(181) - 90.0))) < 1e-6
+    face: NDArray[np.bool_] = np.abs(exact - 1.5 / np.cos(np.radians(np.arange(181) - 90.0))) < 1e-6
     assert face.sum() > 20
     assert kept[face].all(), "the near surface keeps every beam"
 
