@@ -72,7 +72,7 @@ class World:
         if whole_second:
             changed += self._door_events(now, robot, outline, people)
         if changed:
-            self._redraw(np.concatenate(changed))
+            self._redraw(changed)
             self._laid = [laid for laid in self._laid if not laid.gone]
         return bool(changed)
 
@@ -99,7 +99,7 @@ class World:
     def _swing(self, name: str, ajar: frozenset[str]) -> None:
         self.ajar = ajar
         self.shut = self._locked | ajar
-        self._redraw(self._floor.doors[name])
+        self._redraw([self._floor.doors[name]])
 
     def _lay_more(self, cartons: Sequence[Carton]) -> None:
         self._laid += [_Laid(carton, _carton_cells(carton, self._floor.shape)) for carton in cartons]
@@ -155,8 +155,8 @@ class World:
             bool((np.hypot(centers[:, 0] - x, centers[:, 1] - y) < radius + ELBOW_M).any()) for x, y, radius in people
         )
 
-    def _redraw(self, changed: NDArray[np.intp]) -> None:
-        """Rasters and distance fields after the given cells may have changed."""
+    def _redraw(self, changed: Sequence[NDArray[np.intp]]) -> None:
+        """Rasters and distance fields after these groups of cells may have changed."""
         tall = self._floor.blocked(sorted(self.shut))
         down = [laid for laid in self._laid if laid.down_at is not None and not laid.gone]
         for laid in down:
@@ -167,11 +167,12 @@ class World:
             self.blocked = tall.copy()
             for laid in lows:
                 self.blocked[laid.cells[:, 0], laid.cells[:, 1]] = True
-        _renew(self.distance, self.blocked, changed)
-        self.sight = _renewed(self.sight, self.distance, tall, changed) if lows else self.distance
+        for cells in changed:
+            _renew(self.distance, self.blocked, cells)
+        self.sight = _beside(self.sight, self.distance, tall, changed) if lows else self.distance
         self._redraw_walkable(changed)
 
-    def _redraw_walkable(self, changed: NDArray[np.intp]) -> None:
+    def _redraw_walkable(self, changed: Sequence[NDArray[np.intp]]) -> None:
         if not self.ajar:
             self.walkable = self.distance
             return
@@ -179,7 +180,7 @@ class World:
         for name in sorted(self.ajar):
             leaf = self._floor.doors[name]
             free[leaf[:, 0], leaf[:, 1]] = self._floor.solid[leaf[:, 0], leaf[:, 1]]
-        self.walkable = _renewed(self.walkable, self.distance, free, changed)
+        self.walkable = _beside(self.walkable, self.distance, free, changed)
 
 
 def _furnished(site: Site, conditions: Conditions) -> Floor:
@@ -188,13 +189,16 @@ def _furnished(site: Site, conditions: Conditions) -> Floor:
     return rasterize(replace(site, solids=solids))
 
 
-def _renewed(
-    field: NDArray[np.float32], main: NDArray[np.float32], blocked: NDArray[np.bool_], changed: NDArray[np.intp]
+def _beside(
+    field: NDArray[np.float32],
+    main: NDArray[np.float32],
+    blocked: NDArray[np.bool_],
+    changed: Sequence[NDArray[np.intp]],
 ) -> NDArray[np.float32]:
-    """A field of its own beside the main one: made whole at first, then renewed around each change."""
-    if field is main:
-        return np.minimum(clearance(blocked), np.float32(FIELD_REACH_M))
-    _renew(field, blocked, changed)
+    """A field beside the main one, right after a change: a copy of it where it was the same until then."""
+    field = main.copy() if field is main else field
+    for cells in changed:
+        _renew(field, blocked, cells)
     return field
 
 
