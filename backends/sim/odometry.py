@@ -1,8 +1,8 @@
 """What the wheels say of the robot's motion: where it is in a frame that begins where it began, and how sure that is.
 
-The velocity motion model of Thrun, Burgard and Fox (Probabilistic Robotics, 2005, table 5.3), whose parameters hold for
-a step of 0.1 s: the wheels measure speeds with noise, and a last turn on the spot. What the wheels do not feel is not in
-it: slip, a bump, being carried.
+The velocity motion model of Thrun, Burgard and Fox (Probabilistic Robotics, 2005, table 5.3), whose parameters hold
+for a step of 0.1 s: the wheels measure speeds with noise, and a last turn on the spot. What the wheels do not feel is
+not in it: slip, a bump, being carried.
 """
 
 from __future__ import annotations
@@ -18,7 +18,7 @@ from runner.site.values import Odometry, Pose
 
 @dataclass(slots=True)
 class Doubt:
-    """Variances of what the wheels said since somebody last asked: of the way, of the turn, of last turns on the spot."""
+    """Variances of what the wheels said since somebody last asked: of the way, the turn, last turns on the spot."""
 
     way: float = 0.0
     turn: float = 0.0

@@ -19,6 +19,7 @@ from backends.sim.easing import Easing
 from backends.sim.follower import STAND, Follower, Wish
 from backends.sim.memory import Memory
 from backends.sim.planner import Planner, Route
+from backends.sim.sensing import relative
 from runner.site.values import Pose, UnseenSpace
 
 PATIENCE_S = 1.0
@@ -57,6 +58,9 @@ class Robot:
         self._ending: _Ending | None = None
         self._under_way = False
         self._replan_asked: int | None = None
+        self._relocating: int | None = None
+        self._moves: tuple[Pose, Pose] | None = None  # start and end of a relative move, in the frame of odometry
+        self.lost = False
         self._obstructed_since: float | None = None
         self._attempts = 0
         self._next_attempt = 0.0
@@ -64,7 +68,8 @@ class Robot:
     @property
     def idle(self) -> bool:
         """Whether there is nothing to do and nothing moves."""
-        return self._goal is None and not self._easing.active and self._body.drive.still
+        busy = self._goal is not None or self._easing.active or self._relocating is not None
+        return not busy and self._body.drive.still
 
     @property
     def remaining(self) -> float | None:
@@ -80,7 +85,10 @@ class Robot:
         self._last_goal_id = goal.id
         self._drop_goal()
         self._body.charge.charging = False
+        self._moves = None
         if goal.relative:
+            odometry = self._body.wheels.pose
+            self._moves = (odometry, seen_from(odometry, goal.pose))
             goal = replace(goal, pose=seen_from(self.pose, goal.pose))
         if reason := self._refusal(goal.pose):
             self.news.append(GoalReport(now, goal.id, GoalStatus.REFUSED, reason))
@@ -94,6 +102,7 @@ class Robot:
         if (easing := self._easing.stop()) is not None:
             self.news.append(ActionReport(now, easing, False, "The robot was halted."))
         self._answer_replan(now, False, "The robot was halted.")
+        self.found("The robot was halted.", now)
         if self._goal is not None:
             self._ending = _Ending(GoalStatus.HALTED, "")
             self._end_when_still(now)
@@ -118,6 +127,17 @@ class Robot:
         self._body.charge.charging = False
         self._easing.begin(action_id, distance)
 
+    def relocate(self, action_id: int, now: float) -> None:
+        """Stand until `found` says what came of the look for itself."""
+        self.found("Another look was asked for.", now)
+        self._relocating = action_id
+
+    def found(self, reason: str, now: float) -> None:
+        """The look for itself under way, if there is one, ended: well where no reason is given."""
+        if self._relocating is not None:
+            self.news.append(ActionReport(now, self._relocating, not reason, reason))
+            self._relocating = None
+
     # --- every tick -------------------------------------------------------------------------------------------
 
     def think(self, now: float) -> Wish:
@@ -127,10 +147,14 @@ class Robot:
         if self._ending is not None:
             self._end_when_still(now)
             return STAND
+        if self._relocating is not None:
+            return STAND
         if self._easing.active:
             return self._ease(now)
         if self._goal is None:
             self._answer_replan(now, True, "")
+            return STAND
+        if self.lost:
             return STAND
         return self._pursue(self._goal, now)
 
@@ -149,6 +173,8 @@ class Robot:
         return Wish(speed, 0.0)
 
     def _pursue(self, goal: Goal, now: float) -> Wish:
+        if self._moves is not None:
+            goal = replace(goal, pose=self._on_map(self._moves[1]))
         self._supervise(goal, now)
         if self.route is None or self._ending is not None:
             return STAND
@@ -159,9 +185,15 @@ class Robot:
             self._end_when_still(now)
         return wish
 
+    def _on_map(self, there: Pose) -> Pose:
+        """A pose of the frame of odometry on the map: as far from where the robot believes to be now."""
+        return seen_from(self.pose, Pose(*relative(self._body.wheels.pose, there)))
+
     def _supervise(self, goal: Goal, now: float) -> None:
         """Keep the route fit to be followed: plan where there is none, where it is obstructed, or where asked."""
         if self.route is not None:
+            if self._moves is not None:
+                self.route = self._planner.straight(self.memory.field, *map(self._on_map, self._moves))
             self.follower.locate(self.route, self.pose)
         asked = self._replan_asked is not None
         if not asked and not (self._wants_plan(now) and now >= self._next_attempt):
@@ -184,8 +216,10 @@ class Robot:
 
     def _attempt(self, goal: Goal, now: float, anew: bool) -> bool:
         """Plan once. Where that fails the old route is kept and followed as far as it goes, unless `anew`."""
-        plan = self._planner.straight if goal.relative else self._planner.plan
-        route = plan(self._passable(), self.pose, goal.pose)
+        if self._moves is not None:
+            route: Route | None = self._planner.straight(self.memory.field, *map(self._on_map, self._moves))
+        else:
+            route = self._planner.plan(self._passable(), self.pose, goal.pose)
         self._next_attempt = now + BETWEEN_ATTEMPTS_S
         if route is None:
             self._attempts += 1

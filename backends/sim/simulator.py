@@ -13,11 +13,12 @@ from datetime import datetime, timedelta
 import numpy as np
 from numpy.typing import NDArray
 
-from backends.contract import ActionReport, Capability, Clock, Goal, Report, Setup, Telemetry, Truth
-from backends.sim.belief import Localization
+from backends.contract import Capability, Clock, Goal, Report, Setup, Telemetry, Truth
 from backends.sim.body import Body
 from backends.sim.carrying import spot_for
 from backends.sim.faults import Faults
+from backends.sim.likelihood import field_of
+from backends.sim.localization import Localization
 from backends.sim.memory import Memory, surveyed
 from backends.sim.people import People
 from backends.sim.robot import Robot
@@ -82,12 +83,14 @@ class Simulator:
             setup.conditions, setup.site, self.world, begins, self.body.place, streams[0], streams[7]
         )  # fmt: skip
         mapped = floor.blocked()
-        self.memory = Memory(mapped, self.body.outline, setup.robot.lidar, surveyed(mapped, setup.site, setup.start))
+        known_floor = surveyed(mapped, setup.site, setup.start)
+        self.memory = Memory(mapped, self.body.outline, setup.robot.lidar, known_floor)
         self.robot = Robot(self.body, self.memory, self.body.pose)
         uneven = setup.conditions.uneven_floor
         self._scanner = Scanner(setup.robot, self.body.outline, uneven, TICKS_PER_S, streams[1], streams[3])
         self._sweeper = None if setup.robot.sweep is None else Sweeper(setup.robot.sweep, TICKS_PER_S, streams[4])
-        self._localization = Localization(streams[2], TICK_S)
+        field = field_of(mapped, self.memory.known, known_floor, setup.robot.lidar)
+        self.localization = Localization(field, setup.robot.lidar, self.body.wheels, setup.start, streams[2])
         self._faults = Faults(setup.conditions.faults, self.trouble, self._carry, streams[6])
         self._random_spots = streams[9]
         self._witness = Witness(self.world, self.body, self.robot, self.memory, self.trouble)
@@ -122,6 +125,7 @@ class Simulator:
         self.robot.go(goal, self._clock.seconds)
 
     def halt(self) -> None:
+        self.localization.give_up()
         self.robot.halt(self._clock.seconds)
 
     def clear(self, action_id: int, radius: float) -> None:
@@ -133,9 +137,9 @@ class Simulator:
     def ease_back(self, action_id: int, distance: float) -> None:
         self.robot.ease_back(action_id, distance, self._clock.seconds)
 
-    def relocate(self, action_id: int, pose: Pose | None) -> None:  # noqa: ARG002  the robot knows without a hint
-        self._localization.begin_anew()
-        self.robot.news.append(ActionReport(self._clock.seconds, action_id, True))
+    def relocate(self, action_id: int, pose: Pose | None) -> None:
+        self.robot.relocate(action_id, self._clock.seconds)
+        self.localization.relocate(pose)
 
     def charge(self) -> None:
         x, y, _ = self.body.place.tolist()
@@ -170,8 +174,9 @@ class Simulator:
         self.world.advance(now, place.tolist(), self.body.outline, bodies, whole_second)
         self.people.advance(now, place, self.body.outline, TICK_S, whole_second)
         robot = self.robot
-        robot.pose = self._localization.estimate(self.body.pose)
-        self._sense(bodies)
+        self.localization.predict()
+        robot.pose = self.localization.pose
+        self._sense(bodies, now)
         wish = robot.think(now)
         if self._ticks % BETWEEN_LOOKS_TICKS == 0:
             self._witness.look(now, bodies)  # before the robot moves on: telemetry tells of where it was sensed to be
@@ -201,26 +206,32 @@ class Simulator:
             self._witness.carried()
             self.body.carry(spot)
 
-    def _sense(self, people: NDArray[np.float64]) -> None:
+    def _sense(self, people: NDArray[np.float64], now: float) -> None:
         """Look around, and take in what has been seen."""
-        robot, world = self.robot, self.world
+        robot, world, wheels = self.robot, self.world, self.body.wheels
         idle = robot.idle
         if self._ticks % (IDLE_TICKS_PER_LOOK if idle else self._ticks_per_look) == 0:
             self._scanner.look(
-                self._ticks, self.body.pose, self.body.driven, robot.pose, world.sight, people,
+                self._ticks, self.body.pose, self.body.driven, wheels.pose, world.sight, people,
                 self.trouble.lidar_blind,
             )  # fmt: skip
         if self._sweeper is not None and not idle:
             self._sweeper.look(self.body.pose, robot.pose, world.distance, people, self.memory)
-        if scan := self._scanner.deliver(self._ticks, robot.pose):
-            self.memory.take(scan, robot.pose)
+        if scan := self._scanner.deliver(self._ticks, wheels.pose):
+            found = self.localization.correct(scan, now)
+            robot.pose = self.localization.pose
+            robot.lost = self.localization.lost
+            if found is not None:
+                robot.found(found, now)
+            if not robot.lost:
+                self.memory.take(scan, robot.pose)
 
     def _telemetry(self, now: float) -> Telemetry:
         robot, body = self.robot, self.body
         return Telemetry(
             stamp=now,
             pose=robot.pose,
-            spread=self._localization.spread,
+            spread=self.localization.spread,
             speed=math.hypot(body.drive.speed, body.drive.side) if body.drive.side else body.drive.speed,
             turn_rate=body.drive.turn,
             battery=body.charge.fraction,

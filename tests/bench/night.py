@@ -50,7 +50,8 @@ def parts_of(what: str, simulator: Simulator, action: Callable[[], object]) -> I
     for name, holder, method in (
         ("world events", simulator.world, "advance"),
         ("people", simulator.people, "advance"),
-        ("localization", simulator._localization, "estimate"),
+        ("localization: prediction", simulator.localization, "predict"),
+        ("localization: correction", simulator.localization, "correct"),
         ("lidar", simulator._scanner, "look"),
         ("memory", simulator.memory, "take"),
         ("planning", simulator.robot._planner, "plan"),

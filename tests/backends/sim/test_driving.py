@@ -181,8 +181,8 @@ def test_clear_replan_and_relocate_are_answered_with_and_without_a_goal() -> Non
     for first in (1, 11):
         drive.simulator.clear(first, 3.0)
         drive.simulator.replan(first + 1)
-        drive.simulator.relocate(first + 2, None)
-        drive.until(drive.simulator.clock.now() + 1.0)
+        drive.simulator.relocate(first + 2, Pose(2.0, 4.0, 0.0))
+        drive.until(drive.simulator.clock.now() + 3.0)
         go(drive, first, Pose(10.0, 4.0, 0.0))
     answers = {report.action_id: report.done for report in drive.reports if isinstance(report, ActionReport)}
     assert answers == {1: True, 2: True, 3: True, 11: True, 12: True, 13: True}
@@ -245,5 +245,8 @@ def test_a_relative_goal_is_seen_from_where_the_robot_stands_and_driven_straight
 def test_a_relative_goal_asks_for_no_way_round_what_stands_in_the_line() -> None:
     drive = start(TWO_ROOMS, Pose(4.5, 4.5, 0.0))
     drive.simulator.go(Goal(1, Pose(7.5, 0.0, 0.0), 0.5, relative=True))
+    assert drive.until_end(30.0) is None
+    before = drive.simulator.body.pose
     assert drive.until_end(40.0) is None
-    assert drive.simulator.body.drive.still
+    assert distance(before, drive.simulator.body.pose) < 0.05
+    assert 6.7 < drive.simulator.body.pose.x + 0.35 < 6.95
