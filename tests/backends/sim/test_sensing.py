@@ -72,7 +72,7 @@ def test_a_late_scan_is_placed_where_the_robot_was_when_it_was_taken() -> None:
     scan = eyes.deliver(1, Pose(11.0, 10.0, math.pi / 2.0))
     assert scan is not None
     x, y, first = scan.origin(Pose(4.0, 3.0, math.pi / 2.0))
-    assert (x, y) == (pytest.approx(3.5), pytest.approx(3.0))
+    assert [x, y] == pytest.approx([3.5, 3.0])
     assert first == pytest.approx(-math.pi / 2.0)
 
 
@@ -132,9 +132,9 @@ def test_the_filter_drops_shadow_points_and_keeps_the_surfaces() -> None:
     filtered = scans(with_lidar(Filters(), beam_width=wide), BEFORE_WALL, 100)
     exact = scans(with_lidar(), BEFORE_WALL)[0]
     assert not between(filtered).any()
-    kept = np.isfinite(filtered).all(axis=0)
+    kept = np.logical_and.reduce(np.isfinite(filtered))
     assert kept.sum() > 0.9 * np.isfinite(exact).sum()
-    face: NDArray[np.bool_] = np.abs(exact - 1.5 / np.cos(np.radians(np.arange(181) - 90.0))) < 1e-6
+    face = np.isclose(exact, 1.5 / np.cos(np.radians(np.arange(181) - 90.0)), atol=1e-6)
     assert face.sum() > 20
     assert kept[face].all(), "the near surface keeps every beam"
 
