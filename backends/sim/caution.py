@@ -55,8 +55,6 @@ class Caution:
         memory, scan = self._memory, self._memory.scan
         if scan is None:
             return CREEP_M_S
-        if scan.blind and self._must_see(pose):
-            return 0.0
         x, y, first = scan.origin(pose)
         self.seen, clear = seen_length(
             route.points, route.along, covered, self._enough, scan.sight, x, y, first, scan.step, self._half, BERTH_M,
@@ -64,8 +62,11 @@ class Caution:
         )  # fmt: skip
         return min(max(self._within(self.seen), CREEP_M_S), max(self._within(clear), self._slowest_unseen))
 
-    def _must_see(self, pose: Pose) -> bool:
-        """Whether a lidar that works would see something here: the robot's own posts, or what the map shows."""
+    def is_blind(self, pose: Pose) -> bool:
+        """Whether nothing came back although something must: the robot's own posts, or a wall that the map has near."""
+        scan = self._memory.scan
+        if scan is None or not scan.blind:
+            return False
         near: float = value_at(self._memory.known, pose.x, pose.y)
         return bool(self._limits.posts) or near < MAPPED_SHARE * self._limits.lidar.range_max
 

@@ -15,7 +15,7 @@ kernel = kernel_compiler(__file__)
 FLAT = math.tan(math.radians(10.0))  # a line between two neighboring returns flatter to the beam than this is a mixture
 SLANTED = math.tan(math.radians(30.0))  # flatter than this it is one unless it is part of a wall
 STRAIGHT_M = 0.15  # how far off the line of a wall a return may lie
-FLOOR_MARGIN = math.radians(0.3)  # of the angle to the floor: what the inertial sensor may be wrong by, and more
+FLOOR_MARGIN = math.radians(0.5)  # of the angle to the floor: what the inertial sensor may be wrong by, and more
 
 
 @kernel
