@@ -8,17 +8,16 @@ free for; where there is none, it stands.
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
 from backends.sim.drive import Drive
 from backends.sim.kernels.motion import admissible, wrapped
-from backends.sim.kernels.path import point_at, project
+from backends.sim.kernels.path import point_at
 from backends.sim.kernels.window import choose, free_turn
 from backends.sim.outline import Outline
-from backends.sim.planner import Route
+from backends.sim.parts import STAND, Way, Wish
 from runner.site.values import Pose
 
 MARGIN_M = 0.1
@@ -31,8 +30,6 @@ LOOK_AHEAD_M = 0.4
 """Where on the route the robot looks to decide whether to turn in place."""
 TURN_FROM, TURN_UNTIL = math.radians(50.0), math.radians(12.0)
 """Turning in place begins and ends at these angles between heading and route."""
-BACK_M, FORTH_M = 1.0, 1.5
-"""How far behind and ahead of where it was the robot looks for itself on the route."""
 NEAR_GOAL_M, AT_GOAL_M = 0.08, 0.12
 """At the goal: when turning to its heading begins, and how far off counts as arrived."""
 AT_HEADING = math.radians(4.0)
@@ -43,21 +40,8 @@ EASY = 0.7
 """Share of the drive's deceleration used to stop at an expected point."""
 
 
-@dataclass(frozen=True, slots=True)
-class Wish:
-    """Speeds asked of the drive, ahead and to the left in m/s, and rad/s; `arrived` where it stands at the goal."""
-
-    speed: float
-    turn: float
-    arrived: bool = False
-    side: float = 0.0
-
-
-STAND = Wish(0.0, 0.0)
-
-
-class Follower:
-    """Follows one route at a time. `covered` is how far along it the robot is, `off` how far beside it, meters."""
+class DynamicWindow:
+    """Follows one route at a time."""
 
     def __init__(self, outline: Outline, drive: Drive) -> None:
         self._outline = outline
@@ -66,33 +50,25 @@ class Follower:
         self._horizon = max(HORIZON_S, limits.speed / limits.acceleration * 0.5 + 0.4)
         self._turning = 0.0
         self._aligning = False
-        self.covered = 0.0
-        self.off = 0.0
 
     def begin(self) -> None:
         """There is a new route; the robot is at its start."""
         self._turning = 0.0
         self._aligning = False
-        self.covered = 0.0
-        self.off = 0.0
 
-    def locate(self, route: Route, pose: Pose) -> None:
-        """Find the robot on its route."""
-        self.covered, self.off = project(
-            route.points, route.along, pose.x, pose.y, max(self.covered - BACK_M, 0.0), self.covered + FORTH_M
-        )
-
-    def steer(self, field: NDArray[np.float32], route: Route, pose: Pose, goal: Pose, fastest: float) -> Wish:
+    def steer(
+        self, field: NDArray[np.float32], way: Way, covered: float, pose: Pose, goal: Pose, fastest: float
+    ) -> Wish:
         """What to do now. `fastest` caps the drive's own limit."""
         away = math.hypot(goal.x - pose.x, goal.y - pose.y)
         if away < (AT_GOAL_M if self._aligning else NEAR_GOAL_M):
             return self._align(field, pose, goal)
         self._aligning = False
-        x, y = point_at(route.points, route.along, self.covered + LOOK_AHEAD_M)
+        x, y = point_at(way.points, way.along, covered + LOOK_AHEAD_M)
         error = wrapped(math.atan2(y - pose.y, x - pose.x) - pose.heading)
         if self._is_turn(field, pose, error):
             return self._turn(error)
-        return self._drive_arc(field, route, pose, fastest, max(route.length - self.covered, away))
+        return self._drive_arc(field, way, covered, pose, fastest, max(way.length - covered, away))
 
     def _align(self, field: NDArray[np.float32], pose: Pose, goal: Pose) -> Wish:
         error = wrapped(goal.heading - pose.heading)
@@ -150,13 +126,15 @@ class Follower:
         rate = min(limits.turn_speed, float(admissible(left, EASY * limits.turn_acceleration)))
         return Wish(0.0, self._turning * rate)
 
-    def _drive_arc(self, field: NDArray[np.float32], route: Route, pose: Pose, fastest: float, left: float) -> Wish:
+    def _drive_arc(
+        self, field: NDArray[np.float32], way: Way, covered: float, pose: Pose, fastest: float, left: float
+    ) -> Wish:
         limits = self._drive.limits
         outline = self._outline
         fastest = min(fastest, limits.speed, float(admissible(left, EASY * limits.acceleration)))
         speed, turn, _ = choose(
             field, outline.rim, outline.inner, outline.outer, MARGIN_M,
-            route.points, route.along, self.covered, pose.x, pose.y, pose.heading,
+            way.points, way.along, covered, pose.x, pose.y, pose.heading,
             self._drive.speed, self._drive.turn, fastest, limits.acceleration,
             limits.turn_speed, limits.turn_acceleration, WINDOW_S, self._horizon,
         )  # fmt: skip

@@ -15,10 +15,11 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
+from backends.sim.frames import relative, seen_from
 from backends.sim.kernels.particles import BINS, against_map, draw, ends_of, move, summary, weigh
 from backends.sim.likelihood import Field, find_on
 from backends.sim.odometry import Wheels
-from backends.sim.sensing import Scan, relative
+from backends.sim.sensing import Scan
 from runner.site.values import Lidar, Pose
 
 MOST = 4000
@@ -102,12 +103,7 @@ class Localization:
 
     def predict(self) -> None:
         """Carry the belief on by what the wheels said since the last look at the map."""
-        ahead, left, turned = relative(self._looked_at, self._wheels.pose)
-        base = self._at_look
-        cosine, sine = math.cos(base.heading), math.sin(base.heading)
-        self.pose = Pose(
-            base.x + ahead * cosine - left * sine, base.y + ahead * sine + left * cosine, base.heading + turned
-        )
+        self.pose = seen_from(self._at_look, relative(self._looked_at, self._wheels.pose))
 
     def relocate(self, hint: Pose | None) -> None:
         """Begin to find out anew where it is. `correct` says what came of it."""

@@ -7,7 +7,6 @@ once a tick, says what speeds it wants. News for whoever commands it collects in
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
-from math import cos, sin
 
 import numpy as np
 from numpy.typing import NDArray
@@ -16,10 +15,11 @@ from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report
 from backends.sim.body import Body
 from backends.sim.caution import Caution
 from backends.sim.easing import Easing
-from backends.sim.follower import STAND, Follower, Wish
+from backends.sim.frames import relative, seen_from
 from backends.sim.memory import Memory
+from backends.sim.parts import STAND, Wish, follower_named, planner_named
 from backends.sim.planner import Planner, Route
-from backends.sim.sensing import relative
+from backends.sim.tracking import Track
 from runner.site.values import Pose, UnseenSpace
 
 PATIENCE_S = 1.0
@@ -48,10 +48,12 @@ class Robot:
         self.news: list[Report] = []
         self.route: Route | None = None
         self.route_number = 0
-        self.follower = Follower(body.outline, body.drive)
+        self.track = Track()
         self.caution = Caution(body.drive.limits, body.outline, memory)
         self._body = body
-        self._planner = Planner(body.outline)
+        limits = body.drive.limits
+        self._follower = follower_named(limits.follower)(body.outline, body.drive)
+        self._planner = Planner(body.outline, planner_named(limits.planner)(body.outline, memory.known))
         self._easing = Easing(body)
         self._goal: Goal | None = None
         self._last_goal_id: int | None = None
@@ -74,7 +76,7 @@ class Robot:
     @property
     def remaining(self) -> float | None:
         """Length of the route still to drive, meters."""
-        return None if self.route is None else max(self.route.length - self.follower.covered, 0.0)
+        return None if self.route is None else max(self.route.length - self.track.covered, 0.0)
 
     # --- commands ---------------------------------------------------------------------------------------------
 
@@ -88,8 +90,9 @@ class Robot:
         self._moves = None
         if goal.relative:
             odometry = self._body.wheels.pose
-            self._moves = (odometry, seen_from(odometry, goal.pose))
-            goal = replace(goal, pose=seen_from(self.pose, goal.pose))
+            ahead = (goal.pose.x, goal.pose.y, goal.pose.heading)
+            self._moves = (odometry, seen_from(odometry, ahead))
+            goal = replace(goal, pose=seen_from(self.pose, ahead))
         if reason := self._refusal(goal.pose):
             self.news.append(GoalReport(now, goal.id, GoalStatus.REFUSED, reason))
             return
@@ -169,17 +172,17 @@ class Robot:
         if answer is not None:
             self.news.append(ActionReport(now, *answer))
             if self.route is not None:
-                self.follower.locate(self.route, self.pose)
+                self.track.locate(self.route, self.pose)
         return Wish(speed, 0.0)
 
     def _pursue(self, goal: Goal, now: float) -> Wish:
         if self._moves is not None:
             goal = replace(goal, pose=self._on_map(self._moves[1]))
         self._supervise(goal, now)
-        if self.route is None or self._ending is not None:
+        if self.route is None or self._ending is not None or self.caution.is_blind(self.pose):
             return STAND
-        fastest = min(goal.speed, self.caution.fastest(self.route, self.follower.covered, self.pose))
-        wish = self.follower.steer(self.memory.field, self.route, self.pose, goal.pose, fastest)
+        fastest = min(goal.speed, self.caution.fastest(self.route, self.track.covered, self.pose))
+        wish = self._follower.steer(self.memory.field, self.route, self.track.covered, self.pose, goal.pose, fastest)
         if wish.arrived:
             self._ending = _Ending(GoalStatus.ARRIVED, "")
             self._end_when_still(now)
@@ -187,14 +190,14 @@ class Robot:
 
     def _on_map(self, there: Pose) -> Pose:
         """A pose of the frame of odometry on the map: as far from where the robot believes to be now."""
-        return seen_from(self.pose, Pose(*relative(self._body.wheels.pose, there)))
+        return seen_from(self.pose, relative(self._body.wheels.pose, there))
 
     def _supervise(self, goal: Goal, now: float) -> None:
         """Keep the route fit to be followed: plan where there is none, where it is obstructed, or where asked."""
         if self.route is not None:
             if self._moves is not None:
                 self.route = self._planner.straight(self.memory.field, *map(self._on_map, self._moves))
-            self.follower.locate(self.route, self.pose)
+            self.track.locate(self.route, self.pose)
         asked = self._replan_asked is not None
         if not asked and not (self._wants_plan(now) and now >= self._next_attempt):
             return
@@ -205,11 +208,11 @@ class Robot:
     def _wants_plan(self, now: float) -> bool:
         if self.route is None:
             return True
-        if self.route.obstruction(self.memory.field, self.follower.covered) is None:
+        if self.route.obstruction(self.memory.field, self.track.covered) is None:
             self._obstructed_since = None
-            if self.follower.off <= ASTRAY_M:
+            if self.track.off <= ASTRAY_M:
                 self._attempts = 0
-            return self.follower.off > ASTRAY_M
+            return self.track.off > ASTRAY_M
         if self._obstructed_since is None:
             self._obstructed_since = now
         return now - self._obstructed_since >= PATIENCE_S
@@ -229,7 +232,8 @@ class Robot:
             return False
         self.route = route
         self.route_number += 1
-        self.follower.begin()
+        self.track.begin()
+        self._follower.begin()
         self._attempts = 0
         self._obstructed_since = None
         if not self._under_way:
@@ -269,20 +273,10 @@ class Robot:
 
     def _why_no_route(self, goal: Goal) -> str:
         """The reason, from what the robot knows: its map, or what it remembers."""
-        if self._planner.plan(self.memory.known, self.pose, goal.pose) is None:
+        if not self._planner.is_joined(self.memory.known, self.pose, goal.pose):
             return "The map has no way to the goal."
         if not self._planner.fits(self.memory.field, goal.pose):
             return "Something that the map does not know stands at the goal."
-        if self._planner.plan(self.memory.field, self.pose, goal.pose) is not None:
+        if self._planner.is_joined(self.memory.field, self.pose, goal.pose):
             return "Every way to the goal leads through space that the robot has cleared and not seen since."
         return "Something that the map does not know stands in every way to the goal."
-
-
-def seen_from(here: Pose, there: Pose) -> Pose:
-    """The pose on the floor of what is seen from `here` at `there` (x ahead, y to the left)."""
-    ahead, left = cos(here.heading), sin(here.heading)
-    return Pose(
-        here.x + ahead * there.x - left * there.y,
-        here.y + left * there.x + ahead * there.y,
-        here.heading + there.heading,
-    )

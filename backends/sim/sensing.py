@@ -12,6 +12,7 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from backends.sim.frames import Step, relative
 from backends.sim.kernels.artefacts import mix, spoil
 from backends.sim.kernels.filters import drop_body, drop_floor, drop_shadows, sight_of
 from backends.sim.kernels.rays import scan
@@ -26,9 +27,6 @@ NOD_ERROR = math.radians(0.1)
 BODY_DEVIATIONS = 2.0
 """Deviations of the lidar's noise beyond its outline that the robot still takes for itself."""
 NOWHERE = np.empty(0)
-
-Step = tuple[float, float, float]
-"""A pose seen from another: ahead, to the left, turned."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -202,13 +200,6 @@ class _Nod:
             self._now = keep * self._now + self.deviation * math.sqrt(1.0 - keep * keep) * drawn
             self._driven = driven
         return self._now
-
-
-def relative(here: Pose, there: Pose) -> Step:
-    """A pose as seen from another one."""
-    cosine, sine = math.cos(here.heading), math.sin(here.heading)
-    x, y = there.x - here.x, there.y - here.y
-    return x * cosine + y * sine, y * cosine - x * sine, there.heading - here.heading
 
 
 def _seen(post: Post, lidar: Lidar, angles: NDArray[np.float64]) -> NDArray[np.float64]:

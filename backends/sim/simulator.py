@@ -125,6 +125,7 @@ class Simulator:
         self.robot.go(goal, self._clock.seconds)
 
     def halt(self) -> None:
+        self._witness.head_for(None)
         self.localization.give_up()
         self.robot.halt(self._clock.seconds)
 
@@ -238,6 +239,6 @@ class Simulator:
             driven=body.driven,
             remaining=robot.remaining,
             route_number=robot.route_number,
-            route=() if robot.route is None else robot.route.part(robot.follower.covered, ROUTE_POINTS),
+            route=() if robot.route is None else robot.route.part(robot.track.covered, ROUTE_POINTS),
             obstacles=self.memory.shown(robot.pose),
         )

@@ -14,8 +14,7 @@ from numpy.typing import NDArray
 
 from backends.contract import Cause, Truth
 from backends.sim.body import Body
-from backends.sim.kernels.grid import value_at
-from backends.sim.kernels.overlap import covers_solid
+from backends.sim.in_the_way import Points, first_in_the_way
 from backends.sim.kernels.weights import halved
 from backends.sim.memory import Memory
 from backends.sim.planner import find_halved
@@ -32,14 +31,12 @@ SLOW, SLOW_TURN = 0.1, 0.1
 AHEAD_M, BEYOND_M = 2.0, 1.0
 """Where it stands, what is so far ahead is in its way; where it believes its route obstructed, all up to there and a
 little beyond."""
-ELBOW_M = 0.2
-"""A person this near to where the robot's disc would pass is in the way."""
+THERE_M, AFTERWARDS_S = 0.3, 60.0
+"""A goal farther off than this was not got to; it counts as trouble for so long after it ended, until the next."""
 ASTRAY_M, ASTRAY = 0.5, math.radians(20.0)
 """Farther from where it believes to be, it does not know where it is."""
 MOST_KEPT = 100_000
 """Where nobody asks for them, the oldest are dropped."""
-
-Points = NDArray[np.float64]
 
 
 class Witness:
@@ -54,11 +51,12 @@ class Witness:
         self._goal: Pose | None = None
         self._map_way: Points | None = None
         self._carried = False
+        self._idle_since: float | None = None
         self._told = Truth(-math.inf, body.pose, Cause.NOTHING)
         self._truths: deque[Truth] = deque(maxlen=MOST_KEPT)
 
-    def head_for(self, goal: Pose) -> None:
-        """The robot has been sent to a pose on the map."""
+    def head_for(self, goal: Pose | None) -> None:
+        """The robot has been sent to a pose on the map, or, with None, told to halt."""
         self._goal, self._map_way = goal, None
 
     def carried(self) -> None:
@@ -67,7 +65,7 @@ class Witness:
 
     def look(self, now: float, people: NDArray[np.float64]) -> None:
         """See what is the case; `people` has rows (x, y, radius). To be called every `BETWEEN_LOOKS_TICKS` ticks."""
-        idle = self._robot.idle
+        idle = not self._is_about_something(now)
         cause = self._cause(idle, people)
         if cause is self._told.cause and (idle or now - self._told.stamp < EVERY_S):
             return
@@ -79,6 +77,18 @@ class Witness:
         taken = list(self._truths)
         self._truths.clear()
         return taken
+
+    def _is_about_something(self, now: float) -> bool:
+        """Whether it has a goal, or had one until lately that it did not get to: the trouble is not over then."""
+        if not self._robot.idle:
+            self._idle_since = None
+            return True
+        if self._idle_since is None:
+            self._idle_since, self._map_way = now, None
+        goal, believed = self._goal, self._robot.pose
+        if goal is None or now - self._idle_since > AFTERWARDS_S:
+            return False
+        return math.hypot(goal.x - believed.x, goal.y - believed.y) > THERE_M
 
     def _cause(self, idle: bool, people: NDArray[np.float64]) -> Cause:
         wrong = self._wrong()
@@ -117,45 +127,19 @@ class Witness:
 
     def _obstruction(self) -> float | None:
         """How far ahead the robot believes its route to be obstructed, if it does."""
-        route, covered = self._robot.route, self._robot.follower.covered
+        route, covered = self._robot.route, self._robot.track.covered
         at = None if route is None else route.obstruction(self._memory.field, covered)
         return None if at is None else at - covered
 
     def _in_the_way(self, people: NDArray[np.float64], ahead: float) -> Cause:
-        points = self._way_ahead(ahead)
-        inner = self._body.outline.inner
-        for index in range(len(points) - 1):
-            x, y = points[index].tolist()
-            if (np.hypot(people[:, 0] - x, people[:, 1] - y) < people[:, 2] + inner + ELBOW_M).any():
-                return Cause.PERSON
-            heading = math.atan2(points[index + 1, 1] - y, points[index + 1, 0] - x)
-            if covers_solid(self._world.blocked, self._body.outline.hull, x, y, heading):
-                return self._solid_at(x, y)
-        remembered = any(value_at(self._memory.field, x, y) < inner for x, y in points.tolist())
-        return Cause.GONE if remembered else Cause.NOTHING
-
-    def _solid_at(self, x: float, y: float) -> Cause:
-        """What stands under the robot's outline at a point of its way."""
-        reach = math.ceil(self._body.outline.outer / CELL_M)
-        row, column = int(y / CELL_M), int(x / CELL_M)
-        rows, columns = np.mgrid[-reach : reach + 1, -reach : reach + 1]
-        near = np.hypot(rows, columns) <= reach
-        cells = np.column_stack([row + rows[near], column + columns[near]])
-        shape = self._world.blocked.shape
-        inside = (cells >= 0).all(axis=1) & (cells[:, 0] < shape[0]) & (cells[:, 1] < shape[1])
-        cells = cells[inside]
-        what = self._world.what_stands_in(cells)
-        if what in ("door", "carton"):
-            return Cause.DOOR if what == "door" else Cause.CARTON
-        blocked = cells[self._world.blocked[cells[:, 0], cells[:, 1]]]
-        mapped = self._memory.known[blocked[:, 0], blocked[:, 1]] <= 0.0
-        return Cause.NARROW if mapped.all() else Cause.FURNITURE
+        points, body = self._way_ahead(ahead), self._body
+        return first_in_the_way(points, body.pose, body.outline, self._world, self._memory, people)
 
     def _way_ahead(self, length: float) -> Points:
         """Points of the next meters, some cells apart: of the robot's route, or of the map's whole way to the goal."""
         route = self._robot.route
         if route is not None:
-            covered = self._robot.follower.covered
+            covered = self._robot.track.covered
             ahead = (route.along >= covered) & (route.along <= covered + length)
             return route.points[ahead]
         if self._map_way is None and self._goal is not None:

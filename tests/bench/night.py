@@ -55,7 +55,7 @@ def parts_of(what: str, simulator: Simulator, action: Callable[[], object]) -> I
         ("lidar", simulator._scanner, "look"),
         ("memory", simulator.memory, "take"),
         ("planning", simulator.robot._planner, "plan"),
-        ("following", simulator.robot.follower, "steer"),
+        ("following", simulator.robot._follower, "steer"),
         ("supervising", simulator.robot, "think"),
         ("driving", simulator.body, "advance"),
         ("telemetry", simulator, "_telemetry"),
