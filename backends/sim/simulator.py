@@ -125,7 +125,6 @@ class Simulator:
         self.robot.go(goal, self._clock.seconds)
 
     def halt(self) -> None:
-        self._witness.head_for(None)
         self.localization.give_up()
         self.robot.halt(self._clock.seconds)
 

@@ -55,8 +55,8 @@ class Witness:
         self._told = Truth(-math.inf, body.pose, Cause.NOTHING)
         self._truths: deque[Truth] = deque(maxlen=MOST_KEPT)
 
-    def head_for(self, goal: Pose | None) -> None:
-        """The robot has been sent to a pose on the map, or, with None, told to halt."""
+    def head_for(self, goal: Pose) -> None:
+        """The robot has been sent to a pose on the map."""
         self._goal, self._map_way = goal, None
 
     def carried(self) -> None:

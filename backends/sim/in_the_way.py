@@ -1,0 +1,65 @@
+"""What really stands in the way of a robot: the first on the points of its way, told from what its map knows."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+from numpy.typing import NDArray
+
+from backends.contract import Cause
+from backends.sim.kernels.grid import value_at
+from backends.sim.kernels.overlap import covers_solid, gap
+from backends.sim.memory import Memory
+from backends.sim.outline import Outline
+from backends.sim.world import World
+from runner.site.values import CELL_M, Pose
+
+ELBOW_M = 0.2
+"""A person this near to where the robot's disc would pass is in the way."""
+PEOPLE_WITHIN_M = 7.0
+"""People farther from the robot than this are not in its way yet."""
+CAUSES = {"door": Cause.DOOR, "carton": Cause.CARTON, "solid": Cause.FURNITURE}
+
+Points = NDArray[np.float64]
+
+
+def first_in_the_way(
+    points: Points, robot: Pose, outline: Outline, world: World, memory: Memory, people: NDArray[np.float64]
+) -> Cause:
+    """A person, or what the outline would overlap, that comes first on the points of a way (n, 2); else something that
+    the memory has there and that is gone; else a gap that is too narrow on the map; else nothing.
+
+    `people` has rows (x, y, radius).
+    """
+    narrow = False
+    near = people[np.hypot(people[:, 0] - robot.x, people[:, 1] - robot.y) < PEOPLE_WITHIN_M]
+    for index in range(len(points) - 1):
+        x, y = points[index].tolist()
+        if len(near) and (np.hypot(near[:, 0] - x, near[:, 1] - y) < near[:, 2] + outline.inner + ELBOW_M).any():
+            return Cause.PERSON
+        heading = math.atan2(points[index + 1, 1] - y, points[index + 1, 0] - x)
+        if covers_solid(world.blocked, outline.hull, x, y, heading):
+            cells = _covered(outline, Pose(x, y, heading), world.blocked)
+            unknown = cells[memory.known[cells[:, 0], cells[:, 1]] > 0.0]
+            if len(unknown):
+                return CAUSES[world.what_stands_in(unknown)]
+            narrow = True
+    if any(value_at(memory.field, x, y) < outline.inner for x, y in points.tolist()):
+        return Cause.GONE
+    return Cause.NARROW if narrow else Cause.NOTHING
+
+
+def _covered(outline: Outline, pose: Pose, blocked: NDArray[np.bool_]) -> NDArray[np.intp]:
+    """The blocked cells (n, 2) that the outline touches at a pose: those with their middle at most half a cell off."""
+    reach = math.ceil(outline.outer / CELL_M) + 1
+    row, column = int(pose.y / CELL_M), int(pose.x / CELL_M)
+    low_row, low_column = max(row - reach, 0), max(column - reach, 0)
+    part = blocked[low_row : row + reach + 1, low_column : column + reach + 1]
+    cells: NDArray[np.intp] = np.argwhere(part) + np.array([low_row, low_column])
+    touched = [
+        gap(outline.hull, pose.x, pose.y, pose.heading, (c + 0.5) * CELL_M, (r + 0.5) * CELL_M) <= 0.75 * CELL_M
+        for r, c in cells.tolist()
+    ]
+    under: NDArray[np.intp] = cells[np.array(touched, dtype=np.bool_)]
+    return under
