@@ -19,6 +19,8 @@ ELBOW_M = 0.2
 """A person this near to where the robot's disc would pass is in the way."""
 PEOPLE_WITHIN_M = 7.0
 """People farther from the robot than this are not in its way yet."""
+ASIDE_M, TURNED = (0.0, 0.08, -0.08, 0.15, -0.15), tuple(math.radians(turn) for turn in (0, 15, -15, 30, -30))
+"""A gap is too narrow where the robot fits nowhere so far beside the middle of its way, turned by so much."""
 CAUSES = {"door": Cause.DOOR, "carton": Cause.CARTON, "solid": Cause.FURNITURE}
 
 Points = NDArray[np.float64]
@@ -44,10 +46,20 @@ def first_in_the_way(
             unknown = cells[memory.known[cells[:, 0], cells[:, 1]] > 0.0]
             if len(unknown):
                 return CAUSES[world.what_stands_in(unknown)]
-            narrow = True
+            narrow = narrow or not _fits_about(outline, world, x, y, heading)
     if any(value_at(memory.field, x, y) < outline.inner for x, y in points.tolist()):
         return Cause.GONE
     return Cause.NARROW if narrow else Cause.NOTHING
+
+
+def _fits_about(outline: Outline, world: World, x: float, y: float, heading: float) -> bool:
+    """Whether the robot fits within a hand's breadth beside a point of its way, at any heading near that of the way."""
+    for aside in ASIDE_M:
+        there_x, there_y = x - aside * math.sin(heading), y + aside * math.cos(heading)
+        for turned in TURNED:
+            if not covers_solid(world.blocked, outline.hull, there_x, there_y, heading + turned):
+                return True
+    return False
 
 
 def _covered(outline: Outline, pose: Pose, blocked: NDArray[np.bool_]) -> NDArray[np.intp]:

@@ -16,7 +16,7 @@ from runner.report.values import Incident, Score, TruthScore, Whereabouts
 
 LEAD_S = 15.0
 """A sign of trouble comes so long after the trouble at most: the window in which progress is looked for."""
-GOOD_PART = 0.2
+GOOD_PART = 0.1
 """Of the time in trouble for which there was any cause: a cause that held for less is not what it was about."""
 APART_S = 1.0
 """Between two readings of telemetry farther apart than this nothing is known of where the robot believed to be."""
