@@ -16,7 +16,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from backends.sim.frames import relative, seen_from
-from backends.sim.kernels.particles import BINS, against_map, draw, ends_of, move, summary, weigh
+from backends.sim.kernels.particles import BINS, EMPTY, against_map, draw, ends_of, move, summary, weigh
 from backends.sim.likelihood import Field, find_on
 from backends.sim.odometry import Wheels
 from backends.sim.sensing import Scan
@@ -70,10 +70,10 @@ class Localization:
         self._field, self._lidar, self._wheels, self._random = field, lidar, wheels, generator
         self._poses, self._fresh = np.zeros((MOST, 3)), np.zeros((MOST, 3))
         self._weights, self._drawn = np.zeros(MOST), np.zeros((MOST, 4))
-        self._ends, self._bins = np.zeros((BEAMS, 2)), np.zeros(BINS, dtype=np.int64)
+        self._ends, self._bins = np.zeros((BEAMS, 2)), np.full(BINS, EMPTY)
         self._every = max(1, lidar.beams // BEAMS)
         self._offset = 0
-        self._through = 0.0
+        self._through, self._matching = 0.0, 1.0
         self._search: _Search | None = None
         self._looked_at = wheels.pose
         self._looked_when = 0.0
@@ -163,7 +163,7 @@ class Localization:
         poses, weights, search = self._poses[: self._count], self._weights[: self._count], self._search
         weigh(poses, ends, self._field.signed, self._field.table, TRUST, weights)
         wider = 1.0 if search is None else max(1.0, SEARCH_BLUR * (1.0 - 2.0 * search.looks / SEARCH_LOOKS))
-        most = MOST if search is not None else min(4 * max(self._count, FEWEST), MOST)
+        most = MOST if search is not None else min(self._count + FEWEST, MOST)
         self._count = draw(
             poses, weights, float(self._random.random()), FEWEST, ERROR, QUANTILE, wider * BLUR_M, wider * BLUR_TURN,
             self._normal(most), self._fresh[:most], self._bins,
@@ -180,10 +180,12 @@ class Localization:
     def _judge(self, scan: Scan, ends: NDArray[np.float64]) -> None:
         """Whether it is lost: do beams run through walls?"""
         eye_x, eye_y, _ = scan.origin(Pose(0.0, 0.0, 0.0))
-        longer, self._matching = against_map(
+        longer, matching = against_map(
             self._field.known, self.pose.x, self.pose.y, self.pose.heading, eye_x, eye_y, ends
         )
-        share = longer / len(ends)
+        looked_at = (len(ends) + 1) // 2
+        share = longer / looked_at
+        self._matching = matching / looked_at
         self._through = REMEMBERED * self._through + (1.0 - REMEMBERED) * share
         if self._search is not None:
             return
@@ -209,7 +211,7 @@ class Localization:
             return None
         self._search, self.lost = None, False
         unsure = self.spread > FOUND_M
-        if not unsure and self._through < FOUND_SHARE and self._matching >= MATCHING_SHARE * len(self._ends):
+        if not unsure and self._through < FOUND_SHARE and self._matching >= MATCHING_SHARE:
             return ""
         self.lost, self._through = True, 1.0
         return "Several spots on the map look alike from here." if unsure else "The map shows no spot like this one."

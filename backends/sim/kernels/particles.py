@@ -170,9 +170,10 @@ def draw(
     """Draw poses by weight into `fresh` until there are enough of them, and blur each a little; how many there are.
 
     Evenly spread over the weights, as in low-variance drawing, by multiples of the golden section from `start` on.
+    `bins` (BINS) are `EMPTY` before and after.
     """
     cumulated = np.cumsum(weights)
-    bins[:] = EMPTY
+    in_use = np.empty(fresh.shape[0], dtype=np.int64)
     used, filled, needed = 0, 0, float(fewest)
     place = start
     while filled < fresh.shape[0] and filled < needed:
@@ -191,8 +192,11 @@ def draw(
             slot = (slot + 1) & (BINS - 1)
         if bins[slot] == EMPTY:
             bins[slot] = key
+            in_use[used] = slot
             used += 1
             needed = max(float(fewest), enough(used, error, quantile))
+    for index in range(used):
+        bins[in_use[index]] = EMPTY
     return filled
 
 
@@ -230,14 +234,14 @@ def against_map(
     eye_y: float,
     ends: NDArray[Any],
 ) -> tuple[int, int]:
-    """Of the beams with these ends: how many went through a mapped wall, and how many end at a mapped surface.
+    """Of every other beam with these ends: how many went through a mapped wall, and how many end at a mapped surface.
 
     The robot is taken to be at (x, y, heading); its lidar at (eye_x, eye_y) and the ends as seen from it.
     """
     cosine, sine = math.cos(heading), math.sin(heading)
     from_x, from_y = x + eye_x * cosine - eye_y * sine, y + eye_x * sine + eye_y * cosine
     longer, matching = 0, 0
-    for beam in range(ends.shape[0]):
+    for beam in range(0, ends.shape[0], 2):
         end_x = x + ends[beam, 0] * cosine - ends[beam, 1] * sine
         end_y = y + ends[beam, 0] * sine + ends[beam, 1] * cosine
         way_x, way_y = end_x - from_x, end_y - from_y
