@@ -36,6 +36,10 @@ AT_HEADING = math.radians(4.0)
 """How far off the heading counts as arrived."""
 OVERSHOT, GLANCE = 0.5, 0.2
 """Radians: an error this small in the other direction is an overshoot; how far ahead a turn is looked at."""
+GLIDE_M = 1.2
+"""A drive that can go sideways does not turn toward a goal that is this near."""
+POINTING_M = 0.5
+"""Meters of way that pointing square off the route is worth."""
 EASY = 0.7
 """Share of the drive's deceleration used to stop at an expected point."""
 
@@ -66,7 +70,7 @@ class DynamicWindow:
         self._aligning = False
         x, y = point_at(way.points, way.along, covered + LOOK_AHEAD_M)
         error = wrapped(math.atan2(y - pose.y, x - pose.x) - pose.heading)
-        if self._is_turn(field, pose, error):
+        if not self._glides(max(way.length - covered, away)) and self._is_turn(field, pose, error):
             return self._turn(error)
         return self._drive_arc(field, way, covered, pose, fastest, max(way.length - covered, away))
 
@@ -118,7 +122,7 @@ class DynamicWindow:
 
     def _turn(self, error: float) -> Wish:
         """Turn in the chosen direction, once standing, slowing down toward the end."""
-        if not self._turning or self._drive.speed != 0.0:
+        if not self._turning or self._drive.speed != 0.0 or self._drive.side != 0.0:
             return STAND
         left = error * self._turning
         left = left if left >= 0.0 else left + 2.0 * math.pi
@@ -129,13 +133,18 @@ class DynamicWindow:
     def _drive_arc(
         self, field: NDArray[np.float32], way: Way, covered: float, pose: Pose, fastest: float, left: float
     ) -> Wish:
-        limits = self._drive.limits
+        limits, drive = self._drive.limits, self._drive
         outline = self._outline
         fastest = min(fastest, limits.speed, float(admissible(left, EASY * limits.acceleration)))
-        speed, turn, _ = choose(
+        turn_speed, pointing = (0.0, 0.0) if self._glides(left) else (limits.turn_speed, POINTING_M)
+        speed, side, turn, _ = choose(
             field, outline.rim, outline.inner, outline.outer, MARGIN_M,
             way.points, way.along, covered, pose.x, pose.y, pose.heading,
-            self._drive.speed, self._drive.turn, fastest, limits.acceleration,
-            limits.turn_speed, limits.turn_acceleration, WINDOW_S, self._horizon,
+            drive.speed, drive.side, drive.turn, fastest, limits.acceleration, limits.sideways_speed,
+            turn_speed, limits.turn_acceleration, WINDOW_S, self._horizon, pointing,
         )  # fmt: skip
-        return Wish(speed, turn)
+        return Wish(speed, turn, side=side)
+
+    def _glides(self, left: float) -> bool:
+        """Whether the robot goes there without turning toward it: a short way, and it can go sideways."""
+        return self._drive.limits.sideways_speed > 0.0 and left <= GLIDE_M

@@ -4,9 +4,10 @@ from __future__ import annotations
 
 import math
 
+import numpy as np
 import pytest
 
-from backends.sim.kernels.motion import admissible, arc
+from backends.sim.kernels.motion import admissible, arc, glide
 from backends.sim.kernels.window import unit_arc
 
 ARCS = [
@@ -34,9 +35,13 @@ def test_an_arc_passes_smoothly_into_a_straight_line(turn: float) -> None:
 
 @pytest.mark.parametrize(("turn", "speed"), [(0.0, 0.7), (0.5, 0.8), (-1.2, 0.2), (2.0, 1.5)])
 def test_arcs_rolled_out_step_by_step_agree_with_the_exact_motion_model(turn: float, speed: float) -> None:
-    for step, (x, y, cosine, sine) in enumerate(unit_arc(0.4, turn, 20)):
+    rows = np.empty((21, 4))
+    unit_arc(0.4, turn, rows)
+    for step, (x, y, cosine, sine) in enumerate(rows.tolist()):
         exact_x, exact_y, heading = arc(0.0, 0.0, 0.4, speed, turn, step * 0.1)
         assert (speed * x, speed * y) == pytest.approx((exact_x, exact_y), abs=1e-12)
+        left_x, left_y, _ = glide(0.0, 0.0, 0.4, 0.0, speed, turn, step * 0.1)
+        assert (-speed * y, speed * x) == pytest.approx((left_x, left_y), abs=1e-12)
         assert (cosine, sine) == pytest.approx((math.cos(heading), math.sin(heading)), abs=1e-12)
 
 

@@ -1,8 +1,8 @@
 """The dynamic window (Fox, Burgard and Thrun, 1997) along a route, with the full outline of the robot.
 
-Candidates are the speeds and turn rates that the drive can reach within a short while. Each is rolled out as an arc;
-it is admissible where the robot could stop before its outline comes too near to anything. Of the admissible ones
-the best makes most way along the route, stays near it, points along it and keeps off obstacles.
+Candidates are the speeds, ahead and sideways, and turn rates that the drive can reach within a short while. Each is
+rolled out as an arc; it is admissible where the robot could stop before its outline comes too near to anything. Of the
+admissible ones the best makes most way along the route, stays near it, points along it and keeps off obstacles.
 
 The outline is given as `rim`, points on it with the distance to the next, shape (n, 3), robot frame. `field` is
 the believed distance to the nearest obstacle (see `evidence`).
@@ -28,9 +28,8 @@ CELL_DIAGONAL = 0.0708
 STEP_S = 0.1  # time between two checks on an arc
 TOUCHING_M = 0.05  # with an obstacle's cell nearer to the rim than this, only driving backward is allowed
 REACTION_S = 0.1  # one tick passes before a change of mind takes effect
-SPEEDS, TURNS = 7, 21  # candidates
+SPEEDS, SIDES, TURNS = 7, 5, 21  # candidates; one of `SIDES` for a drive that cannot go sideways
 WEIGHT_OFF = 1.2  # per meter beside the route, against 1 per meter along it
-WEIGHT_POINTING = 0.5  # meters, for pointing square off the route
 WEIGHT_NEAR = 0.5  # meters, for touching, falling to none at `ROOMY_M` of clearance beyond the inscribed radius
 ROOMY_M = 0.25
 POINT_AHEAD_M = 0.3  # where on the route its direction is taken
@@ -128,26 +127,24 @@ def free_straight(
 
 
 @kernel
-def unit_arc(heading: float, turn: float, steps: int) -> NDArray[Any]:
+def unit_arc(heading: float, turn: float, rows: NDArray[Any]) -> None:
     """Where an arc at a speed of 1 m/s and a turn rate leads from the origin, every `STEP_S`: (x, y, cos, sin) a row.
 
-    At another speed the way is as many times as long, so one rolling out serves all speeds. By rotation of the last
-    step, exact up to rounding; row 0 is the start.
+    At another speed the way is as many times as long, and sideways it is turned by a quarter, so one rolling out serves
+    all speeds. By rotation of the last step, exact up to rounding; row 0 is the start.
     """
-    rows = np.empty((steps + 1, 4))
     half = 0.5 * turn * STEP_S
     chord = STEP_S if abs(half) < 1e-9 else STEP_S * math.sin(half) / half
     cosine, sine = math.cos(heading + half), math.sin(heading + half)
     rotate_cosine, rotate_sine = math.cos(2.0 * half), math.sin(2.0 * half)
     half_cosine, half_sine = math.cos(half), math.sin(half)
     rows[0, 0], rows[0, 1], rows[0, 2], rows[0, 3] = 0.0, 0.0, math.cos(heading), math.sin(heading)
-    for step in range(1, steps + 1):
+    for step in range(1, rows.shape[0]):
         rows[step, 0] = rows[step - 1, 0] + chord * cosine
         rows[step, 1] = rows[step - 1, 1] + chord * sine
         rows[step, 2] = cosine * half_cosine - sine * half_sine
         rows[step, 3] = sine * half_cosine + cosine * half_sine
         cosine, sine = cosine * rotate_cosine - sine * rotate_sine, sine * rotate_cosine + cosine * rotate_sine
-    return rows
 
 
 @kernel
@@ -164,42 +161,59 @@ def choose(
     y: float,
     heading: float,
     speed: float,
+    side: float,
     turn: float,
     fastest: float,
     acceleration: float,
+    side_fastest: float,
     turn_fastest: float,
     turn_acceleration: float,
     window: float,
     horizon: float,
-) -> tuple[float, float, float]:
-    """The best admissible (speed, turn rate, score); score -inf and (0, 0) where nothing is admissible.
+    pointing: float,
+) -> tuple[float, float, float, float]:
+    """The best admissible (speed, side, turn rate, score); score -inf and no motion where nothing is admissible.
 
     `covered` is how far along the route the robot is; `window` the time in which candidates must be reachable;
-    `horizon` the time an arc is looked at.
+    `horizon` the time an arc is looked at; `pointing` what it costs to point off the route. A drive that cannot go
+    sideways has a `side_fastest` of 0. From fast to slow: what cannot make as much way as the best did is not tried.
     """
     need = max(closeness(field, rim, x, y, math.cos(heading), math.sin(heading), margin), TOUCHING_M)
     low_speed = max(0.0, speed - acceleration * window)
     high_speed = max(min(fastest, speed + acceleration * window), low_speed)
+    sides = SIDES if side_fastest > 0.0 else 1
+    low_side = max(-min(side_fastest, fastest), side - acceleration * window)
+    high_side = max(min(side_fastest, fastest, side + acceleration * window), low_side)
     low_turn = max(-turn_fastest, turn - turn_acceleration * window)
     high_turn = min(turn_fastest, turn + turn_acceleration * window)
     steps = int(horizon / STEP_S + 0.5)
-    best_speed, best_turn, best = 0.0, 0.0, -np.inf
+    rates = np.empty(TURNS)
+    ways = np.empty((TURNS, steps + 1, 4))
     for j in range(TURNS):
-        w = low_turn + (high_turn - low_turn) * j / (TURNS - 1)
-        way = unit_arc(heading, w, steps)
-        for i in range(SPEEDS):
-            v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
-            free, clearance = rolled(field, rim, inner, outer, x, y, way, v, need)
-            left = free * STEP_S - REACTION_S
-            if v > admissible(v * left, acceleration) + 1e-9:
+        rates[j] = low_turn + (high_turn - low_turn) * j / (TURNS - 1)
+        unit_arc(heading, rates[j], ways[j])
+    best_speed, best_side, best_turn, best = 0.0, 0.0, 0.0, -np.inf
+    for i in range(SPEEDS - 1, -1, -1):
+        v = low_speed + (high_speed - low_speed) * i / (SPEEDS - 1)
+        for k in range(sides):
+            s = low_side + (high_side - low_side) * k / max(sides - 1, 1)
+            pace = math.sqrt(v * v + s * s)
+            if pace * steps * STEP_S <= best or pace > fastest + 1e-9:
                 continue
-            if abs(w) > admissible(abs(w) * left, turn_acceleration) + 1e-9:
-                continue
-            score = worth(points, along, covered, x, y, way[free], v, v * free * STEP_S)
-            score -= WEIGHT_NEAR * max(0.0, 1.0 - (clearance - inner) / ROOMY_M)
-            if score > best:
-                best_speed, best_turn, best = v, w, score
-    return best_speed, best_turn, best
+            for order in range(TURNS):
+                j = TURNS // 2 + (order + 1) // 2 * (1 - 2 * (order % 2))
+                w, way = rates[j], ways[j]
+                free, clearance = rolled(field, rim, inner, outer, x, y, way, v, s, need)
+                left = free * STEP_S - REACTION_S
+                if pace > admissible(pace * left, acceleration) + 1e-9:
+                    continue
+                if abs(w) > admissible(abs(w) * left, turn_acceleration) + 1e-9:
+                    continue
+                score = worth(points, along, covered, x, y, way[free], v, s, pace * free * STEP_S, pointing)
+                score -= WEIGHT_NEAR * max(0.0, 1.0 - (clearance - inner) / ROOMY_M)
+                if score > best:
+                    best_speed, best_side, best_turn, best = v, s, w, score
+    return best_speed, best_side, best_turn, best
 
 
 @kernel
@@ -212,12 +226,14 @@ def rolled(
     y: float,
     way: NDArray[Any],
     speed: float,
+    side: float,
     need: float,
 ) -> tuple[int, float]:
     """How many steps of the arc are free, and the least clearance of the turning center on those."""
     clearance = value_at(field, x, y)
     for step in range(1, way.shape[0]):
-        at_x, at_y = x + speed * way[step, 0], y + speed * way[step, 1]
+        at_x = x + speed * way[step, 0] - side * way[step, 1]
+        at_y = y + speed * way[step, 1] + side * way[step, 0]
         if not fits(field, rim, inner, outer, at_x, at_y, way[step, 2], way[step, 3], need):
             return step - 1, clearance
         clearance = min(clearance, value_at(field, at_x, at_y))
@@ -233,13 +249,15 @@ def worth(
     y: float,
     end: NDArray[Any],
     speed: float,
+    side: float,
     length: float,
+    pointing: float,
 ) -> float:
     """What driving an arc is worth: way made along the route, less what its end is off the route and points off it.
 
     `end` is the row of `unit_arc` where it ends, `length` how long it is.
     """
-    end_x, end_y = x + speed * end[0], y + speed * end[1]
+    end_x, end_y = x + speed * end[0] - side * end[1], y + speed * end[1] + side * end[0]
     reached, off = project(points, along, end_x, end_y, covered - 0.2, covered + length + 0.3)
     from_x, from_y = point_at(points, along, reached)
     to_x, to_y = point_at(points, along, reached + POINT_AHEAD_M)
@@ -247,5 +265,5 @@ def worth(
     way_x, way_y = to_x - from_x, to_y - from_y
     size = math.sqrt(way_x * way_x + way_y * way_y)
     if size > 0.0:
-        score -= WEIGHT_POINTING * (1.0 - (way_x * end[2] + way_y * end[3]) / size)
+        score -= pointing * (1.0 - (way_x * end[2] + way_y * end[3]) / size)
     return score
