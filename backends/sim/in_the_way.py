@@ -35,11 +35,11 @@ def first_in_the_way(
     `people` has rows (x, y, radius).
     """
     narrow = False
-    near = people[np.hypot(people[:, 0] - robot.x, people[:, 1] - robot.y) < PEOPLE_WITHIN_M]
-    for index in range(len(points) - 1):
+    person = _first_person(points, robot, outline.inner, people)
+    for index in np.flatnonzero(_tight(points, world, outline.outer)).tolist():
+        if index >= min(person, len(points) - 1):
+            break
         x, y = points[index].tolist()
-        if len(near) and (np.hypot(near[:, 0] - x, near[:, 1] - y) < near[:, 2] + outline.inner + ELBOW_M).any():
-            return Cause.PERSON
         heading = math.atan2(points[index + 1, 1] - y, points[index + 1, 0] - x)
         if covers_solid(world.blocked, outline.hull, x, y, heading):
             cells = _covered(outline, Pose(x, y, heading), world.blocked)
@@ -47,9 +47,30 @@ def first_in_the_way(
             if len(unknown):
                 return CAUSES[world.what_stands_in(unknown)]
             narrow = narrow or not _fits_about(outline, world, x, y, heading)
+    if person < len(points):
+        return Cause.PERSON
     if any(value_at(memory.field, x, y) < outline.inner for x, y in points.tolist()):
         return Cause.GONE
     return Cause.NARROW if narrow else Cause.NOTHING
+
+
+def _first_person(points: Points, robot: Pose, inner: float, people: NDArray[np.float64]) -> int:
+    """The index of the first point that a person is in the way of; the number of points where there is none."""
+    near = people[np.hypot(people[:, 0] - robot.x, people[:, 1] - robot.y) < PEOPLE_WITHIN_M]
+    if not len(near) or not len(points):
+        return len(points)
+    apart = np.hypot(points[:, :1] - near[:, 0], points[:, 1:] - near[:, 1])
+    hit = (apart < near[:, 2] + inner + ELBOW_M).any(axis=1)
+    return int(np.argmax(hit)) if hit.any() else len(points)
+
+
+def _tight(points: Points, world: World, reach: float) -> NDArray[np.bool_]:
+    """Whether anything solid is within reach of each point."""
+    rows, columns = world.distance.shape
+    row = np.clip((points[:, 1] / CELL_M).astype(np.intp), 0, rows - 1)
+    column = np.clip((points[:, 0] / CELL_M).astype(np.intp), 0, columns - 1)
+    close: NDArray[np.bool_] = world.distance[row, column] < reach + CELL_M
+    return close
 
 
 def _fits_about(outline: Outline, world: World, x: float, y: float, heading: float) -> bool:

@@ -23,7 +23,7 @@ from backends.sim.trouble import Trouble
 from backends.sim.world import World
 from runner.site.values import CELL_M, Pose
 
-BETWEEN_LOOKS_TICKS = 5
+BETWEEN_LOOKS_TICKS = 10
 EVERY_S = 1.0
 """Between two truths at least, while the cause stays the same and the robot is under way."""
 SLOW, SLOW_TURN = 0.1, 0.1

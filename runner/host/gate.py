@@ -26,6 +26,7 @@ class Gate:
 
     def __init__(self, backend: Backend) -> None:
         self._backend = backend
+        self._teller = backend if isinstance(backend, TellsTruth) else None
         self._lock = threading.Lock()
         self._aborting = threading.Event()
         self._halted = False
@@ -72,11 +73,10 @@ class Gate:
 
     def truths(self) -> Sequence[Truth]:
         """What really was the case since the last call; nothing where the backend cannot tell."""
-        backend = self._backend
-        if not isinstance(backend, TellsTruth):
+        if self._teller is None:
             return ()
         with self._lock:
-            truths: Sequence[Truth] = self._call(backend.truths)
+            truths: Sequence[Truth] = self._call(self._teller.truths)
             return truths
 
     def _halt_once(self) -> None:

@@ -21,7 +21,7 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from backends.contract import Backend, TellsTruth
+from backends.contract import Backend
 from runner.engine.advance import advance
 from runner.engine.codec import state_to_bytes
 from runner.engine.state import EngineState
@@ -111,7 +111,6 @@ class Host:
     _quiet_from: float = field(default=0.0, init=False)
     _lost_since: float | None = field(default=None, init=False)
     _told_at: float = field(default=0.0, init=False)
-    _tells_truth: bool = field(default=False, init=False)
 
     def __post_init__(self) -> None:
         clock = self.backend.clock
@@ -120,7 +119,6 @@ class Host:
         self._wall = WallWatch(clock)
         self._snapshot_due = clock.now() + SNAPSHOT_S
         self._quiet_from = clock.now()
-        self._tells_truth = isinstance(self.backend, TellsTruth)
 
     def run(self) -> Ending:
         """Run the mission to its end. Whatever goes wrong, the robot is told to halt before this returns or raises.
@@ -189,9 +187,8 @@ class Host:
 
     def _keep_truths(self) -> None:
         """Journal what really was the case in a simulated world. Nothing here ever looks at it."""
-        if self._tells_truth:
-            for truth in self.gate.truths():
-                self.journal.truth(truth.stamp, truth.pose, truth.cause.value)
+        for truth in self.gate.truths():
+            self.journal.truth(truth.stamp, truth.pose, truth.cause.value)
 
     def _is_view_due(self, news: bool) -> bool:
         clock = self.backend.clock
