@@ -97,7 +97,7 @@ class Simulator:
         self._clock = VirtualClock(setup.begins)
         self._ticks = 0
         self._next_telemetry = 0.0
-        self._ticks_per_look = max(1, round(TICKS_PER_S / setup.robot.lidar.rate))
+        self._looks_per_tick = min(setup.robot.lidar.rate / TICKS_PER_S, 1.0)
 
     @property
     def clock(self) -> Clock:
@@ -210,7 +210,7 @@ class Simulator:
         """Look around, and take in what has been seen."""
         robot, world, wheels = self.robot, self.world, self.body.wheels
         idle = robot.idle
-        if self._ticks % (IDLE_TICKS_PER_LOOK if idle else self._ticks_per_look) == 0:
+        if self._ticks % IDLE_TICKS_PER_LOOK == 0 if idle else self._is_time_to_look():
             self._scanner.look(
                 self._ticks, self.body.pose, self.body.driven, wheels.pose, world.sight, people,
                 self.trouble.lidar_blind,
@@ -225,6 +225,10 @@ class Simulator:
                 robot.found(found, now)
             if not robot.lost:
                 self.memory.take(scan, robot.pose)
+
+    def _is_time_to_look(self) -> bool:
+        """So many times a second as the lidar scans, as evenly as ticks allow."""
+        return int(self._ticks * self._looks_per_tick) != int((self._ticks - 1) * self._looks_per_tick)
 
     def _telemetry(self, now: float) -> Telemetry:
         robot, body = self.robot, self.body
