@@ -53,7 +53,9 @@ def parts_of(what: str, simulator: Simulator, action: Callable[[], object]) -> I
         ("localization: prediction", simulator.localization, "predict"),
         ("localization: correction", simulator.localization, "correct"),
         ("lidar", simulator._scanner, "look"),
+        ("sweep, with its memory", simulator._sweeper, "look"),
         ("memory", simulator.memory, "take"),
+        ("caution", simulator.robot.caution, "fastest"),
         ("planning", simulator.robot._planner, "plan"),
         ("following", simulator.robot._follower, "steer"),
         ("supervising", simulator.robot, "think"),
@@ -62,7 +64,7 @@ def parts_of(what: str, simulator: Simulator, action: Callable[[], object]) -> I
     ):
         timed(holder, method, name, parts)
     spent = seconds_of(action)
-    parts["supervising"] -= parts["planning"] + parts["following"]
+    parts["supervising"] -= parts["planning"] + parts["following"] + parts["caution"]
     parts["the rest"] = spent - sum(parts.values())
     ticks = simulator.clock.now() * TICKS_PER_S
     for name, seconds in parts.items():
