@@ -10,6 +10,7 @@ import pytest
 import shapely
 from numpy.typing import NDArray
 
+from backends.sim.kernels.grid import bearing_of
 from backends.sim.kernels.overlap import covers_solid, gap
 from backends.sim.kernels.rays import cast, scan
 from runner.site.floor import clearance, rasterize
@@ -123,3 +124,10 @@ def test_the_gap_between_outline_and_a_point_agrees_with_shapely() -> None:
         point = shapely.Point(x, y)
         expected = -shape.exterior.distance(point) if shape.contains(point) else shape.distance(point)
         assert gap(outline, 0.0, 0.0, 0.0, x, y) == pytest.approx(expected, abs=1e-12)
+
+
+def test_bearings_are_those_of_the_arc_tangent() -> None:
+    """Polynomial 4.4.49 of Abramowitz and Stegun, Handbook of Mathematical Functions, 1964: off by 1e-5 at most."""
+    random = np.random.default_rng(4)
+    for x, y in [*random.normal(size=(2000, 2)), (1.0, 0.0), (0.0, 1.0), (-1.0, 0.0), (0.0, -1.0), (0.0, 0.0)]:
+        assert bearing_of(y, x) == pytest.approx(math.atan2(y, x), abs=1.2e-5)

@@ -20,7 +20,7 @@ import numpy as np
 from numpy.typing import NDArray
 
 from backends.sim.kernels import grid, motion, overlap
-from backends.sim.kernels.grid import CELLS_PER_M, value_at
+from backends.sim.kernels.grid import CELLS_PER_M, bearing_of, value_at
 from backends.sim.kernels.overlap import gap
 from runner.site.compiled import kernel_compiler
 
@@ -29,6 +29,7 @@ kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, overlap.__fil
 CELL = 0.05
 BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center to have passed it
 TURN = 2.0 * math.pi
+PER_TURN = 1.0 / TURN
 TILE = 16
 UNTOLD, PASSED, OPEN = 0, 1, 2
 BY_LIDAR, BY_SWEEP = 0, 1  # which sensor saw what stands in a cell
@@ -127,8 +128,8 @@ def looked(
     apart = math.sqrt(to_x * to_x + to_y * to_y)
     if apart > reach:
         return UNTOLD
-    bearing = math.atan2(to_y, to_x) - first
-    bearing -= math.floor(bearing / TURN) * TURN
+    bearing = bearing_of(to_y, to_x) - first
+    bearing -= math.floor(bearing * PER_TURN) * TURN
     beam = int(bearing / step + 0.5)
     off = abs(bearing - beam * step)
     if beam >= ranges.shape[0]:
@@ -224,7 +225,8 @@ def fade(
     middle_x, middle_y = math.cos(first + half - 0.5 * step), math.sin(first + half - 0.5 * step)
     index = 0
     while index < count and gone < lost.shape[0]:
-        row, column = cells[index] // columns, cells[index] % columns
+        row = cells[index] // columns
+        column = cells[index] - row * columns
         if narrow:  # a few columns of a sweep: most cells lie well beside them
             to_x, to_y = (column + 0.5) * CELL - x, (row + 0.5) * CELL - y
             along = to_x * middle_x + to_y * middle_y

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from typing import Any
 
 import numpy as np
@@ -11,6 +12,7 @@ from runner.site.compiled import kernel_compiler
 
 kernel = kernel_compiler(__file__)
 
+QUARTER = 0.5 * math.pi
 CELLS_PER_M = 20.0
 """The inverse of `runner.site.values.CELL_M`."""
 
@@ -25,6 +27,21 @@ def value_at(field: NDArray[Any], x: float, y: float) -> float:
     if row >= field.shape[0] or column >= field.shape[1]:
         return 0.0
     return float(field[row, column])
+
+
+@kernel
+def bearing_of(y: float, x: float) -> float:
+    """The angle of a direction, from -pi to pi, to 0.00001 (Abramowitz and Stegun, 1964, 4.4.49); faster than exact."""
+    wide, high = abs(x), abs(y)
+    share = min(wide, high) / max(wide, high, 1e-300)
+    square = share * share
+    series = -0.3302995 + square * (0.1801410 + square * (-0.0851330 + square * 0.0208351))
+    angle = share * (0.9998660 + square * series)
+    if high > wide:
+        angle = QUARTER - angle
+    if x < 0.0:
+        angle = 2.0 * QUARTER - angle
+    return -angle if y < 0.0 else angle
 
 
 @kernel

@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 
 from backends.sim.kernels import artefacts, grid, path, rays
 from backends.sim.kernels.artefacts import met_person
-from backends.sim.kernels.grid import value_at
+from backends.sim.kernels.grid import bearing_of, value_at
 from backends.sim.kernels.path import point_at
 from backends.sim.kernels.rays import cast
 from runner.site.compiled import kernel_compiler
@@ -35,7 +35,7 @@ def is_seen(
     `beside` is the answer where no beam points.
     """
     to_x, to_y = at_x - x, at_y - y
-    bearing = math.atan2(to_y, to_x) - first
+    bearing = bearing_of(to_y, to_x) - first
     bearing -= math.floor(bearing / TURN) * TURN
     beam = int(bearing / step + 0.5)
     if beam >= sight.shape[0]:
