@@ -155,6 +155,7 @@ class Cause(StrEnum):
     FURNITURE = "furniture in the way"
     NARROW = "gap too narrow"
     GONE = "remembered obstacle that is gone"
+    WEDGED = "up against something"
     WHEELS_STUCK = "wheels stuck"
     SLIP = "slip"
     STOPPED = "emergency stop"

@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from backends.contract import Cause, Truth
 from backends.sim.body import Body
 from backends.sim.in_the_way import Points, first_in_the_way
+from backends.sim.kernels.overlap import covers_solid
 from backends.sim.kernels.weights import halved
 from backends.sim.memory import Memory
 from backends.sim.planner import find_halved
@@ -31,6 +32,8 @@ SLOW, SLOW_TURN = 0.1, 0.1
 AHEAD_M, BEYOND_M = 2.0, 1.0
 """Where it stands, what is so far ahead is in its way; where it believes its route obstructed, all up to there and a
 little beyond."""
+WEDGED_M = 0.04
+"""Nearer than this to something solid the robot is up against it."""
 THERE_M, AFTERWARDS_S = 0.3, 60.0
 """A goal farther off than this was not got to; it counts as trouble for so long after it ended, until the next."""
 ASTRAY_M, ASTRAY = 0.5, math.radians(20.0)
@@ -94,10 +97,11 @@ class Witness:
         wrong = self._wrong()
         if wrong is not Cause.NOTHING or idle:
             return wrong
-        obstructed = self._obstruction()
-        if obstructed is None and not self._stands():
+        obstructed, stands = self._obstruction(), self._stands()
+        if obstructed is None and not stands:
             return wrong
-        return self._in_the_way(people, AHEAD_M if obstructed is None else obstructed + BEYOND_M)
+        found = self._in_the_way(people, AHEAD_M if obstructed is None else obstructed + BEYOND_M)
+        return Cause.WEDGED if found is Cause.NOTHING and stands and self._is_wedged() else found
 
     def _wrong(self) -> Cause:
         trouble = self._trouble
@@ -134,6 +138,12 @@ class Witness:
     def _in_the_way(self, people: NDArray[np.float64], ahead: float) -> Cause:
         points, body = self._way_ahead(ahead), self._body
         return first_in_the_way(points, body.pose, body.outline, self._world, self._memory, people)
+
+    def _is_wedged(self) -> bool:
+        """Whether something solid is so near to the outline that the robot hardly dares to move."""
+        body = self._body
+        wider = body.outline.hull * (1.0 + WEDGED_M / body.outline.inner)
+        return bool(covers_solid(self._world.blocked, wider, *body.place.tolist()))
 
     def _way_ahead(self, length: float) -> Points:
         """Points of the next meters, some cells apart: of the robot's route, or of the map's whole way to the goal."""

@@ -171,3 +171,12 @@ def test_at_quiet_hours_only_some_are_about_and_they_come_and_go_where_the_robot
     assert min(counts[second] for second in range(600, 900)) <= 3
     assert min(counts[second] for second in range(600, 900)) >= 2
     assert counts[1800] >= 6
+
+
+@pytest.mark.parametrize("seed", SEEDS)
+def test_a_robot_that_stands_up_against_a_wall_is_told_so_by_the_truth(seed: int) -> None:
+    drive = start(HALL, Pose(11.9 - 0.36, 4.0, 0.0), seed=seed)
+    go(drive, 1, Pose(2.0, 4.0, 0.0))
+    drive.until(10.0)
+    assert drive.simulator.body.pose.x > 11.4, "it dares neither to turn nor to drive"
+    assert Cause.WEDGED in causes(drive)
