@@ -15,6 +15,9 @@ WIDTH = 80
 LABEL = 16
 """Columns of the labels at the left."""
 
+WRONG_MOST = 10
+"""Diagnoses of a simulated run that do not agree with the truth, listed at most."""
+
 LEG_ROW = "{:>4}  {:<20} {:<16} {:<8} {:>7} {:>8} {:>5} {:>4}"
 
 
@@ -200,10 +203,12 @@ def _truth(truth: TruthScore) -> list[str]:
             f"{right} of {len(told)} agree with what really was the case" if told else "none to hold against it",
         )
     ]
-    for score in truth.scores:
-        verdict = {True: "right", False: "wrong", None: "not scored"}[score.right]
+    wrong = [score for score in truth.scores if score.right is False]
+    for score in wrong[:WRONG_MOST]:
         really = ", ".join(score.really) or "nothing was wrong"
-        lines.append((f"  Incident {score.incident}", f"{verdict}: {score.diagnosis}. Really: {really}"))
+        lines.append((f"  Incident {score.incident}", f"not {score.diagnosis}. Really: {really}"))
+    if len(wrong) > WRONG_MOST:
+        lines.append(("", f"and {len(wrong) - WRONG_MOST} more that do not agree (see --json)"))
     if (off := truth.whereabouts) is not None:
         lines.append(
             (

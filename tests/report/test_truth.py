@@ -84,7 +84,8 @@ def test_how_far_the_robot_was_from_where_it_believed_to_be_is_told(tmp_path: Pa
 
 def test_the_page_of_a_simulated_run_ends_with_the_truth_and_that_of_a_robot_does_not(tmp_path: Path) -> None:
     page = report_text(run_with(tmp_path / "sim", "route blocked", [(0.0, ""), (95.0, "slip"), (130.0, "")], off=0.02))
-    assert "wrong: route blocked. Really: slip" in page
+    assert "0 of 1 agree" in page
+    assert "not route blocked. Really: slip" in page
     assert "off by 2.0 cm on average" in page
     assert max(map(len, page.splitlines())) <= 80
     assert "Truth" not in report_text(run_with(tmp_path / "real", "route blocked", []))
