@@ -26,7 +26,7 @@ from tests.backends.sim.support import is_end
 
 CONTACT_M = 1e-6
 """Overlaps no deeper than this are rounding."""
-STUCK_S = 60.0
+STUCK_S, FREED_AFTER_S = 60.0, 300.0
 MISSIONS = Path(missions.__file__).parent
 
 
@@ -40,6 +40,9 @@ class Overlaps:
     solid: list[tuple[float, NDArray[np.float64]]] = field(default_factory=list)
     standing: list[tuple[float, NDArray[np.float64]]] = field(default_factory=list)
     walked_in: int = 0
+    freed: int = 0
+    """How often somebody carried the robot to a place after it had stood for `FREED_AFTER_S`."""
+    meters: float = 0.0
 
 
 class Judge:
@@ -52,6 +55,7 @@ class Judge:
         self._reach = max(math.hypot(x, y) for x, y in simulator.setup.robot.footprint)
         self._place = simulator.body.place.copy()
         self._people = simulator.people.bodies.copy()
+        self._driven, self._since = 0.0, 0.0
 
     def look(self) -> None:
         simulator, seen = self._simulator, self.seen
@@ -66,6 +70,26 @@ class Judge:
             for index in close.tolist():
                 self._look_at(index, shape, now, people)
         self._place[:], self._people[:] = place, people
+
+    def stands_long(self) -> bool:
+        """Whether the robot has not got on for long."""
+        driven, now = self._simulator.body.driven, self._simulator.clock.now()
+        if driven - self._driven > 1.0:
+            self._driven, self._since = driven, now
+        return now - self._since >= FREED_AFTER_S
+
+    def free(self, place: int) -> None:
+        """Carry the robot to a place, if that is free, and tell it so."""
+        simulator, pose = self._simulator, self._simulator.setup.site.places[place].pose
+        people = simulator.people.bodies
+        if (np.hypot(people[:, 0] - pose.x, people[:, 1] - pose.y) < self._reach + 0.5).any():
+            return
+        shape = self._shape(np.array([pose.x, pose.y, pose.heading]))
+        if not self._overlaps_solid(shape, np.array([pose.x, pose.y, pose.heading])):
+            simulator.body.carry(pose)
+            simulator.localization.relocate(pose)
+            self.seen.freed += 1
+            self._since = simulator.clock.now()
 
     def _look_at(self, index: int, shape: shapely.Polygon, now: float, people: NDArray[np.float64]) -> None:
         x, y, radius = people[index]
@@ -105,6 +129,8 @@ def watch(conditions_name: str, seed: int, hours: float) -> Overlaps:
     for tick in range(1, round(hours * 36_000.0) + 1):
         ended = any(is_end(report) for report in simulator.reports(tick / 10.0))
         judge.look()
+        if tick % 600 == 0 and judge.stands_long():
+            judge.free(int(random.integers(len(site.places))))
         if ended or tick / 10.0 >= leave_at:
             number += 1
             simulator.body.charge.energy = robot.battery.capacity
@@ -112,13 +138,15 @@ def watch(conditions_name: str, seed: int, hours: float) -> Overlaps:
             simulator.clear(2 * number + 1, 3.0)
             simulator.go(Goal(number, site.places[int(random.integers(len(site.places)))].pose, robot.speed))
             leave_at = tick / 10.0 + STUCK_S
+    judge.seen.meters = simulator.body.driven
     return judge.seen
 
 
 def judge_all(conditions_name: str, seed: int, hours: float) -> None:
     seen = watch(conditions_name, seed, hours)
     print(
-        f"{conditions_name}, seed {seed}, {hours:g} h: {seen.ticks} ticks, {seen.near_solids} near something solid, "
+        f"{conditions_name}, seed {seed}, {hours:g} h, {seen.meters / 1000:.1f} km, freed {seen.freed} times: "
+        f"{seen.ticks} ticks, {seen.near_solids} near something solid, "
         f"{seen.near_people} near a person; overlaps: solid {len(seen.solid)}, standing people {len(seen.standing)}, "
         f"people who walked in {seen.walked_in}"
     )
