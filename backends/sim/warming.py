@@ -7,6 +7,7 @@ from datetime import datetime
 from backends.contract import Backend, Goal, Setup
 from runner.site.values import (
     Battery,
+    Bystander,
     Carton,
     Conditions,
     Lidar,
@@ -23,6 +24,9 @@ from runner.site.values import (
 
 def warm_up() -> None:
     """Use every kernel once. About 20 s after an installation; then they are kept (`runner.site.compiled`)."""
+    import numpy as np
+
+    from backends.sim.kernels.errands import pulled_straight
     from backends.sim.simulator import Simulator
 
     world = Simulator(_small_setup())
@@ -32,6 +36,7 @@ def warm_up() -> None:
     world.clear(2, 3.0)
     world.replan(3)
     _pass(world, 8.0)
+    pulled_straight(np.zeros((2, 2)), world.world.walkable, 0.3)  # nobody goes round a corner in a room of one
 
 
 def _pass(world: Backend, until: float) -> None:
@@ -50,7 +55,10 @@ def _small_setup() -> Setup:
             Battery(100.0, 10.0, 50.0, 100.0), posts=(Post((0.1, 0.1), 0.02),), sweep=Sweep(1.5, 20, 3.0),
         ),
         start=Pose(1.0, 1.0, 0.0),
-        conditions=Conditions(cartons=(Carton((2.5, 1.2), (0.3, 0.3)),), walkers=(Walkers(2),), uneven_floor=0.01),
+        conditions=Conditions(
+            cartons=(Carton((2.5, 1.2), (0.3, 0.3)),), walkers=(Walkers(2, together=2),),
+            uneven_floor=0.01, doors_shut_by_people=0.5, bystanders=(Bystander((4.5, 2.5), until_s=2.0),),
+        ),
         seed=1,
         begins=datetime(2024, 1, 1, 18, 0),
     )  # fmt: skip
