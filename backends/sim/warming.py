@@ -27,6 +27,7 @@ def warm_up() -> None:
     import numpy as np
 
     from backends.sim.kernels.errands import pulled_straight
+    from backends.sim.kernels.grid import value_at
     from backends.sim.simulator import Simulator
 
     world = Simulator(_small_setup())
@@ -36,6 +37,7 @@ def warm_up() -> None:
     world.clear(2, 3.0)
     world.replan(3)
     _pass(world, 8.0)
+    value_at(world.world.distance, 1.0, 1.0)
     pulled_straight(np.zeros((2, 2)), world.world.walkable, 0.3)  # nobody goes round a corner in a room of one
 
 
