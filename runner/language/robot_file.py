@@ -1,7 +1,8 @@
-"""Robot files: outline, speeds and battery; the senses are read in `senses`. The format is in FILES.md."""
+"""Robot files: outline, speeds and battery; the rest is read in `senses` and `driving`. The format is in FILES.md."""
 
 from __future__ import annotations
 
+from runner.language.driving import DRIVING_KEYS, parse_part, read_odometry, read_sideways_speed
 from runner.language.fields import Fields, Keys, mapping
 from runner.language.geometry import Coordinates, polygon_area, read_coordinates, read_points
 from runner.language.nodes import Scalar
@@ -38,6 +39,7 @@ ROBOT_KEYS: Keys = {
     "sweep": "{field of view: 90 deg, columns: 60, range: 3.5 m, period: 2 s}",
     "filters": "{shadow points: off}",
     "unseen space": "keep out",
+    **DRIVING_KEYS,
 }
 BATTERY_KEYS: Keys = {
     "capacity": "240 Wh",
@@ -73,6 +75,10 @@ def read_robot_page(page: Page) -> RobotDescription | None:
         sweep=read_sweep(fields),
         filters=read_filters(fields),
         unseen_space=fields.phrase("unseen space", parse_unseen_space, UnseenSpace.KEEP_OUT),
+        sideways_speed=read_sideways_speed(fields),
+        odometry=read_odometry(fields),
+        planner=fields.phrase("planner", parse_part, "disc-search"),
+        follower=fields.phrase("follower", parse_part, "dynamic-window"),
     )
 
 

@@ -9,7 +9,7 @@ import pytest
 
 from runner.language.diagnostics import LanguageError
 from runner.language.reader import load_robot
-from runner.site.values import Filters, Post, RobotDescription, Sweep, UnseenSpace
+from runner.site.values import Filters, Odometry, Post, RobotDescription, Sweep, UnseenSpace
 from tests.language import texts
 from tests.language.test_sites import example
 
@@ -37,9 +37,36 @@ def test_what_is_left_out_is_a_plain_lidar_with_its_filters_on(tmp_path: Path) -
     assert (robot.posts, robot.sweep, robot.filters, robot.unseen_space) == ((), None, Filters(), UnseenSpace.KEEP_OUT)
 
 
+def test_how_the_reference_robot_drives_is_read(tmp_path: Path) -> None:
+    robot = read(tmp_path, example("sideways speed:"))
+    assert robot.sideways_speed == 0.3
+    assert robot.odometry == Odometry(0.05, 0.01, math.radians(1.2), 0.03, math.radians(0.3), 0.01)
+    assert (robot.planner, robot.follower) == ("disc-search", "dynamic-window")
+
+
+def test_a_robot_is_usual_where_its_file_says_nothing_of_how_it_drives(tmp_path: Path) -> None:
+    robot = read(tmp_path, "odometry: {turn by turn: 6 %}\n")
+    assert (robot.sideways_speed, robot.odometry) == (0.0, Odometry(turn_by_turn=0.06))
+
+
 @pytest.mark.parametrize(
     ("more", "sentence", "help_text"),
     [
+        (
+            "sideways speed: 8 m/s\n",
+            "The sideways speed cannot be 8 m/s.",
+            "Write something from 0 m/s to 3 m/s.",
+        ),
+        (
+            "odometry: {turn by way: 5 %}\n",
+            '"%" is not a unit of angle.',
+            "Write 5 deg.",
+        ),
+        (
+            "planner: what a planner\n",
+            'No planner or follower can be called "what a planner".',
+            "Write letters, digits, hyphens, dots and underscores, as in disc-search.",
+        ),
         ("filters: {shadow points: maybe}\n", 'A filter is on or off, not "maybe".', "Write on or off."),
         (
             "filters: {shadow point: off}\n",

@@ -48,7 +48,7 @@ def test_the_files_the_readme_and_the_commands_speak_of_are_there() -> None:
         "twenty-people",
         "night-with-faults",
     }
-    assert len(SITES) == len(ROBOTS) == 2
+    assert (len(SITES), len(ROBOTS)) == (2, 3)
 
 
 @pytest.mark.parametrize("path", MISSIONS, ids=stem)
