@@ -28,7 +28,7 @@ BINS = 1 << 14  # room for bins in use; more than the poses there ever are
 GOLDEN = 0.6180339887498949  # multiples of it, without their whole part, lie evenly however many there are
 LONGER_M = 0.4  # a beam that runs so much farther than the map allows has gone through a wall
 MATCH_M = 0.3  # a beam that ends this near to a mapped surface is the map's
-SLIPS_FROM = 2.05  # deviations: one normal number in ten is above
+SLIPS_FROM = 2.05  # deviations: two normal numbers in a hundred are above
 EMPTY = -(1 << 62)
 
 
