@@ -6,6 +6,9 @@ from dataclasses import dataclass
 
 from runner.site.values import RobotDescription
 
+REST = 1e-9
+"""A speed below this is none: what is left by rounding would keep the robot from ever standing still."""
+
 
 @dataclass(slots=True)
 class Drive:
@@ -39,4 +42,5 @@ class Drive:
 
 
 def _approach(value: float, wanted: float, most: float) -> float:
-    return min(max(wanted, value - most), value + most)
+    nearer = min(max(wanted, value - most), value + most)
+    return nearer if abs(nearer) > REST else 0.0

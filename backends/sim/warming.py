@@ -36,6 +36,7 @@ def warm_up() -> None:
     world.ease_back(1, 0.1)
     world.clear(2, 3.0)
     world.replan(3)
+    world.relocate(4, None)
     _pass(world, 8.0)
     value_at(world.world.distance, 1.0, 1.0)
     pulled_straight(np.zeros((2, 2)), world.world.walkable, 0.3)  # nobody goes round a corner in a room of one
