@@ -8,7 +8,6 @@ import numpy as np
 from numpy.typing import NDArray
 
 from backends.contract import Cause
-from backends.sim.kernels.grid import value_at
 from backends.sim.kernels.overlap import covers_solid, gap
 from backends.sim.memory import Memory
 from backends.sim.outline import Outline
@@ -36,7 +35,7 @@ def first_in_the_way(
     """
     narrow = False
     person = _first_person(points, robot, outline.inner, people)
-    for index in np.flatnonzero(_tight(points, world, outline.outer)).tolist():
+    for index in np.flatnonzero(_near_any(points, world.distance, outline.outer + CELL_M)).tolist():
         if index >= min(person, len(points) - 1):
             break
         x, y = points[index].tolist()
@@ -49,7 +48,7 @@ def first_in_the_way(
             narrow = narrow or not _fits_about(outline, world, x, y, heading)
     if person < len(points):
         return Cause.PERSON
-    if any(value_at(memory.field, x, y) < outline.inner for x, y in points.tolist()):
+    if _near_any(points, memory.field, outline.inner).any():
         return Cause.GONE
     return Cause.NARROW if narrow else Cause.NOTHING
 
@@ -64,12 +63,12 @@ def _first_person(points: Points, robot: Pose, inner: float, people: NDArray[np.
     return int(np.argmax(hit)) if hit.any() else len(points)
 
 
-def _tight(points: Points, world: World, reach: float) -> NDArray[np.bool_]:
-    """Whether anything solid is within reach of each point."""
-    rows, columns = world.distance.shape
+def _near_any(points: Points, field: NDArray[np.float32], reach: float) -> NDArray[np.bool_]:
+    """Whether a distance field says that anything is within reach of each point."""
+    rows, columns = field.shape
     row = np.clip((points[:, 1] / CELL_M).astype(np.intp), 0, rows - 1)
     column = np.clip((points[:, 0] / CELL_M).astype(np.intp), 0, columns - 1)
-    close: NDArray[np.bool_] = world.distance[row, column] < reach + CELL_M
+    close: NDArray[np.bool_] = field[row, column] < reach
     return close
 
 

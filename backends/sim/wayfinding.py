@@ -32,6 +32,9 @@ class Wayfinding:
         self.spots: list[Point] = [(place.pose.x, place.pose.y) for place in site.places]
         self._world = world
         self._random = generator
+        self._weight = np.empty((0, 0), dtype=np.float32)
+        self._weighed = -1
+        """At which change of the world the weights were worked out."""
         self._routes: dict[tuple[int, int, frozenset[str]], Way | None] = {}
 
     def between(self, start: int, goal: int) -> Way | None:
@@ -82,8 +85,12 @@ class Wayfinding:
         )
 
     def _find(self, start: Point, goal: Point, robot: NDArray[np.float64] | None = None) -> Way | None:
-        weight = halved(self._world.walkable, KEEP_OFF_M, KEEP_OFF_SOFT_M, KEEP_OFF_STRENGTH)
+        if self._weighed != self._world.changes:
+            self._weighed = self._world.changes
+            self._weight = halved(self._world.walkable, KEEP_OFF_M, KEEP_OFF_SOFT_M, KEEP_OFF_STRENGTH)
+        weight = self._weight
         if robot is not None:
+            weight = weight.copy()
             _close_around(weight, float(robot[0]), float(robot[1]))
         return find_halved(weight, start, goal)
 

@@ -61,6 +61,8 @@ class World:
         self.blocked = self._floor.blocked(sorted(self.shut))
         self.distance = np.minimum(clearance(self.blocked), np.float32(FIELD_REACH_M))
         self.sight = self.walkable = self.distance
+        self.changes = 0
+        """How often the rasters have changed."""
 
     def advance(
         self, now: float, robot: Sequence[float], outline: Outline, people: NDArray[np.float64], whole_second: bool
@@ -157,6 +159,7 @@ class World:
 
     def _redraw(self, changed: Sequence[NDArray[np.intp]]) -> None:
         """Rasters and distance fields after these groups of cells may have changed."""
+        self.changes += 1
         tall = self._floor.blocked(sorted(self.shut))
         down = [laid for laid in self._laid if laid.down_at is not None and not laid.gone]
         for laid in down:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from backends.contract import Report, Truth
+from backends.contract import GoalReport, Report, Truth
 from runner.site.values import (
     AboutShare,
     Bystander,
@@ -19,7 +19,7 @@ from runner.site.values import (
     Solid,
     Walkers,
 )
-from tests.backends.sim.support import TWO_ROOMS, go, is_end, start
+from tests.backends.sim.support import TWO_ROOMS, go, start
 
 EVERYTHING = Conditions(
     cartons=(Carton((4.5, 2.0), (0.4, 0.4), when_near=2.0, stays_s=20.0, low=True),),
@@ -62,7 +62,7 @@ def test_how_time_is_cut_up_changes_nothing_with_everything_going_on(seed: int) 
     whole, sliced = night(seed, [20.0]), night(seed, [0.05, 0.37, 3.0, 0.1])
     assert repr(whole) == repr(sliced)
     reports, truths, _ = whole
-    assert any(is_end(report) for report in reports)
+    assert any(isinstance(report, GoalReport) for report in reports)
     assert len({truth.cause for truth in truths}) >= 4
 
 
