@@ -42,11 +42,13 @@ class Wheels:
         of_turn = math.hypot(noise.turn_by_way * way, noise.turn_by_turn * angle)
         of_last = math.hypot(noise.last_turn_by_way * way, noise.last_turn_by_turn * angle)
         drawn_way, drawn_turn, drawn_last = self._random.standard_normal(3).tolist()
-        longer = 1.0 + of_way * drawn_way / way if way > 0.0 else 0.0
+        off = of_way * drawn_way
+        if way > 0.0:
+            ahead, left = speed * (1.0 + off / way), side * (1.0 + off / way)
+        else:
+            ahead, left = off / time, 0.0  # a turn on the spot wanders, too
         here = self.pose
-        x, y, heading = glide(
-            here.x, here.y, here.heading, speed * longer, side * longer, turn + of_turn * drawn_turn / time, time
-        )
+        x, y, heading = glide(here.x, here.y, here.heading, ahead, left, turn + of_turn * drawn_turn / time, time)
         self.pose = Pose(x, y, heading + of_last * drawn_last)
         doubt.way += of_way * of_way
         doubt.turn += of_turn * of_turn
