@@ -143,10 +143,11 @@ class Localization:
         """Move all poses by what the wheels said since the last look, each with its own error."""
         motion, doubt = relative(self._looked_at, self._wheels.pose), self._wheels.ask()
         self._looked_at, self._looked_when = self._wheels.pose, now
+        self._weights[: self._count] = 0.0
         if motion != (0.0, 0.0, 0.0):
             move(
                 self._poses[: self._count], *motion, math.sqrt(doubt.way), math.sqrt(doubt.turn), math.sqrt(doubt.last),
-                self._normal(self._count),
+                self._normal(self._count), self._weights[: self._count],
             )  # fmt: skip
 
     def _ends_of(self, scan: Scan) -> NDArray[np.float64]:
@@ -198,9 +199,11 @@ class Localization:
     def _begin_search(self, search: _Search, ends: NDArray[np.float64]) -> None:
         if search.hint is not None:
             self._scatter(search.hint, HINT_M, HINT_TURN, MOST)
+            self._weights[:MOST] = 0.0
             return
         self._poses[:MOST] = find_on(self._field, ends, MOST, self._random)
         self._count = MOST
+        self._weights[:MOST] = 0.0
 
     def _go_on_searching(self) -> str | None:
         search = self._search

@@ -28,7 +28,8 @@ BINS = 1 << 14  # room for bins in use; more than the poses there ever are
 GOLDEN = 0.6180339887498949  # multiples of it, without their whole part, lie evenly however many there are
 LONGER_M = 0.4  # a beam that runs so much farther than the map allows has gone through a wall
 MATCH_M = 0.3  # a beam that ends this near to a mapped surface is the map's
-SLIPS_FROM = 2.05  # deviations: two normal numbers in a hundred are above
+SLIPS_FROM = 1.2816  # deviations: one normal number in ten is above
+SLIP_COUNTS = math.log(0.1)
 EMPTY = -(1 << 62)
 
 
@@ -63,16 +64,19 @@ def move(
     turn: float,
     last: float,
     drawn: NDArray[Any],
+    weights: NDArray[Any],
 ) -> None:
     """Move every pose by what odometry says (as seen from where it was), each with errors of its own.
 
     `way`, `turn` and `last` are deviations: of the way made, of the turn on it, of a turn on the spot at its end.
-    One in ten is moved as if the wheels had slipped and the robot had made less of the way, or none. `drawn` has
-    standard normal rows of four.
+    One in ten is moved as if the wheels had slipped and the robot had made less of the way, or none. So many are tried
+    that slip is found; as it is rarer, they count for less, by what `weights` is filled with (a logarithm, for
+    `weigh`). `drawn` has standard normal rows of four.
     """
     length = math.sqrt(ahead * ahead + left * left)
     for one in range(poses.shape[0]):
         grip = 1.0 - min(max(drawn[one, 3] - SLIPS_FROM, 0.0), 1.0)
+        weights[one] = 0.0 if grip == 1.0 else SLIP_COUNTS
         longer = grip + way * drawn[one, 0] / length if length > 0.0 else 1.0
         veer = turn * drawn[one, 1]
         direction = poses[one, 2] + 0.5 * veer
@@ -131,6 +135,8 @@ def weigh(
 ) -> None:
     """Fill `weights`, adding up to 1, with how well the ends of beams fit the map from each pose.
 
+    Before, they are the logarithms of what each pose was worth without the beams.
+
     `table` holds log-likelihoods by distance; `trust` is how many independent beams the beams are worth, as a share.
     """
     best = -np.inf
@@ -143,7 +149,7 @@ def weigh(
             ahead, left = ends[beam, 0], ends[beam, 1]
             off = off_surface(signed, x + ahead * cosine - left * sine, y + ahead * sine + left * cosine)
             total += table[min(int(min(off, 100.0) / TABLE_STEP_M + 0.5), last)]
-        weights[one] = trust * total
+        weights[one] += trust * total
         best = max(best, weights[one])
     everything = 0.0
     for one in range(poses.shape[0]):
