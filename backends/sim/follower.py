@@ -20,7 +20,7 @@ from backends.sim.outline import Outline
 from backends.sim.parts import STAND, Way, Wish
 from runner.site.values import Pose
 
-MARGIN_M = 0.1
+MARGIN_M = 0.12
 """Believed distance to keep between the rim and the middle of an obstacle's cell: at least 5 cm to the cell itself."""
 WINDOW_S = 0.3
 """Candidates of the dynamic window are what can be reached within this."""

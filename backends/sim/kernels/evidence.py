@@ -31,6 +31,7 @@ BEYOND = 1.5 * CELL  # a return must come from this far behind a cell's center t
 TURN = 2.0 * math.pi
 PER_TURN = 1.0 / TURN
 TILE = 16
+CONFIRMED, GLIMPSE = 4, 32  # hits that make a memory, and looks (scans and parts of sweeps) for which fewer last
 UNTOLD, PASSED, OPEN = 0, 1, 2
 BY_LIDAR, BY_SWEEP = 0, 1  # which sensor saw what stands in a cell
 
@@ -216,6 +217,7 @@ def fade(
 ) -> tuple[int, int]:
     """Take `amount` of evidence from the cells that this scan saw through; the new number of remembered cells.
 
+    What was only glimpsed goes by itself: hit too few times to be `CONFIRMED`, and not for `GLIMPSE` looks now.
     Those forgotten are added to `lost`, of which `gone` are in use; the second number returned is how many then are.
     The field still has to be made right (`repaint`). Where `lost` is full, no more are forgotten this time.
     """
@@ -233,12 +235,13 @@ def fade(
             if along < 0.0 or along > reach or abs(to_x * middle_y - to_y * middle_x) > along:
                 index += 1
                 continue
-        if (
+        glimpsed = evidence[row, column] < CONFIRMED and number - seen[row, column] > GLIMPSE
+        if glimpsed or (
             seen[row, column] != number
             and by[row, column] <= sensor
             and looked(ranges, x, y, first, step, (column + 0.5) * CELL, (row + 0.5) * CELL, reach) == PASSED
         ):
-            evidence[row, column] = max(evidence[row, column] - amount, 0)
+            evidence[row, column] = 0 if glimpsed else max(evidence[row, column] - amount, 0)
             if evidence[row, column] == 0:
                 lost[gone] = cells[index]
                 gone += 1

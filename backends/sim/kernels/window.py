@@ -26,7 +26,7 @@ kernel = kernel_compiler(__file__, grid.__file__, motion.__file__, path.__file__
 
 CELL_DIAGONAL = 0.0708
 STEP_S = 0.1  # time between two checks on an arc
-TOUCHING_M = 0.05  # with an obstacle's cell nearer to the rim than this, only driving backward is allowed
+TOUCHING_M = 0.07  # with an obstacle's cell nearer to the rim than this, only driving backward is allowed
 REACTION_S = 0.1  # one tick passes before a change of mind takes effect
 SPEEDS, SIDES, TURNS = 7, 5, 21  # candidates; one of `SIDES` for a drive that cannot go sideways
 WEIGHT_OFF = 1.2  # per meter beside the route, against 1 per meter along it
