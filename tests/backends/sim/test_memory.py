@@ -9,6 +9,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
+from backends.sim.kernels.evidence import CONFIRMED, GLIMPSE
 from backends.sim.memory import PAINT_M, Memory, State, surveyed
 from backends.sim.outline import outline_of
 from backends.sim.sensing import Scan
@@ -56,10 +57,22 @@ def test_a_beam_that_comes_back_from_beyond_takes_evidence_away_scan_by_scan() -
 
 def test_a_beam_that_does_not_come_back_takes_nothing_away() -> None:
     made = memory()
-    made.take(scan_of({MIDDLE: 2.0}), STANDING)
-    for _ in range(50):
+    for _ in range(CONFIRMED):
+        made.take(scan_of({MIDDLE: 2.0}), STANDING)
+    for _ in range(200):
         made.take(scan_of({}), STANDING)
     assert made.count == 1
+
+
+def test_what_was_only_glimpsed_goes_by_itself_after_a_while() -> None:
+    made = memory()
+    for _ in range(CONFIRMED - 1):
+        made.take(scan_of({MIDDLE: 2.0}), STANDING)
+    for _ in range(GLIMPSE):
+        made.take(scan_of({}), STANDING)
+    assert made.count == 1
+    made.take(scan_of({}), STANDING)
+    assert made.count == 0
 
 
 def test_a_beam_beside_the_cell_or_stopped_before_it_takes_nothing_away() -> None:
