@@ -81,7 +81,7 @@ def spots(motion: Motion, count: int) -> NDArray[np.float64]:
     heading = motion.turn * time
     way = (np.exp(1j * heading) - 1.0) / (1j * motion.turn) if motion.turn else time + 0j
     way = way * complex(motion.speed, motion.side)
-    return np.column_stack([way.real, way.imag, heading])
+    return np.asarray(np.column_stack([way.real, way.imag, heading]), dtype=np.float64)
 
 
 def closed_form(noise: Odometry, motion: Motion) -> NDArray[np.float64]:
@@ -95,7 +95,7 @@ def closed_form(noise: Odometry, motion: Motion) -> NDArray[np.float64]:
     for variance, pivots in ((of_turn, middles), (of_last, ends)):
         swung = np.column_stack([pivots[:, 1] - end[1], end[0] - pivots[:, 0], np.ones(motion.steps)])
         total += variance * swung.T @ swung
-    return total
+    return np.asarray(total, dtype=np.float64)
 
 
 def assert_variance(found: NDArray[np.float64], expected: float) -> None:
