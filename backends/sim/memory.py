@@ -24,6 +24,8 @@ TRUST_M = 5.0
 """Returns from farther away are not remembered: a small error in heading would put them in the wrong place."""
 TOLERANCE_M = 0.1
 """A return this near a mapped cell (and 1 % of its range more, and four deviations of noise at least) is the map's."""
+DISOWNED_M = TRUST_M + 1.0
+"""What was seen of late from a wrong pose is within this of it: the robot drove on for a moment until it noticed."""
 LONGEST_MEMORY_S = 30.0
 """Evidence is capped at so many seconds of scans: what stood long is forgotten after this long in plain view."""
 OPEN_S = 1.0
@@ -175,6 +177,13 @@ class Memory:
         self._hidden[self.unseen : self.unseen + room] = lost[:room]
         self.unseen += room
         return gone
+
+    def disown(self, pose: Pose) -> None:
+        """Take back what was remembered about a pose at which the robot turns out not to be.
+
+        The cells go back to what the map says of them. They were not cleared, so they are not unseen.
+        """
+        self._drop(pose, DISOWNED_M, NO_OUTLINE)
 
     def _drop(self, pose: Pose, radius: float, outline: NDArray[np.float64]) -> int:
         """Forget within a radius, or what of that is under an outline that has corners; how many, listed in `_lost`."""

@@ -215,11 +215,13 @@ class Simulator:
                 self._ticks, self.body.pose, self.body.driven, wheels.pose, world.sight, people,
                 self.trouble.lidar_blind,
             )  # fmt: skip
-        if self._sweeper is not None and not idle:
+        if self._sweeper is not None and not idle and not robot.lost:
             self._sweeper.look(self.body.pose, robot.pose, world.distance, people, self.memory)
         if scan := self._scanner.deliver(self._ticks, wheels.pose):
             found = self.localization.correct(scan, now)
             robot.pose = self.localization.pose
+            if self.localization.lost and not robot.lost:
+                self.memory.disown(robot.pose)  # it was not there of late, nor was what it saw
             robot.lost = self.localization.lost
             if found is not None:
                 robot.found(found, now)
