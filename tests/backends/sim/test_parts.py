@@ -83,3 +83,32 @@ def test_a_run_names_the_missing_part_and_leaves_no_traceback(tmp_path: Path) ->
     assert found.returncode == 2, told
     assert 'The robot asks for a planner called "crystal-ball". Installed are: disc-search.' in told
     assert "Traceback" not in told
+
+
+ERRAND = """
+from dataclasses import replace
+
+from backends.contract import GoalStatus
+from runner.site.values import Pose, Solid
+from tests.backends.sim.support import CART, HALL, distance, go, start
+
+pillar = Solid(((5.0, 3.5), (6.0, 3.5), (6.0, 4.5), (5.0, 4.5)))
+robot = replace(CART, planner="chalk-line", follower="plodder")
+drive = start(replace(HALL, solids=(pillar,)), Pose(2.0, 4.0, 0.0), robot=robot)
+corner, goal = Pose(3.0, 6.5, 0.0), Pose(9.0, 4.0, 0.0)
+for number, pose in enumerate((corner, goal), 1):
+    go(drive, number, pose)
+    end = drive.until_end(drive.simulator.clock.now() + 120.0)
+    print(end.status.value, distance(drive.simulator.body.pose, pose) < 0.2)
+print(max(one.speed for one in drive.telemetry()) < 0.31)
+"""
+
+
+def test_in_a_process_of_its_own_both_parts_of_a_package_on_the_path_drive_round_a_pillar() -> None:
+    path = os.pathsep.join([str(INSTALLED), str(MISSIONS.parent)])
+    found = subprocess.run(
+        [sys.executable, "-c", ERRAND], capture_output=True, text=True, check=False,
+        env=os.environ | {"PYTHONPATH": path},
+    )  # fmt: skip
+    assert found.stderr == ""
+    assert found.stdout.split() == ["arrived", "True", "arrived", "True", "True"]
