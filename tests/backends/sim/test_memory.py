@@ -137,6 +137,18 @@ def cleared() -> Memory:
     return made
 
 
+def test_what_was_seen_from_where_the_robot_was_not_is_taken_back_and_leaves_nothing_unseen() -> None:
+    made = memory()
+    for _ in range(CONFIRMED):
+        made.take(scan_of({MIDDLE: 2.0, MIDDLE + 60: 2.5}), STANDING)
+    assert made.count == 2
+    made.disown(STANDING)
+    assert (made.count, made.unseen) == (0, 0)
+    assert made.state((4.0, 3.025)) is State.FREE
+    made.take(scan_of({}), STANDING)
+    assert np.array_equal(made.field, made.known)
+
+
 def test_what_was_cleared_is_unseen_and_not_free() -> None:
     made = cleared()
     assert made.state(SPOT) is State.UNSEEN
