@@ -17,6 +17,7 @@ from __future__ import annotations
 
 import math
 from dataclasses import dataclass
+from functools import cache
 
 import numpy as np
 import pytest
@@ -51,6 +52,7 @@ ARC = Motion(0.6, 0.3, 80)
 SIDEWAYS = Motion(0.0, 0.0, 100, side=0.5)
 
 
+@cache
 def drives(noise: Odometry, motion: Motion) -> NDArray[np.float64]:
     """Rows of x, y and heading that odometry has at the ends of many equal drives, each on a seed of its own."""
     found = np.empty((DRIVES, 3))
