@@ -39,8 +39,9 @@ BLUR_M, BLUR_TURN = 0.006, math.radians(0.12)
 GRAIN_M, GRAIN_TURN = 0.01, math.radians(0.15)
 """Deviation of what the map's cells leave open, and the poses therefore cannot tell."""
 START_M, START_TURN = 0.05, math.radians(2.0)
+NEAR_M, NEAR_TURN = 0.1, math.radians(4.0)
 HINT_M, HINT_TURN = 0.5, math.radians(20.0)
-"""Deviation of the start pose, and of a pose that somebody says the robot is near."""
+"""Deviation of the start pose, of where it believes to be when told to look, and of where somebody says it is."""
 LOST_SHARE, FOUND_SHARE = 0.3, 0.12
 """With more than this share of beams through walls it is lost; with less than that not any more."""
 REMEMBERED = 0.6
@@ -57,9 +58,10 @@ MATCHING_SHARE = 0.4
 
 @dataclass(slots=True)
 class _Search:
-    """A look for itself under way, `hint` being where somebody says it is."""
+    """A look for itself under way, near `hint` where that is known; `then_anywhere` where it is not there."""
 
     hint: Pose | None
+    then_anywhere: bool = False
     looks: int = 0
 
 
@@ -106,9 +108,9 @@ class Localization:
         self.pose = seen_from(self._at_look, relative(self._looked_at, self._wheels.pose))
 
     def relocate(self, hint: Pose | None) -> None:
-        """Begin to find out anew where it is. `correct` says what came of it."""
-        self._search = _Search(hint)
-        self.lost = True
+        """Begin to find out anew where it is: near a hint, or, where it does not take itself for lost, near where it
+        believes to be and, if it is not there, anywhere. `correct` says what came of it."""
+        self._search = _Search(self.pose, then_anywhere=True) if hint is None and not self.lost else _Search(hint)
 
     def give_up(self) -> bool:
         """End a search under way; whether there was one."""
@@ -198,7 +200,8 @@ class Localization:
 
     def _begin_search(self, search: _Search, ends: NDArray[np.float64]) -> None:
         if search.hint is not None:
-            self._scatter(search.hint, HINT_M, HINT_TURN, MOST)
+            wide = (NEAR_M, NEAR_TURN) if search.then_anywhere else (HINT_M, HINT_TURN)
+            self._scatter(search.hint, *wide, MOST)
             self._weights[:MOST] = 0.0
             return
         self._poses[:MOST] = find_on(self._field, ends, MOST, self._random)
@@ -213,11 +216,21 @@ class Localization:
         if search.looks < SEARCH_LOOKS:
             return None
         self._search, self.lost = None, False
+        if search.then_anywhere:
+            return self._settle_near()
         unsure = self.spread > FOUND_M
         if not unsure and self._through < FOUND_SHARE and self._matching >= MATCHING_SHARE:
             return ""
         self.lost, self._through = True, 1.0
         return "Several spots on the map look alike from here." if unsure else "The map shows no spot like this one."
+
+    def _settle_near(self) -> str | None:
+        """After a look near where it believed to be: beams through walls say that it is elsewhere, while beams that
+        people and cartons stop say nothing."""
+        if self._through >= FOUND_SHARE:
+            self._search, self.lost = _Search(None), True
+            return None
+        return ""
 
     def _scatter(self, pose: Pose, deviation: float, turned: float, count: int) -> None:
         """Poses about one, normally distributed."""

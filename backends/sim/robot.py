@@ -158,6 +158,7 @@ class Robot:
             self._answer_replan(now, True, "")
             return STAND
         if self.lost:
+            self._answer_replan(now, False, "The robot does not know where it is.")
             return STAND
         return self._pursue(self._goal, now)
 
