@@ -6,7 +6,7 @@ once a tick, says what speeds it wants. News for whoever commands it collects in
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
@@ -15,8 +15,8 @@ from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report
 from backends.sim.body import Body
 from backends.sim.caution import Caution
 from backends.sim.easing import Easing
-from backends.sim.frames import relative, seen_from
 from backends.sim.memory import Memory
+from backends.sim.moves import MIDDLE, Move, square_of
 from backends.sim.parts import STAND, Wish, follower_named, planner_named
 from backends.sim.planner import Planner, Route
 from backends.sim.tracking import Track
@@ -61,7 +61,7 @@ class Robot:
         self._under_way = False
         self._replan_asked: int | None = None
         self._relocating: int | None = None
-        self._moves: tuple[Pose, Pose] | None = None  # start and end of a relative move, in the frame of odometry
+        self._move: Move | None = None
         self.lost = False
         self._obstructed_since: float | None = None
         self._attempts = 0
@@ -87,13 +87,8 @@ class Robot:
         self._last_goal_id = goal.id
         self._drop_goal()
         self._body.charge.charging = False
-        self._moves = None
-        if goal.relative:
-            odometry = self._body.wheels.pose
-            ahead = (goal.pose.x, goal.pose.y, goal.pose.heading)
-            self._moves = (odometry, seen_from(odometry, ahead))
-            goal = replace(goal, pose=seen_from(self.pose, ahead))
-        if reason := self._refusal(goal.pose):
+        self._move = Move(self._body.wheels.pose, goal.pose) if goal.relative else None
+        if reason := self._refusal(goal):
             self.news.append(GoalReport(now, goal.id, GoalStatus.REFUSED, reason))
             return
         self._goal = goal
@@ -157,9 +152,8 @@ class Robot:
         if self._goal is None:
             self._answer_replan(now, True, "")
             return STAND
-        if self.lost:
-            self._answer_replan(now, False, "The robot does not know where it is.")
-            return STAND
+        if self._move is not None:
+            return self._go_by_odometry(self._goal, self._move, now)
         return self._pursue(self._goal, now)
 
     def _answer_replan(self, now: float, done: bool, reason: str) -> None:
@@ -177,27 +171,52 @@ class Robot:
         return Wish(speed, 0.0)
 
     def _pursue(self, goal: Goal, now: float) -> Wish:
-        if self._moves is not None:
-            goal = replace(goal, pose=self._on_map(self._moves[1]))
+        if self.lost:
+            self._answer_replan(now, False, "The robot does not know where it is.")
+            return STAND
         self._supervise(goal, now)
         if self.route is None or self._ending is not None or self.caution.is_blind(self.pose):
             return STAND
         fastest = min(goal.speed, self.caution.fastest(self.route, self.track.covered, self.pose))
-        wish = self._follower.steer(self.memory.field, self.route, self.track.covered, self.pose, goal.pose, fastest)
+        return self._steered(self.memory.field, self.route, self.pose, goal.pose, fastest, now)
+
+    def _go_by_odometry(self, goal: Goal, move: Move, now: float) -> Wish:
+        """A relative move: straight, by odometry and what the lidar sees now; a lost robot can make one too."""
+        scan, wheels = self.memory.scan, self._body.wheels.pose
+        self._answer_replan(now, True, "")
+        if scan is None or self.caution.is_blind(self.pose):
+            return STAND
+        self.route = self._planner.straight(self.memory.field, *move.seen_at(self.pose, wheels))
+        if not self._under_way:
+            self._begin_route(goal, now)
+        self.track.locate(self.route, self.pose)
+        field, (start, end) = square_of(scan), move.seen_at(MIDDLE, wheels)
+        fastest = min(goal.speed, self.caution.fastest(self.route, self.track.covered, self.pose))
+        return self._steered(field, self._planner.straight(field, start, end), MIDDLE, end, fastest, now)
+
+    def _steered(
+        self, field: NDArray[np.float32], route: Route, pose: Pose, end: Pose, fastest: float, now: float
+    ) -> Wish:
+        wish = self._follower.steer(field, route, self.track.covered, pose, end, fastest)
         if wish.arrived:
             self._ending = _Ending(GoalStatus.ARRIVED, "")
             self._end_when_still(now)
         return wish
 
-    def _on_map(self, there: Pose) -> Pose:
-        """A pose of the frame of odometry on the map: as far from where the robot believes to be now."""
-        return seen_from(self.pose, relative(self._body.wheels.pose, there))
+    def _begin_route(self, goal: Goal, now: float) -> None:
+        """There is a new route."""
+        self.route_number += 1
+        self.track.begin()
+        self._follower.begin()
+        self._attempts = 0
+        self._obstructed_since = None
+        if not self._under_way:
+            self._under_way = True
+            self.news.append(GoalReport(now, goal.id, GoalStatus.UNDER_WAY))
 
     def _supervise(self, goal: Goal, now: float) -> None:
         """Keep the route fit to be followed: plan where there is none, where it is obstructed, or where asked."""
         if self.route is not None:
-            if self._moves is not None:
-                self.route = self._planner.straight(self.memory.field, *map(self._on_map, self._moves))
             self.track.locate(self.route, self.pose)
         asked = self._replan_asked is not None
         if not asked and not (self._wants_plan(now) and now >= self._next_attempt):
@@ -220,10 +239,7 @@ class Robot:
 
     def _attempt(self, goal: Goal, now: float, anew: bool) -> bool:
         """Plan once. Where that fails the old route is kept and followed as far as it goes, unless `anew`."""
-        if self._moves is not None:
-            route: Route | None = self._planner.straight(self.memory.field, *map(self._on_map, self._moves))
-        else:
-            route = self._planner.plan(self._passable(), self.pose, goal.pose)
+        route = self._planner.plan(self._passable(), self.pose, goal.pose)
         self._next_attempt = now + BETWEEN_ATTEMPTS_S
         if route is None:
             self._attempts += 1
@@ -232,14 +248,7 @@ class Robot:
                 self._ending = _Ending(GoalStatus.NO_ROUTE, self._why_no_route(goal))
             return False
         self.route = route
-        self.route_number += 1
-        self.track.begin()
-        self._follower.begin()
-        self._attempts = 0
-        self._obstructed_since = None
-        if not self._under_way:
-            self._under_way = True
-            self.news.append(GoalReport(now, goal.id, GoalStatus.UNDER_WAY))
+        self._begin_route(goal, now)
         return True
 
     # --- ends -------------------------------------------------------------------------------------------------
@@ -260,10 +269,11 @@ class Robot:
         self._obstructed_since = None
         self._attempts = 0
 
-    def _refusal(self, pose: Pose) -> str:
+    def _refusal(self, goal: Goal) -> str:
+        pose = goal.pose
         if self._body.charge.empty:
             return "The battery is empty."
-        if self._planner.fits(self.memory.known, pose):
+        if goal.relative or self._planner.fits(self.memory.known, pose):
             return ""
         return f"The goal at {pose.x:.2f} m, {pose.y:.2f} m lies in a wall, too near to one, or off the floor."
 

@@ -225,7 +225,9 @@ class Simulator:
             robot.lost = self.localization.lost
             if found is not None:
                 robot.found(found, now)
-            if not robot.lost:
+            if robot.lost:
+                self.memory.scan = scan  # seen, but not known where
+            else:
                 self.memory.take(scan, robot.pose)
 
     def _is_time_to_look(self) -> bool:

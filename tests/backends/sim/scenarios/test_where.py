@@ -106,16 +106,20 @@ def test_it_finds_itself_with_people_about(seed: int) -> None:
 
 
 @pytest.mark.parametrize("seed", SEEDS)
-def test_a_lost_robot_does_not_drive_to_a_new_goal_either_be_it_relative_or_not(seed: int) -> None:
+def test_a_lost_robot_does_not_drive_to_a_new_place_either_but_makes_a_relative_move(seed: int) -> None:
     carried = Fault(FaultKind.CARRIED, at_s=CARRIED_S, to=PLACES["laboratory"])
     drive = in_the_clinic(seed, "treatment room", carried)
     drive.until(CARRIED_S + 10.0)
     stood = drive.simulator.body.pose
     go(drive, 2, PLACES["kitchen"])
     drive.until(30.0)
-    drive.simulator.go(Goal(3, Pose(1.0, 0.0, 0.0), 0.5, relative=True))
-    drive.until(50.0)
     assert drive.simulator.body.pose == stood
+    drive.simulator.go(Goal(3, Pose(0.5, 0.0, 0.0), 0.5, relative=True))
+    end = drive.until_end(50.0)
+    assert end is not None
+    assert end.status is GoalStatus.ARRIVED
+    assert distance(drive.simulator.body.pose, stood) == pytest.approx(0.5, abs=0.13)
+    assert drive.telemetry()[-1].spread > LOST_M, "it still does not know where"
 
 
 # --- where the map cannot tell ----------------------------------------------------------------------------------------
