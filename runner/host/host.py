@@ -357,25 +357,33 @@ class Host:
         while True:
             self._post_view()
             self.after_turn()
-            wish = self.board.next_wish(self.rest)
-            event = wish.event if wish is not None else None
+            wish = self._wish_that_matters(detail)
             if self.distress.impatient:
                 raise RunError(detail)
-            if event in (Event.RELEASE, Event.ABORT) or time.monotonic() >= again_at:
-                if event is Event.ABORT:
+            if wish is not None or time.monotonic() >= again_at:
+                aborts = wish is not None and wish.event is Event.ABORT
+                if aborts:
                     self._abort()
                 again_at = time.monotonic() + RECORD_AGAIN_S
                 if self._recorded_now():
                     break
-                if wish is not None and event is Event.ABORT:
+                if wish is not None and aborts:
                     self._abort_unrecorded(wish)
-            if wish is not None:
-                wish.answered(False, detail)
+                if wish is not None:
+                    wish.answered(False, detail)
             self._drain()
         if self.state.ended is None:
             self._hold_for(kind, detail)
         if wish is not None:
             self._safely(self._carry_out, wish)
+
+    def _wish_that_matters(self, detail: str) -> Wish | None:
+        """The next wish to release or to abort, where there is one; all others are turned down, however many."""
+        wish = self.board.next_wish(self.rest)
+        while wish is not None and wish.event not in (Event.RELEASE, Event.ABORT):
+            wish.answered(False, detail)
+            wish = self.board.next_wish(0.0)
+        return wish
 
     def _abort_unrecorded(self, wish: Wish) -> None:
         """End the run although the record cannot say so. A note beside it keeps it from being picked up."""

@@ -31,6 +31,11 @@ def test_fifty_nights() -> None:
     main(FIRST, 50)
 
 
+def test_a_flood_does_not_keep_a_release_waiting_while_the_record_cannot_be_written(folder: Path) -> None:
+    """Night 81 found that it did: each remark of the flood cost a turn of its own."""
+    night(81, folder / "run")
+
+
 @pytest.mark.soak
 def test_two_thousand_nights() -> None:
     main(FIRST, 2000)
