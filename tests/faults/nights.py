@@ -58,7 +58,7 @@ LASTS_S = 3600.0
 ABORT_BOUND_S = 1.0
 """Virtual seconds within which an abort must have halted the robot: one slice of a host without a pace."""
 TURNS_MOST = 60_000
-STUCK_TURNS = 400
+STUCK_TURNS = 60
 MEMORY = "/dev/shm" if Path("/dev/shm").is_dir() else None  # noqa: S108  a night commits thousands of times
 ROOM_FOR_NOTES = 16_384
 """Bytes that a file may have while the disk is full: notes fit, the write-ahead log does not."""
@@ -230,7 +230,8 @@ class Fates:
     def turn(self) -> None:
         """After each turn of the host, and while it waits in trouble."""
         self.turns += 1
-        assert self.turns < TURNS_MOST, "the run does not end"
+        if self.turns >= TURNS_MOST:
+            raise SystemExit("the run does not end")  # nothing less gets past a host that lives through faults
         self._see_time_go_on()
         clock = self.robot.clock
         if clock.seconds >= LASTS_S or self.turns >= TURNS_MOST // 2:
@@ -248,7 +249,12 @@ class Fates:
         waiting = self.robot.held() or self.disk_full or self.robot.clock.seconds < self.robot.cut_until
         self.stuck = 0 if waiting or self.robot.clock.seconds > self.before else self.stuck + 1
         self.before = self.robot.clock.seconds
-        assert self.stuck < STUCK_TURNS, "time stands still although nobody holds the mission"
+        if self.stuck == STUCK_TURNS:
+            self._note("time stands still although nobody holds the mission")
+
+    def _note(self, wrong: str) -> None:
+        """For the judge. Raised here, it would be one more fault for the host to live through."""
+        self.robot.wrong.append(wrong)
 
     def _mend(self) -> None:
         robot = self.robot
