@@ -66,6 +66,7 @@ SILENT_S = 30.0
 """Longer without telemetry is trouble; a link gets over shorter cuts by itself."""
 LOST_SPREAD_M, LOST_S = 3.0, 60.0
 """A robot that knows its position no better than this for so long is lost, whatever the retry rule has tried."""
+MAY_NOT_HAVE_BEEN_TOLD = "The mission has ended, but the robot may not have been told. See that it stands."
 SNAPSHOT_S = 600.0
 """Seconds of the run between two snapshots: the most that picking it up has to go through again."""
 RECORD_AGAIN_S = 5.0
@@ -312,7 +313,7 @@ class Host:
         unreached = self.gate.try_halt()
         self.distress.begin(kind, detail, self.backend.clock.now(), error)
         if self.state.ended is not None and kind == "robot":
-            raise RunError(f"{detail} The mission has ended, but the robot may not have been told. See that it stands.")
+            raise RunError(f"{detail} {MAY_NOT_HAVE_BEEN_TOLD}")
         if self.state.ended is not None:
             raise RunError(detail) from error
         if kind == "record":
@@ -374,6 +375,8 @@ class Host:
             self._drain()
         if self.state.ended is None:
             self._hold_for(kind, detail)
+        elif unreached := self.gate.try_halt():  # an abort that could be recorded only now: its halt may be lost
+            raise RunError(f"{unreached} {MAY_NOT_HAVE_BEEN_TOLD}")
         if wish is not None:
             self._safely(self._carry_out, wish)
 

@@ -36,6 +36,11 @@ def test_a_flood_does_not_keep_a_release_waiting_while_the_record_cannot_be_writ
     night(81, folder / "run")
 
 
+def test_an_abort_on_a_cut_line_and_a_full_disk_still_reaches_the_robot_when_both_are_mended(folder: Path) -> None:
+    """Night 516 found that it did not: the abort could be recorded at last, and nobody halted the robot again."""
+    night(516, folder / "run")
+
+
 @pytest.mark.soak
 def test_two_thousand_nights() -> None:
     main(FIRST, 2000)
