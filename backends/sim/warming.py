@@ -23,7 +23,7 @@ from runner.site.values import (
 
 
 def warm_up() -> None:
-    """Use every kernel once. About 20 s after an installation; then they are kept (`runner.site.compiled`)."""
+    """Use every kernel once. About half a minute after an installation; then they are kept (`runner.site.compiled`)."""
     import numpy as np
 
     from backends.sim.kernels.errands import pulled_straight
