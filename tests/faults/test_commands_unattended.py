@@ -87,7 +87,7 @@ def mission_file(tmp_path: Path) -> Path:
 
 def test_a_killed_run_is_picked_up_verified_and_removed(tmp_path: Path) -> None:
     runs = tmp_path / "runs"
-    folder = begin(runs, "evening-round", "--pace", "10")
+    folder = begin(runs, "evening-round", "--pace", "60")
     view_when(folder, lambda view: view.legs_arrived >= 1)
     refused = trundle(runs, "runs", "--remove", folder.name)
     assert refused.returncode != 0

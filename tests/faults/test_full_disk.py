@@ -17,8 +17,8 @@ set -u
 mount -t tmpfs -o size=1500k tmpfs "$DISK"
 mkdir "$DISK/runs"
 export TRUNDLE_RUNS="$DISK/runs"
-"$TRUNDLE" run evening-round --pace 20 --detach > /dev/null || exit 90
-sleep 2
+"$TRUNDLE" run evening-round --pace 60 --detach > /dev/null || exit 90
+sleep 1
 dd if=/dev/zero of="$DISK/filler" bs=4k 2> /dev/null   # until there is no room left
 df --output=avail "$DISK" | tail -1
 for _ in $(seq 100); do
