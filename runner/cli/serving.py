@@ -30,6 +30,11 @@ from runner.site.values import Conditions, Pose
 BACKENDS = "trundle.backends"
 KEEP_EVERY_S = 0.2
 """Wall time between two notes of where the robot stands."""
+SILENCE_S, SILENCE_WALL_S = 1.0, 0.05
+"""The robot stops after so long without its controller: in its own time, but never less than so much wall time."""
+TERM_S, TERM_MOST_S = 30.0, 600.0
+"""The lease of a silent controller lasts so long: in wall time, because that is what its program needs to start again;
+and no longer than the protocol allows, in the robot's time."""
 
 
 class Place(msgspec.Struct, frozen=True):
@@ -118,7 +123,8 @@ def _robot(setup: Setup, backend: Backend, pace: float) -> Robot:
         name=setup.robot.name,
         abilities=frozenset(capability.value for capability in backend.capabilities),
         speed=setup.robot.speed,
-        silence=min(5.0, max(1.0, 0.05 * pace)),
+        silence=min(5.0, max(SILENCE_S, SILENCE_WALL_S * pace)),
+        term=min(TERM_MOST_S, TERM_S * max(1.0, pace)),
         site=setup.site.name,
         pace=pace,
         begins=setup.begins.isoformat(),
