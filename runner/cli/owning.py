@@ -21,9 +21,13 @@ from runner.cli.exits import Exit
 if TYPE_CHECKING:
     from runner.host.board import Board
     from runner.journal.outcome import RunOutcome
+    from runner.screen.outlet import Outlet
 
 ABORTING = {signal.SIGINT: "Ctrl-C", signal.SIGTERM: "SIGTERM"}
 """Signals that abort a run in plain lines in an orderly way, and who is named for them in the record."""
+
+ENOUGH_S = 2.0
+"""A reader that takes lines at all has taken them after this."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -95,10 +99,12 @@ def _here(task: Task, service: bool) -> None:
     from runner.host.board import Board
     from runner.host.process import stop_on_request
     from runner.journal.header import person_and_host
+    from runner.screen.outlet import Outlet
     from runner.screen.plain import PlainPrinter
 
     board = Board(person_and_host()[0])
-    printer = PlainPrinter(sys.stdout)
+    outlet = Outlet(sys.stdout)
+    printer = PlainPrinter(outlet)
     if service:
         stop_on_request()
     else:
@@ -109,6 +115,16 @@ def _here(task: Task, service: bool) -> None:
         task.own(board, lambda: printer.show(board.feed(), board.view()))
     finally:
         printer.show(board.feed(), board.view())
+        _let_out(outlet)
+
+
+def _let_out(outlet: Outlet) -> None:
+    """Wait for whoever reads the lines; if that takes long, a signal ends this command, for the run is over."""
+    if outlet.close(ENOUGH_S):
+        return
+    for number in ABORTING:
+        signal.signal(number, signal.SIG_DFL)
+    outlet.close()
 
 
 def _aborting(board: Board, who: str) -> Callable[..., None]:

@@ -7,11 +7,11 @@ that goes away (`| head`) is no reason to stop the robot: the printer falls sile
 
 from __future__ import annotations
 
-import os
 from collections.abc import Iterable
 from typing import TextIO
 
 from runner.host.view import FeedLine, Health, View
+from runner.screen.outlet import Outlet, to_nowhere
 from runner.screen.terminal import clean, to_ascii
 from runner.screen.words import advice_for, amount, ends_about, is_lost, laps, legs_so_far, spell_seconds
 
@@ -20,7 +20,7 @@ class PlainPrinter:
     """Prints feed lines as `HH:MM:SS  text`, and a line of progress where the feed was silent for `every` seconds of
     the run."""
 
-    def __init__(self, stream: TextIO, every: float = 60.0) -> None:
+    def __init__(self, stream: TextIO | Outlet, every: float = 60.0) -> None:
         self._stream = stream
         self._every = every
         self._last = 0.0
@@ -74,17 +74,8 @@ class PlainPrinter:
             self._stream.write(to_ascii(clean(f"{clock}  {text}")) + "\n")
             self._stream.flush()
         except (BrokenPipeError, ValueError):
-            self._fall_silent()
-
-    def _fall_silent(self) -> None:
-        """Let the interpreter's own flush at exit go nowhere, or it would print an error about the closed pipe."""
-        self._gone = True
-        try:
-            nowhere = os.open(os.devnull, os.O_WRONLY)
-            os.dup2(nowhere, self._stream.fileno())
-            os.close(nowhere)
-        except (OSError, ValueError):
-            return
+            self._gone = True
+            to_nowhere(self._stream)
 
 
 def advice_in_words(view: View) -> str:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import fcntl
 import os
 import signal
 import subprocess
@@ -15,8 +16,9 @@ from runner.host.messages import Deed
 from runner.host.remote import UnreachableError, do, look
 from runner.host.view import Health
 from runner.journal.outcome import RunOutcome, outcome_of
-from runner.journal.reader import open_record
+from runner.journal.reader import Status, open_record
 from runner.journal.runs import find_run
+from runner.journal.schema import FILE_NAME
 from tests.screen.test_real_terminal import Terminal
 
 TRUNDLE = Path(sys.executable).parent / "trundle"
@@ -102,3 +104,37 @@ def stop(folder: Path) -> None:
         do(folder, Deed.ABORT)
     except UnreachableError:
         return
+
+
+def test_a_run_in_plain_lines_goes_on_while_nobody_reads_them(tmp_path: Path) -> None:
+    """A pager that waits for a key, or a terminal that was stopped: the pipe is full, the run is not kept waiting."""
+    reading, writing = os.pipe()
+    fcntl.fcntl(writing, fcntl.F_SETPIPE_SZ, 4096)
+    os.write(writing, b"-" * 4096)
+    process = subprocess.Popen(
+        [str(TRUNDLE), "run", "short-errand", "--pace", "max", "--plain"],
+        stdout=writing,
+        env={**os.environ, "TRUNDLE_RUNS": str(tmp_path)},
+    )
+    os.close(writing)
+    try:
+        assert the_run_ends(tmp_path, 60.0) is RunOutcome.ALL_ARRIVED
+        assert process.poll() is None
+        with open(reading, encoding="utf-8") as lines:
+            assert "completed, every leg arrived" in lines.read()
+        assert process.wait(10.0) == 0
+    finally:
+        process.kill()
+        process.wait()
+
+
+def the_run_ends(runs: Path, seconds: float) -> RunOutcome | None:
+    """How the one run in there ended, None where it did not in time."""
+    end = time.monotonic() + seconds
+    while time.monotonic() < end:
+        for file in runs.glob(f"*/{FILE_NAME}"):
+            with open_record(file.parent) as record:
+                if record.status is Status.ENDED:
+                    return outcome_of(record)
+        time.sleep(0.1)
+    return None
