@@ -15,7 +15,7 @@ from random import Random
 
 import pytest
 
-from runner.engine.values import Go, GoalNews
+from runner.engine.values import Ended, Go, GoalNews
 from runner.journal.reader import open_record
 from runner.journal.schema import FILE_NAME
 from tests.faults.line_proxy import Proxy, free_port
@@ -123,3 +123,52 @@ def test_a_mission_survives_ten_cuts_of_five_seconds_and_a_restart_of_each_side(
     assert (code, [*legs, *later]) == direct
     assert sent == ended
     assert len(set(sent)) == len(sent)
+
+
+@pytest.mark.soak
+def test_a_whole_night_over_the_link_ends_as_it_does_directly(tmp_path: Path) -> None:
+    """Seven times as fast as a clock, ten cuts of five seconds of the robot's time, and a restart of each side.
+
+    No faster: the robot must start again before its time says that it was silent for half a minute.
+    """
+    mission, pace = "overnight-endurance", 7.0
+    chance = Random(mission)  # noqa: S311  a test's chance, not a secret
+    code, legs = finished(run(mission, tmp_path / "direct", "--pace", "max"), 600.0)
+    port, runs, keep = free_port(), tmp_path / "runs", tmp_path / "keep"
+    proxy = Proxy(port)
+    linked_legs: list[str] = []
+    with robot(mission, port, pace, keep) as first:
+        process = run(mission, runs, "--robot", f"tcp://127.0.0.1:{proxy.port}")
+        folder = run_folder(runs)
+        cut_now_and_then(proxy, 5, chance, 5.0 / pace, most=20.0)
+        process.send_signal(signal.SIGKILL)
+        linked_legs += finished(process, 60.0)[1]
+        again = subprocess.Popen(
+            [*TRUNDLE, "pick-up", str(folder), "--plain"], stdout=subprocess.PIPE, text=True, env=environment(runs)
+        )
+        time.sleep(30.0)
+        first.kill()
+    with robot(mission, port, pace, keep):
+        cut_now_and_then(proxy, 5, chance, 5.0 / pace, most=600.0)
+        linked, later = finished(again, 7200.0)
+    linked_legs += later
+    proxy.close()
+    sent, ended = account(folder)
+    print(f"exit {linked}, directly {code}; {len(sent)} goals; legs {len(linked_legs)}, directly {len(legs)}")
+    assert linked == code
+    assert sent == ended
+    assert len(set(sent)) == len(sent)
+    assert last_words(folder) == last_words(run_folder(tmp_path / "direct"))
+
+
+def cut_now_and_then(proxy: Proxy, times: int, chance: Random, seconds: float, most: float) -> None:
+    """Cut the line so many times, some seconds of wall time apart."""
+    for number in range(times):
+        time.sleep(chance.uniform(6.0, most))
+        proxy.cut(seconds, breaks=number % 2 == 0)
+
+
+def last_words(folder: Path) -> list[Ended]:
+    """How the mission ended, as the record has it."""
+    with open_record(folder) as record:
+        return [entry.value for entry in record.entries() if isinstance(entry.value, Ended)]
