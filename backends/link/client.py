@@ -25,7 +25,7 @@ from backends.link.duty import stand_of
 from backends.link.keys import public_of, read_public, read_secret
 from backends.link.messages import Charge, Clear, EaseBack, Relocate, Replan, State
 from backends.link.quality import LineQuality
-from backends.link.sockets import Keys, check_line, controller_socket, frame_waits
+from backends.link.sockets import NOW, Keys, check_line, controller_socket, frame_waits, wait_for_frames
 from runner.site.values import Pose
 
 GREETING_S = 5.0
@@ -190,14 +190,15 @@ class LinkBackend:
     # --- reports
 
     def reports(self, until: float) -> Sequence[Report]:
+        ready = False
         while True:
-            self._exchange()
+            self._exchange(ready)
             if found := self.controller.reports():
                 return found
             now = self._clock.now()
             if now >= until:
                 return []
-            self._wait(min(until, self.controller.next_due()) - now)
+            ready = self._wait(min(until, self.controller.next_due()) - now)
 
     def close(self) -> None:
         if self._context.closed:
@@ -217,35 +218,37 @@ class LinkBackend:
     def _pump(self, done: Callable[[], bool], seconds: float) -> bool:
         """Exchange frames until something holds, at most for so many seconds of wall time."""
         deadline = time.monotonic() + seconds
+        ready = False
         while True:
-            self._exchange()
+            self._exchange(ready)
             if done():
                 return True
             left = deadline - time.monotonic()
             if left <= 0.0:
                 return False
-            self._wait(min(left * self._clock.pace, self.controller.next_due() - self._clock.now()))
+            ready = self._wait(min(left * self._clock.pace, self.controller.next_due() - self._clock.now()))
 
-    def _wait(self, seconds: float) -> None:
-        """Wait for a frame, at most so many seconds of our clock."""
+    def _wait(self, seconds: float) -> bool:
+        """Wait for a frame, at most so many seconds of our clock. Whether one is there."""
         wall = max(0.0, seconds) / self._clock.pace
-        if wall > 0.0:
-            self._socket.poll(ceil(wall * 1e3))
+        return bool(wait_for_frames((self._socket,), ceil(wall * 1e3)))
 
-    def _exchange(self) -> None:
-        self._receive()
+    def _exchange(self, ready: bool = False) -> None:
+        self._receive(ready)
         self._send()
 
-    def _receive(self) -> None:
+    def _receive(self, ready: bool) -> None:
+        """Take in what waits; `ready` where a frame is known to."""
         for _ in range(FRAMES_A_TURN):
-            if not frame_waits(self._socket):
+            if not ready and not frame_waits(self._socket):
                 return
-            self.controller.receive(self._socket.recv(zmq.NOBLOCK))
+            ready = False
+            self.controller.receive(self._socket.recv(NOW))
 
     def _send(self) -> None:
         for frame in self.controller.due():
             try:
-                self._socket.send(frame, zmq.NOBLOCK)
+                self._socket.send(frame, NOW)
             except zmq.Again:
                 return  # nobody is there; what matters is sent again
 

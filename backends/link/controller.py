@@ -136,8 +136,8 @@ class Controller:
         self._order(make, action=action)
 
     def order(self, make: Making) -> None:
-        """Send a command that nothing waits for."""
-        self._order(make)
+        """Send a command that nothing waits for, and that has no values of the caller's in it."""
+        self._orders.add(Order(make))
 
     def _order(self, make: Making, goal: int | None = None, action: int | None = None) -> None:
         order = Order(make, goal, action)

@@ -21,7 +21,7 @@ from backends.link.adapter import Adapter
 from backends.link.gate import Gate
 from backends.link.ledger import Kept
 from backends.link.robot_side import RobotSide, Sent
-from backends.link.sockets import Keys, check_line, frame_waits, robot_socket
+from backends.link.sockets import AND_MORE, NOW, Keys, check_line, frame_waits, robot_socket, wait_for_frames
 
 TURN_MS = 10
 """Longest time between two looks at the clock and the adapter."""
@@ -70,47 +70,49 @@ class RobotServer:
         except BaseException:
             self.close()
             raise
+        self._sockets = (self._socket,) if self.gate is None else (self._socket, self.gate.socket)
 
     def run(self, until: Stopped) -> None:
         """Serve until told to stop. Whatever ends it, the robot is stopped."""
-        poller = zmq.Poller()
-        poller.register(self._socket, zmq.POLLIN)
-        if self.gate is not None:
-            poller.register(self.gate.socket, zmq.POLLIN)
         try:
             while not until.is_set():
-                poller.poll(TURN_MS)
-                self.turn()
+                self._turn(wait_for_frames(self._sockets, TURN_MS))
         finally:
             self.side.stop()
             self.close()
 
     def turn(self) -> None:
         """Serve what waits, and look at the clock once."""
-        if self.gate is not None and self.gate.asked:
+        self._turn(wait_for_frames(self._sockets, 0))
+
+    def _turn(self, waiting: list[zmq.Socket[bytes]]) -> None:
+        if self.gate is not None and self.gate.socket in waiting:
             self.gate.turn()
-        for _ in range(FRAMES_A_TURN):
-            if not frame_waits(self._socket):
-                break
+        left = FRAMES_A_TURN if self._socket in waiting else 0
+        while left:
             self._take_frame()
+            left = left - 1 if frame_waits(self._socket) else 0
         self._send(self.side.turn())
         self._keep_what_changed()
 
     def _take_frame(self) -> None:
-        """Serve one message. Whose key it came under is known only to the library's own frames."""
-        if self.gate is None:
-            self._serve(self._socket.recv_multipart(), "")
+        """Serve one message, which is a frame behind the name of the peer. Whose key it came under is known only to the
+        library's own frames."""
+        peer = self._socket.recv(NOW)
+        frame = self._socket.recv(NOW, copy=False)
+        if frame.more:
+            self._throw_away()
             return
-        frames = self._socket.recv_multipart(copy=False)
-        self._serve([frame.bytes for frame in frames], str(frames[-1].get("User-Id")))
-
-    def _serve(self, parts: list[bytes], person: str) -> None:
-        if len(parts) != 2:
-            self.side.counts.malformed += 1
-            return
-        answers = self.side.receive(parts[0], person, parts[1])
+        person = "" if self.gate is None else str(frame.get("User-Id"))
+        answers = self.side.receive(peer, person, frame.bytes)
         self._keep_what_changed()
         self._send(answers)
+
+    def _throw_away(self) -> None:
+        """The rest of a message of more than one frame, which is none of ours."""
+        while self._socket.recv(NOW, copy=False).more:
+            pass
+        self.side.counts.malformed += 1
 
     def _keep_what_changed(self) -> None:
         """Written before an answer is sent: what was promised outlives this process."""
@@ -120,7 +122,8 @@ class RobotServer:
     def _send(self, frames: Sent) -> None:
         for peer, frame in frames:
             try:
-                self._socket.send_multipart((peer, frame), zmq.NOBLOCK)
+                self._socket.send(peer, AND_MORE)
+                self._socket.send(frame, NOW)
             except zmq.ZMQError as error:
                 log.debug("a frame was dropped: %s", error.strerror)
 

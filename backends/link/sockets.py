@@ -4,7 +4,9 @@ from __future__ import annotations
 
 import ipaddress
 import re
+from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import cast
 
 import zmq
 
@@ -15,6 +17,11 @@ FRAMES_QUEUED_MOST = 64
 """Frames a socket holds for a peer that does not take them. More are dropped: what matters is sent again."""
 ADMISSION = "trundle"
 """The ZAP domain; naming one makes a socket refuse everybody where nobody checks keys."""
+
+NOW = int(zmq.NOBLOCK)
+AND_MORE = int(zmq.NOBLOCK | zmq.SNDMORE)
+"""Flags as plain numbers: to put two of the library's together costs as much as to send a frame."""
+_INCOMING = int(zmq.POLLIN)
 
 _TCP = re.compile(r"tcp://(?P<host>\[[0-9A-Fa-f:.]+\]|[0-9A-Za-z.-]+):(?P<port>\d{1,5})\Z")
 IPC_PATH_MOST = 100
@@ -101,7 +108,13 @@ def robot_socket(context: zmq.Context[zmq.Socket[bytes]], address: str, keys: Ke
 
 def frame_waits(socket: zmq.Socket[bytes]) -> bool:
     """Whether a frame can be taken without waiting. Cheaper than trying: an exception costs more than a frame."""
-    return bool(int(socket.getsockopt(zmq.EVENTS)) & zmq.POLLIN)
+    return bool(zmq.zmq_poll([(socket, _INCOMING)], 0))
+
+
+def wait_for_frames(sockets: Sequence[zmq.Socket[bytes]], milliseconds: int) -> list[zmq.Socket[bytes]]:
+    """Those of the sockets that have a frame, as soon as one has; none where that took too long."""
+    found = zmq.zmq_poll([(socket, _INCOMING) for socket in sockets], milliseconds)
+    return [cast("zmq.Socket[bytes]", socket) for socket, _ in found]
 
 
 def _bound(socket: zmq.Socket[bytes]) -> None:
