@@ -2,8 +2,9 @@
 
 Whatever the line does, it keeps the rules of `backends.contract`: each goal that was given ends once or is replaced,
 each action is answered once, and stamps never fall. What the robot's `state` says is the truth; news is the difference
-between two states, so a lost message loses nothing. When the robot has stopped because it did not hear from here, or
-has forgotten its goal in a restart, the same goal is sent again under the same id.
+between two states, so a lost message loses nothing. When the robot has stopped because it did not hear from here, the
+same goal is sent again under the same id. When its program was started again and forgot a goal that it may have had,
+that goal has failed: it may have been driven to its end, and no goal is driven twice.
 """
 
 from __future__ import annotations
@@ -19,6 +20,7 @@ from backends.link.messages import (
     VERSION,
     About,
     Beat,
+    Command,
     Done,
     Fault,
     FromRobot,
@@ -51,6 +53,7 @@ LOSSES_MOST, LOSSES_WITHIN_S = 4, 20.0
 
 HALTED = "The robot was halted."
 RESTARTED = "The robot's program was started again."
+FORGOTTEN = "The robot's program was started again and does not know its goal any more."
 
 
 class Controller:
@@ -87,6 +90,8 @@ class Controller:
         self._newest_goal = -1
         self._goal: Goal | None = None
         self._status: str | None = None
+        self._goal_boot = ""
+        """The boot of the robot to which the goal was sent first; empty before that."""
         self._stopped_goal: int | None = None
         self._actions: dict[int, bool] = {}
         """Open actions, and whether a halt came after them."""
@@ -119,7 +124,7 @@ class Controller:
             return
         self._newest_goal = goal.id
         self._orders.drop_goals()
-        self._goal, self._status = goal, None
+        self._goal, self._status, self._goal_boot = goal, None, ""
         self._send_goal(goal)
 
     def _send_goal(self, goal: Goal) -> None:
@@ -185,12 +190,21 @@ class Controller:
                 self._next_ask = now + ASK_S
                 messages.append(self._asking())
         else:
-            command = self._orders.due(self._lease.lease, self._heard, now)
+            command = self._command_due(self._lease, now)
             if command is not None:
                 messages.append(command)
             if now >= self._next_beat and not self._orders.halting:  # a halt that is lost must end in silence
                 messages.append(self._beat(self._lease, now))
         return [encode(message) for message in messages]
+
+    def _command_due(self, lease: Granted, now: float) -> Command | None:
+        """The command to send now. After a start of the robot's program only a halt goes before its first state."""
+        if self._state is None and not self._orders.halting:
+            return None
+        command = self._orders.due(lease.lease, self._heard, now)
+        if isinstance(command, Go) and not self._goal_boot:
+            self._goal_boot = lease.boot
+        return command
 
     def _asking(self) -> Hello | Take:
         if self.about is None:
@@ -209,7 +223,7 @@ class Controller:
         order = self._orders.first
         if order is not None and self._orders.halting:
             return order.next_send
-        return self._next_beat if order is None else min(self._next_beat, order.next_send)
+        return self._next_beat if order is None or self._state is None else min(self._next_beat, order.next_send)
 
     # --- frames in
 
@@ -334,10 +348,14 @@ class Controller:
             return
         if told is not None and told.id == goal.id:
             self._goal_told(told)
-        if self._goal is None or self._orders.waits_for(goal.id) or self._stopped_goal == goal.id:
+        if self._goal is None or self._stopped_goal == goal.id:
             return
-        forgotten = told is None or told.id < goal.id
-        if forgotten or (state.suspended and told is not None and told.id == goal.id):
+        unknown = told is None or told.id < goal.id
+        if unknown and self._goal_boot not in ("", state.boot):
+            self._orders.drop_goals()
+            stamp = self._sightings.stamp_of(state.stamp, self._clock())
+            self._end_goal(GoalReport(stamp, goal.id, GoalStatus.FAILED, FORGOTTEN))
+        elif not self._orders.waits_for(goal.id) and (unknown or state.suspended):
             self._send_goal(goal)
 
     def _goal_told(self, told: GoalState) -> None:

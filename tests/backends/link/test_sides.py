@@ -228,16 +228,36 @@ def test_a_controller_that_was_started_again_takes_its_lease_over_and_goes_on_wi
     assert rig.point.driven == pytest.approx(3.0)
 
 
-@pytest.mark.parametrize("keeps", [True, False])
-def test_a_robot_that_was_started_again_drives_the_same_goal_on(keeps: bool) -> None:
+def test_a_robot_that_was_started_again_drives_the_same_goal_on_if_it_kept_it() -> None:
     rig = Rig()
     ready(rig)
     rig.controllers[b"a"].go(goal(1, x=3.0))
     rig.run(2.0)
-    rig.restart_robot(rig.side.worth_keeping() if keeps else None)
+    rig.restart_robot(rig.side.worth_keeping())
     assert rig.run_until_ended(1).status is GoalStatus.ARRIVED
     assert rig.point.pose.x == pytest.approx(3.0)
     assert len(rig.goal_ends()) == 1
+
+
+@pytest.mark.parametrize("x", [0.2, 3.0])
+def test_a_goal_that_a_robot_forgot_when_it_was_started_again_has_failed_and_is_not_driven_again(x: float) -> None:
+    """Nobody knows any more whether it had ended: the nearer one had, and the word of it was lost."""
+    rig = Rig()
+    ready(rig)
+    rig.controllers[b"a"].go(goal(1, x=x))
+    rig.to_controllers.badness = Badness(drop=1.0)
+    rig.run(0.7)
+    rig.restart_robot()
+    rig.to_controllers.badness = Badness()
+    end = rig.run_until_ended(1)
+    assert (end.status, end.reason) == (
+        GoalStatus.FAILED,
+        "The robot's program was started again and does not know its goal any more.",
+    )
+    rig.run(3.0)
+    assert len(rig.point.drives) == 1
+    rig.controllers[b"a"].go(goal(2, x=x + 0.1))
+    assert rig.run_until_ended(2).status is GoalStatus.ARRIVED
 
 
 def test_a_goal_that_had_ended_before_a_restart_is_not_driven_again() -> None:
