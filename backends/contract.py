@@ -237,3 +237,25 @@ class TellsTruth(Protocol):
 
     def truths(self) -> Sequence[Truth]:
         """What became true since the last call: each change of the cause, and about once a second under way."""
+
+
+@dataclass(frozen=True, slots=True)
+class LineQuality:
+    """How good the line to a robot is. `round_trip` is the median of the latest, `round_trip_worst` the longest of
+    them, seconds, None before the first answer. `offset` is the robot's clock minus ours, seconds, known to within
+    `offset_error`, None before the first answer. `answered` is the share of the latest beats that came back, 0 to 1.
+    """
+
+    round_trip: float | None
+    round_trip_worst: float | None
+    offset: float
+    offset_error: float | None
+    answered: float
+
+
+@runtime_checkable
+class OnALine(Protocol):
+    """What a backend may offer beside `Backend`: a robot on a socket has a line that can be bad."""
+
+    @property
+    def quality(self) -> LineQuality: ...

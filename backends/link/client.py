@@ -19,12 +19,11 @@ from typing import NoReturn
 
 import zmq
 
-from backends.contract import BackendError, Capability, Clock, Goal, Line, Report, Setup
+from backends.contract import BackendError, Capability, Clock, Goal, Line, LineQuality, Report, Setup
 from backends.link.controller import Controller
 from backends.link.duty import stand_of
 from backends.link.keys import public_of, read_public, read_secret
 from backends.link.messages import Charge, Clear, EaseBack, Relocate, Replan, State
-from backends.link.quality import LineQuality
 from backends.link.sockets import NOW, Keys, check_line, controller_socket, frame_waits, wait_for_frames
 from runner.site.values import Pose
 

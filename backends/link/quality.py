@@ -8,32 +8,12 @@ synchronization"; Mills 1991, "Internet time synchronization").
 from __future__ import annotations
 
 from collections import deque
-from dataclasses import dataclass
 from statistics import median
+
+from backends.contract import LineQuality
 
 EXCHANGES_KEPT = 32
 BEATS_KEPT = 64
-
-
-@dataclass(frozen=True, slots=True)
-class LineQuality:
-    """`round_trip` is the median, seconds, None before the first echo; `offset` is the robot's clock minus ours,
-    seconds, known to within `offset_error`; `answered` is the share of the latest beats that came back, 0 to 1."""
-
-    round_trip: float | None
-    round_trip_worst: float | None
-    offset: float
-    offset_error: float
-    answered: float
-
-    def __str__(self) -> str:
-        if self.round_trip is None or self.round_trip_worst is None:
-            return "no answer yet"
-        return (
-            f"round trip {self.round_trip * 1e3:.1f} ms, at worst {self.round_trip_worst * 1e3:.1f} ms; "
-            f"{self.answered:.0%} of beats answered; clocks {self.offset:+.3f} s apart, "
-            f"known to {self.offset_error * 1e3:.1f} ms"
-        )
 
 
 class Line:
@@ -73,6 +53,6 @@ class Line:
         old = [sent for sent in self._beats if sent in self._answered or now - sent > grace]
         answered = sum(sent in self._answered for sent in old) / len(old) if old else 1.0
         if not self._exchanges:
-            return LineQuality(None, None, self.offset, float("inf"), answered)
+            return LineQuality(None, None, self.offset, None, answered)
         trips = [trip for trip, _ in self._exchanges]
         return LineQuality(median(trips), max(trips), self.offset, min(trips) / 2.0, answered)

@@ -9,6 +9,7 @@ from __future__ import annotations
 from dataclasses import dataclass
 from enum import Enum
 
+from backends.contract import LineQuality
 from runner.site.values import Point, Pose
 
 
@@ -90,5 +91,7 @@ class View:
     far. A stamp."""
     ends_by: float | None = None
     """The stamp at which the mission is ended wherever it stands."""
+    line: LineQuality | None = None
+    """How good the line to the robot is, where there is one."""
     outcome: str | None = None
     """Set when the run has ended: how, in words."""

@@ -7,7 +7,7 @@ from collections.abc import Iterable
 from runner.host.view import FeedLine, Health, View
 from runner.screen.ink import HEALTH_INK, Glyphs, Ink, Row, both_ends, faded, row_width, wrap
 from runner.screen.showing import Showing
-from runner.screen.words import BROKEN_OFF, advice_for, amount, ends_about, legs_so_far, spell_seconds
+from runner.screen.words import BROKEN_OFF, advice_for, amount, ends_about, legs_so_far, line_so_far, spell_seconds
 
 _SPACED_FROM = 72
 """Columns from which the word of health is spaced out to be read from farther away."""
@@ -90,14 +90,18 @@ def _advice(view: View, showing: Showing, glyphs: Glyphs) -> str:
 def figures(view: View, showing: Showing, width: int, glyphs: Glyphs) -> Row:
     """As many figures as fit, the most important first, and last the name of the run."""
     moves = abs(view.speed) > _MOVES_MPS
+    quick, lost, apart = line_so_far(view)
     parts = [
         legs_so_far(view),
         f"moved at {abs(view.speed):.1f} m/s" if view.outcome is not None and moves else "",
         ends_about(view),
         f"place known to {view.spread:.1f} m" if view.spread is not None and view.spread >= _UNSURE_M else "",
+        lost,
         f"battery {view.battery * 100:.0f} %" if view.battery is not None else "",
+        quick,
         f"run {spell_seconds(view.stamp)}",
         f"{abs(view.speed):.1f} m/s" if view.pose is not None and view.outcome is None else "",
+        apart,
     ]
     parts = [part for part in parts if part]
     while len(parts) > 1 and len("   ".join(parts)) + 1 > width:

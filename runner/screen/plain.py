@@ -13,7 +13,7 @@ from typing import TextIO
 from runner.host.view import FeedLine, Health, View
 from runner.screen.outlet import Outlet, to_nowhere
 from runner.screen.terminal import clean, to_ascii
-from runner.screen.words import advice_for, amount, ends_about, is_lost, laps, legs_so_far, spell_seconds
+from runner.screen.words import advice_for, amount, ends_about, is_lost, laps, legs_so_far, line_so_far, spell_seconds
 
 
 class PlainPrinter:
@@ -93,5 +93,5 @@ def progress(view: View) -> str:
         parts.append(f"leg {spell_seconds(view.leg_seconds)}{limit}")
     if view.battery is not None:
         parts.append(f"battery {view.battery * 100:.0f} %")
-    told = [laps(view), legs_so_far(view), ends_about(view)]
+    told = [laps(view), legs_so_far(view), ends_about(view), ", ".join(part for part in line_so_far(view) if part)]
     return "; ".join([*parts, *(part for part in told if part)])

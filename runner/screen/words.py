@@ -12,6 +12,8 @@ OLD_AFTER_S = 3.0
 OLD_AT_FIRST_S = 15.0
 """The same before the first view: the first run after an installation compiles."""
 
+_ALL_ANSWERED = 0.995
+
 _NEXT_FOR_YOU: dict[Health, str] = {
     Health.STARTING: "nothing for you to do",
     Health.MOVING: "nothing for you to do",
@@ -70,6 +72,25 @@ def ends_about(view: View) -> str:
     if until is not None and (by is None or until < by):
         return f"repeats until about {_clock_at(view, until)}"
     return f"ends by {_clock_at(view, by)}" if by is not None else ""
+
+
+def line_so_far(view: View) -> tuple[str, str, str]:
+    """The line to the robot: how quick, how much of it is lost, and how far apart the clocks are; empty where nothing
+    is to be said."""
+    line = view.line
+    if line is None or view.outcome is not None:
+        return "", "", ""
+    if line.round_trip is None or line.round_trip_worst is None:
+        quick = "line: no answer yet"
+    else:
+        quick = f"line {_milliseconds(line.round_trip)}, at worst {_milliseconds(line.round_trip_worst)}"
+    lost = f"{100.0 * (1.0 - line.answered):.0f} % of beats lost" if line.answered < _ALL_ANSWERED else ""
+    apart = f"clocks {line.offset:+.3f} s apart" if line.offset_error is not None else ""
+    return quick, lost, apart
+
+
+def _milliseconds(seconds: float) -> str:
+    return f"{seconds * 1e3:.1f} ms" if seconds < 0.00995 else f"{seconds * 1e3:.0f} ms"
 
 
 def laps(view: View) -> str:

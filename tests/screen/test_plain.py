@@ -7,6 +7,7 @@ import subprocess
 import sys
 from dataclasses import replace
 
+from backends.contract import LineQuality
 from runner.host.view import FeedLine, Weight
 from runner.screen.plain import PlainPrinter
 from tests.screen.scripted import ENDED, FEED, MOVING, NEEDS_YOU, TROUBLE, driving
@@ -47,6 +48,15 @@ def test_progress_is_told_where_the_feed_was_silent_for_a_minute_of_the_run() ->
     assert lines[0] == (
         "03:12:10  moving: driving to laboratory; 24 m to laboratory; leg 0:10 of 4:00; battery 83 %; "
         "lap 2 of 8; 9 legs arrived, 1 incident; repeats until about 05:17"
+    )
+
+
+def test_progress_tells_of_the_line_to_a_robot_that_has_one() -> None:
+    stream = io.StringIO()
+    line = LineQuality(0.0041, 0.312, -2.5, 0.002, 0.9)
+    PlainPrinter(stream, every=1.0).show([], replace(MOVING, line=line, stamp=1000.0))
+    assert (
+        stream.getvalue().rstrip().endswith("; line 4.1 ms, at worst 312 ms, 10 % of beats lost, clocks -2.500 s apart")
     )
 
 

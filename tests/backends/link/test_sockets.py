@@ -15,7 +15,7 @@ from tempfile import TemporaryDirectory
 
 import pytest
 
-from backends.contract import BackendError, Capability, Goal, GoalReport, GoalStatus, Line, Setup
+from backends.contract import BackendError, Capability, Goal, GoalReport, GoalStatus, Line, OnALine, Setup
 from backends.link.adapter import Robot
 from backends.link.client import LinkBackend
 from backends.link.keys import make_pair, public_of, read_allowed, read_public, read_secret
@@ -76,7 +76,12 @@ def test_a_goal_is_driven_over_a_keyed_line_and_the_backend_knows_the_robots_abi
             news = backend.reports(backend.clock.now() + 0.1)
             ends = [report for report in news if isinstance(report, GoalReport) and report.status is GoalStatus.ARRIVED]
         assert ends
-        assert "round trip" in str(backend.quality)
+        quality = backend.quality
+        assert isinstance(backend, OnALine)
+        assert quality.round_trip is not None
+        assert quality.offset_error is not None
+        assert 0.0 < quality.offset_error <= quality.round_trip / 2.0 + 1e-9
+        assert quality.answered == 1.0
         backend.close()
         backend.close()
     assert len(point.drives) == 1
