@@ -154,12 +154,13 @@ class Controller:
             self._orders.add(order)
 
     def halt(self) -> None:
-        """Stop, before all else. What was not sent yet ends here; what was, ends when the robot says so."""
+        """Stop, before all else. What was not sent yet ends here, unless the robot may have it from a program before
+        this one, whose state is not known yet; the rest ends when the robot says so."""
         self._halt_answered = None
         self._actions = dict.fromkeys(self._actions, True)
         self._stopped_goal = None if self._goal is None else self._goal.id
         for order in self._orders.halt(Order(lambda lease, number, _: Halt(lease, number))):
-            if order.number is None:
+            if order.number is None and (order.goal is None or self._state is not None):
                 self._refused(order, HALTED, GoalStatus.HALTED)
 
     def leave(self) -> None:
@@ -353,8 +354,7 @@ class Controller:
         unknown = told is None or told.id < goal.id
         if unknown and self._goal_boot not in ("", state.boot):
             self._orders.drop_goals()
-            stamp = self._sightings.stamp_of(state.stamp, self._clock())
-            self._end_goal(GoalReport(stamp, goal.id, GoalStatus.FAILED, FORGOTTEN))
+            self._end_goal(GoalReport(self._sightings.stamp_now(self._clock()), goal.id, GoalStatus.FAILED, FORGOTTEN))
         elif not self._orders.waits_for(goal.id) and (unknown or state.suspended):
             self._send_goal(goal)
 

@@ -9,7 +9,7 @@ import re
 import subprocess
 import sys
 import time
-from collections.abc import Iterator
+from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
@@ -35,14 +35,34 @@ def changed(*changes: tuple[str, str]) -> str:
 @contextmanager
 def adapter(text: str, folder: Path) -> Iterator[str]:
     """The program running in a process of its own; its address."""
+    with restartable(text, folder) as (address, _):
+        yield address
+
+
+@contextmanager
+def restartable(text: str, folder: Path) -> Iterator[tuple[str, Callable[[], None]]]:
+    """The same, and what kills the program and starts it again."""
     folder.mkdir(parents=True, exist_ok=True)
     (folder / "adapter.py").write_text(text, encoding="utf-8")
     address = f"ipc://{folder}/socket"
-    process = subprocess.Popen([sys.executable, str(folder / "adapter.py"), address])
-    try:
+    processes: list[subprocess.Popen[bytes]] = []
+
+    def start() -> None:
+        stop(processes)
+        (folder / "socket").unlink(missing_ok=True)
+        processes.append(subprocess.Popen([sys.executable, str(folder / "adapter.py"), address]))
         wait_for(folder / "socket")
-        yield address
+
+    try:
+        start()
+        yield address, start
     finally:
+        stop(processes)
+
+
+def stop(processes: list[subprocess.Popen[bytes]]) -> None:
+    """Kill those that still run."""
+    for process in processes:
         process.kill()
         process.wait()
 

@@ -15,7 +15,7 @@ from backends.contract import Line
 from backends.link.messages import Hello, encode, read_by_controller, read_by_robot
 from backends.link.trial.requirements import REQUIREMENTS
 from backends.link.trial.running import Result, Trial
-from tests.backends.link.bare import PROTOCOL, adapter, changed
+from tests.backends.link.bare import PROTOCOL, adapter, changed, restartable
 
 COMMAND = "from runner.cli import main; raise SystemExit(main())"
 QUICK = (("SILENCE, TERM, SPEED = 1.0, 30.0, 1.0", "SILENCE, TERM, SPEED = 0.5, 5.0, 2.0"),)
@@ -103,6 +103,25 @@ def test_an_adapter_broken_in_one_way_fails_on_the_requirement_for_it(
     failed = {result.requirement: result.why for result in trials[name] if result.verdict == "fail"}
     assert list(failed) == [BROKEN[name][0]]
     assert all(failed.values()), "each failure says why"
+
+
+@pytest.mark.parametrize(
+    ("change", "verdict"),
+    [
+        ((), "pass"),
+        ((("secrets.token_hex(16)\nENDS", '"b" * 32\nENDS'),), "fail"),
+    ],
+    ids=["sound", "the same boot each time"],
+)
+def test_a_restart_is_tried_where_somebody_does_it(change: tuple[tuple[str, str], ...], verdict: str) -> None:
+    with TemporaryDirectory(prefix="trl") as name, restartable(changed(*QUICK, *change), Path(name)) as running:
+        address, restart = running
+        trial = Trial.begin(Line(address))
+        try:
+            results = list(trial.run(None, restart, only=(28,)))
+        finally:
+            trial.close()
+    assert [(result.requirement, result.verdict) for result in results] == [("R28", verdict)]
 
 
 def test_the_page_lists_the_requirements_in_the_words_of_the_trial() -> None:
