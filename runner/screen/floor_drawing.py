@@ -117,10 +117,21 @@ class FloorDrawing:
         return {spot: (char, Ink.OLD) for spot, (char, _) in cells.items()} if old else cells
 
     def _mark(self, cells: dict[Spot, Drawn], points: Iterable[Point], mark: str, ink: Ink) -> None:
-        """One mark a point; only where it was stuck is worth a letter of a place's name."""
+        """One mark a point, beside a place's name rather than in it; what is sensed there stays behind the name."""
         for spot in filter(None, map(self._scale.spot, points)):
-            if ink is Ink.STUCK or self.still[spot[0]][spot[1]][1] not in _NAMED:
+            if not self._in_name(spot):
                 cells[spot] = (mark, ink)
+            elif ink is Ink.STUCK:
+                cells[self._beside_name(spot)] = (mark, ink)
+
+    def _in_name(self, spot: Spot) -> bool:
+        return self.still[spot[0]][spot[1]][1] in _NAMED
+
+    def _beside_name(self, spot: Spot) -> Spot:
+        """The cell just below or above, if the name leaves one; where a robot was stuck is never left out."""
+        row, column = spot
+        beside = [(row + 1, column), (row - 1, column)]
+        return next((cell for cell in beside if 0 <= cell[0] < self._scale.rows and not self._in_name(cell)), spot)
 
     def _at_rest(self, wall: int, both: int) -> Drawn:
         if wall:
@@ -140,7 +151,7 @@ class FloorDrawing:
             if 0 <= spot[0] < self._scale.rows and 0 <= spot[1] < self._scale.columns:
                 added[spot] = added.get(spot, 0) | int(_DOT_BITS[row % 4, column % 2])
         for spot, bits in added.items():
-            if self.still[spot[0]][spot[1]][1] not in _NAMED:
+            if not self._in_name(spot):
                 cells[spot] = (self._pattern(bits | int(self._walls[spot])) if self._glyphs.dots else plain, ink)
 
     def _draw_doors(self) -> None:

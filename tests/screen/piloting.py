@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 import asyncio
+import string
 import time
 from collections.abc import Awaitable, Callable
 
+from rich.style import Style
 from textual.pilot import Pilot
 
 from runner.screen.ink import DOTTED, Glyphs
@@ -14,6 +16,7 @@ from runner.screen.watch import WatchApp
 from tests.screen.scripted import showing
 
 Step = Callable[[Pilot[None]], Awaitable[None]]
+Look = Callable[[WatchApp], str]
 
 
 def shown(app: WatchApp) -> str:
@@ -22,12 +25,39 @@ def shown(app: WatchApp) -> str:
     return "\n".join(strip.text.rstrip() for strip in strips) + "\n"
 
 
+def painted(app: WatchApp) -> str:
+    """What is on the screen, and in which ink: under each line a letter for each cell, blank for the plainest, and at
+    the end what the letters stand for, in the order in which they come."""
+    letters: dict[str, str] = {}
+    lines = []
+    for strip in app.screen._compositor.render_strips():
+        inks = ""
+        for segment in strip:
+            ink = _ink(segment.style)
+            letter = letters.setdefault(ink, string.ascii_letters[len(letters)]) if ink else " "
+            inks += letter * segment.cell_length
+        lines += [f"|{strip.text}|", f" {inks}".rstrip()]
+    legend = [f"{letter}: {ink}" for ink, letter in letters.items()]
+    return "\n".join([*(line for line in lines if line), *legend]) + "\n"
+
+
+def _ink(style: Style | None) -> str:
+    """A style in words: colors and what stresses; empty for the terminal's own."""
+    if style is None:
+        return ""
+    grounds = [("", style.color), ("on ", style.bgcolor)]
+    colors = [f"{on}{color.name}" for on, color in grounds if color is not None and not color.is_default]
+    stress = [name for name in ("bold", "dim", "italic", "underline", "reverse") if getattr(style, name)]
+    return " ".join([*colors, *stress])
+
+
 def watched(
     source: Source,
     step: Step | None = None,
     size: tuple[int, int] = (80, 24),
     glyphs: Glyphs = DOTTED,
     read_only: bool = False,
+    look: Look = shown,
 ) -> tuple[str, bool]:
     """Show the source, take the step, and return what was on the screen in the end, and whether it still runs."""
 
@@ -37,7 +67,8 @@ def watched(
             await until(pilot, glyphs.rule * 2)
             if step is not None:
                 await step(pilot)
-            return await settled(pilot), app._exit is False
+            await settled(pilot)
+            return look(app), app._exit is False
 
     return asyncio.run(run())
 

@@ -18,13 +18,14 @@ from textual.pilot import Pilot
 from runner.host.view import View
 from runner.screen.ink import ASCII, DOTTED, Glyphs
 from runner.screen.watch import WatchApp
-from tests.screen.piloting import pressing, settled, until, watched
+from tests.screen.piloting import painted, pressing, settled, until, watched
 from tests.screen.scripted import ENDED, HELD, MOVING, Replay, driving, scene, showing
 
 GOLDEN = Path(__file__).parent / "golden"
 PICTURES = Path(__file__).parents[2] / "runner" / "screen" / "pictures"
 APPROVED = ("moving", "recovering", "held", "needs-you", "lost", "ended")
-LOOKS = {"dots": DOTTED, "ascii": ASCII}
+LOOKS = ("color", "plain", "ascii")
+COLORS = ("red", "green", "yellow", "blue", "magenta", "cyan", "white", "black")
 RULES = re.compile(r"\.r(\d+) \{ ([^}]*) \}")
 
 
@@ -44,23 +45,36 @@ def _svg(name: str, size: tuple[int, int], glyphs: Glyphs = DOTTED) -> str:
 @pytest.mark.parametrize("look", LOOKS)
 @pytest.mark.parametrize(("columns", "rows"), [(80, 24), (120, 40), (60, 20)])
 @pytest.mark.parametrize("name", APPROVED)
-def test_the_screen_looks_as_it_was_approved(name: str, columns: int, rows: int, look: str) -> None:
-    text, _ = watched(scene(name), size=(columns, rows), glyphs=LOOKS[look])
+def test_the_screen_looks_as_it_was_approved(
+    name: str, columns: int, rows: int, look: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    if look != "color":
+        monkeypatch.setenv("NO_COLOR", "1")
+    glyphs = ASCII if look == "ascii" else DOTTED
+    picture, _ = watched(scene(name), size=(columns, rows), glyphs=glyphs, look=painted)
     path = GOLDEN / f"{name}-{columns}x{rows}-{look}.txt"
     if os.environ.get("TRUNDLE_WRITE_GOLDEN"):
-        path.write_text(text, encoding="utf-8")
-    assert text == path.read_text(encoding="utf-8")
-    assert look == "dots" or text.isascii()
+        path.write_text(picture, encoding="utf-8")
+    assert picture == path.read_text(encoding="utf-8")
+    assert look != "ascii" or picture.isascii()
+    legend = [line for line in picture.splitlines() if line[1:3] == ": "]
+    colored = any(word in COLORS for line in legend for word in line.split())
+    assert colored == (look == "color") or (name == "lost" and not colored)
 
 
 @pytest.mark.parametrize("name", APPROVED)
-def test_without_color_the_screen_says_the_same_and_has_no_color(name: str, monkeypatch: pytest.MonkeyPatch) -> None:
+@pytest.mark.parametrize("size", ["80x24", "120x40", "60x20"])
+def test_without_color_the_screen_says_the_same(name: str, size: str) -> None:
+    colored, plain = ((GOLDEN / f"{name}-{size}-{look}.txt").read_text("utf-8") for look in ("color", "plain"))
+    said = [[line for line in picture.splitlines() if line.startswith("|")] for picture in (colored, plain)]
+    assert said[0] == said[1]
+
+
+@pytest.mark.parametrize("name", APPROVED)
+def test_without_color_a_picture_of_the_screen_is_gray(name: str, monkeypatch: pytest.MonkeyPatch) -> None:
     colored = _svg(name, (80, 24))
     monkeypatch.setenv("NO_COLOR", "1")
-    plain = _svg(name, (80, 24))
-    text, _ = watched(scene(name))
-    assert text == (GOLDEN / f"{name}-80x24-dots.txt").read_text(encoding="utf-8")
-    assert all(map(_is_gray, _fills(plain)))
+    assert all(map(_is_gray, _fills(_svg(name, (80, 24)))))
     assert name == "lost" or not all(map(_is_gray, _fills(colored)))
 
 
