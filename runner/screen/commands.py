@@ -41,6 +41,8 @@ COMMANDS = (
     Command("leave", "q", "q", "leave", "leave; the run goes on by itself"),
 )
 BY_NAME = {command.name: command for command in COMMANDS}
+BY_KEY = {command.key: command.name for command in COMMANDS} | {"equals_sign": "closer"}
+"""The key with the plus on it will do without shift."""
 
 
 def means_something(command: Command, view: View | None, read_only: bool) -> bool:

@@ -142,6 +142,11 @@ class FloorPanel(Horizontal):
             for part in self.query(Slice):
                 part.redraw(changed)
 
+    def paint_anew(self) -> None:
+        """Draw everything anew, because it was hidden: of what changes meanwhile, nothing is drawn."""
+        for part in self.query(Slice):
+            part.refresh()
+
     def _changed(self, still: list[list[Drawn]], moving: dict[Spot, Drawn]) -> list[Spot]:
         before = self._moving
         changed = [spot for spot in before.keys() | moving.keys() if before.get(spot) != moving.get(spot)]

@@ -14,6 +14,7 @@ _CLOSEST = 40.0
 """Dots a meter. Closer, a corridor is wider than a screen."""
 _CALM = 0.3
 """The share of the picture on each side of its middle in which the robot moves before the picture does."""
+ARROWS = {"left": (-1, 0), "right": (1, 0), "up": (0, 1), "down": (0, -1)}
 _PAN = 0.25
 """The share of the picture that one key moves it by."""
 

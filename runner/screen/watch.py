@@ -24,7 +24,7 @@ from runner.host.messages import Deed
 from runner.host.view import FeedLine, View
 from runner.screen import pages, sight
 from runner.screen.arrangement import HEADER_ROWS, Arrangement, arrange
-from runner.screen.commands import BY_NAME, COMMANDS, found, means_something
+from runner.screen.commands import BY_KEY, BY_NAME, COMMANDS, found, means_something
 from runner.screen.desk import Desk
 from runner.screen.floor_drawing import FloorDrawing
 from runner.screen.footer import Mode, answers, feed, key_at, keys, rule
@@ -41,8 +41,6 @@ from runner.screen.words import is_lost, seconds_of
 
 PULL_S = 0.25
 FEED_KEPT = 500
-_KEYS = {command.key: command.name for command in COMMANDS} | {"equals_sign": "closer"}
-_ARROWS = {"left": (-1, 0), "right": (1, 0), "up": (0, 1), "down": (0, -1)}
 _FOLLOWED_FROM = 2  # steps closer than the whole floor, from which it is worth going along
 
 
@@ -229,6 +227,8 @@ class WatchApp(App[None]):
     def _turn_to(self, mode: Mode) -> None:
         self._mode = mode
         page = mode in (Mode.READING, Mode.CHOOSING)
+        if self._page.display and not page:
+            self._floor.paint_anew()
         self._page.display, self._body.display = page, not page
         self._show()
 
@@ -249,10 +249,10 @@ class WatchApp(App[None]):
                 self._key_while_watching(event.key)
 
     def _key_while_watching(self, key: str) -> None:
-        if key in _ARROWS:
+        if key in sight.ARROWS:
             self._move(key)
-        elif key in _KEYS:
-            self._carry_out(_KEYS[key])
+        elif key in BY_KEY:
+            self._carry_out(BY_KEY[key])
 
     def _key_while_aborting(self, key: str) -> None:
         if key == "y":
@@ -373,7 +373,7 @@ class WatchApp(App[None]):
     def _move(self, key: str) -> None:
         if self._sight.level == 0:
             self._say("the whole floor is in sight: + shows it from closer")
-        self._look(sight.moved(self._sight, self._drawing.scale, *_ARROWS[key]))
+        self._look(sight.moved(self._sight, self._drawing.scale, *sight.ARROWS[key]))
 
     def _switch_mouse(self) -> None:
         """The driver's own switch. Where it has none, the mouse stays with the terminal."""

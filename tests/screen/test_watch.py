@@ -116,6 +116,22 @@ def test_the_robot_moves_and_what_it_left_is_restored() -> None:
     assert differs <= {chr(0x2800 + bits) for bits in range(256)} | {DOTTED.before}
 
 
+def test_a_floor_that_was_hidden_by_the_help_shows_what_is_so_now() -> None:
+    source = Replay([driving()[20]])
+
+    async def step(pilot: Pilot[None]) -> None:
+        await until(pilot, driving()[20].clock)
+        await pilot.press("question_mark")
+        source.views = [MOVING]
+        await until(pilot, MOVING.clock)
+        await pilot.press("escape")
+        await until(pilot, "lift◦")
+
+    text, _ = watched(source, step)
+    robots = [char for line in text.splitlines()[3:18] for char in line[:56] if char in DOTTED.heading]
+    assert robots == ["→"]
+
+
 def test_a_new_size_is_filled_at_once() -> None:
     async def step(pilot: Pilot[None]) -> None:
         await pilot.resize_terminal(40, 12)
