@@ -13,6 +13,9 @@ if TYPE_CHECKING:
     from runner.journal.reader import Record
     from runner.site.values import Point
 
+ROWS_MOST = 3000
+"""Rows of the track in which the way of the last 100 m is looked for: ten minutes of driving, and read in no time."""
+
 
 def add_parser(subparsers: argparse._SubParsersAction[argparse.ArgumentParser]) -> None:
     parser = subparsers.add_parser(
@@ -62,10 +65,11 @@ def attach(folder: Path, plain: bool = False, read_only: bool = False) -> int:
             from runner.cli.owning import say_outcome
 
             return say_outcome(folder)
-        plan, machine, troubles = plan_of(record), machine_of(record), _troubles(record)
+        plan, machine = plan_of(record), machine_of(record)
+        before = _troubles(record), tuple(record.newest_positions(ROWS_MOST))
     setup, name = plan.setup, folder.name
     hints = f"trundle report {name}", f"trundle pick-up {name}"
-    showing = Showing(plan.mission, name, setup.site, setup.robot, machine.steps, *hints, troubles)
+    showing = Showing(plan.mission, name, setup.site, setup.robot, machine.steps, *hints, *before)
     with RemoteSource(folder) as source:
         if plain or not suitable(sys.stdout, sys.stderr, sys.stdin):
             _in_plain_lines(source)

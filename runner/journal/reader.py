@@ -163,6 +163,11 @@ class Record:
                 yield TrackRow(row[0], row[1], _seen(row[2:13], route))
             after = page[-1][0]
 
+    def newest_positions(self, most: int) -> list[Point]:
+        """Where the robot believed to be, in the newest rows of the track, oldest first."""
+        rows = self._rows("SELECT x, y FROM track ORDER BY seq DESC LIMIT ?", (most,))
+        return [(x, y) for x, y in reversed(rows)]
+
     def truths(self) -> Iterator[TruthRow]:
         """What really was the case, in order; nothing of a real robot, or in a record that is older than this table."""
         if not self._rows("SELECT 1 FROM sqlite_schema WHERE type = 'table' AND name = 'truth'"):

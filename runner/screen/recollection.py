@@ -25,13 +25,15 @@ _Tile = tuple[int, int]
 class Recollection:
     """Bounded memories of one run, oldest forgotten first."""
 
-    def __init__(self, troubles: Iterable[Point] = ()) -> None:
+    def __init__(self, troubles: Iterable[Point] = (), way: Iterable[Point] = ()) -> None:
         self.trail: deque[Point] = deque(maxlen=TRAIL_POINTS)
         self._troubles: dict[Point, None] = {}
         self._told: dict[_Tile, tuple[Point, float]] = {}
         self._now: set[_Tile] = set()
         for point in troubles:
             self._keep_trouble(point)
+        for point in way:
+            self._go_to(point)
 
     @property
     def troubles(self) -> Iterable[Point]:
@@ -45,9 +47,7 @@ class Recollection:
     def take(self, view: View) -> None:
         """Remember a view."""
         if view.pose is not None:
-            here = (view.pose.x, view.pose.y)
-            if not self.trail or math.dist(self.trail[-1], here) >= TRAIL_EVERY_M:
-                self.trail.append(here)
+            self._go_to((view.pose.x, view.pose.y))
         self._now = set()
         for x, y in view.obstacles:
             tile = (math.floor(x / _SAME_M), math.floor(y / _SAME_M))
@@ -61,6 +61,10 @@ class Recollection:
         for line in lines:
             if line.at is not None:
                 self._keep_trouble(line.at)
+
+    def _go_to(self, here: Point) -> None:
+        if not self.trail or math.dist(self.trail[-1], here) >= TRAIL_EVERY_M:
+            self.trail.append(here)
 
     def _keep_trouble(self, point: Point) -> None:
         self._troubles[round(point[0], 2), round(point[1], 2)] = None

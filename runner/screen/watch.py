@@ -80,7 +80,7 @@ class WatchApp(App[None]):
         self._view: View | None = None
         self._lost = False
         self._feed: deque[FeedLine] = deque(maxlen=FEED_KEPT)
-        self._kept = Recollection(showing.troubles)
+        self._kept = Recollection(showing.troubles, showing.way)
         self._desk = Desk()
         self._mode, self._page_at, self._choice = Mode.WATCHING, 0, pages.Choice()
         self._asked: tuple[str, tuple[str, ...]] = ("", ())

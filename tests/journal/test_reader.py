@@ -72,6 +72,13 @@ def test_the_first_and_last_counters_of_the_robot_are_read_without_the_track_bet
         assert record.last_stamp() == 420.0
 
 
+def test_the_newest_positions_come_oldest_first(folder: Path) -> None:
+    with open_record(folder) as record:
+        whole = [(row.seen.pose.x, row.seen.pose.y) for row in record.track()]
+        assert record.newest_positions(3) == whole[-3:]
+        assert record.newest_positions(10_000) == whole
+
+
 def test_a_record_without_entries_or_telemetry_can_be_read(tmp_path: Path) -> None:
     JournalWriter.create(tmp_path / "run", header(), SOURCES, MACHINE).close()
     with open_record(tmp_path / "run") as record:

@@ -151,6 +151,13 @@ def test_what_was_told_of_before_where_it_drove_and_where_it_was_stuck_stay_in_s
     assert not now & {(round(x, 1), round(y, 1)) for x, y in kept.before()}
 
 
+def test_a_screen_that_comes_late_shows_the_way_so_far() -> None:
+    way = [(view.pose.x, view.pose.y) for view in driving()[:80] if view.pose is not None]
+    kept = Recollection(way=way)
+    assert 50 < len(kept.trail) < 80
+    assert {ink for _, ink in _drawing(54, 15, DOTTED).moving(MOVING, kept).values()} >= {Ink.TRAIL}
+
+
 @given(st.integers(1, 3000), st.floats(0.05, 3.0))
 @settings(max_examples=20, deadline=None)
 def test_what_a_screen_remembers_is_bounded(count: int, step: float) -> None:
