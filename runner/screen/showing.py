@@ -20,8 +20,8 @@ from runner.site.values import Point, RobotDescription, Site
 @dataclass(frozen=True, slots=True)
 class Showing:
     """What does not change during a run. `report_hint` is the command that shows the record afterwards, `pick_up_hint`
-    the one that goes on with a run whose process died. `troubles` are the places of the incidents so far, `way` is where the
-    robot has been, as far back as is worth showing, oldest first."""
+    the one that goes on with a run whose process died. `troubles` are the places of the incidents so far, `way` is
+    where the robot has been, as far back as is worth showing, oldest first."""
 
     mission: str
     run: str

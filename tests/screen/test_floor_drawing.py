@@ -154,7 +154,7 @@ def test_what_was_told_of_before_where_it_drove_and_where_it_was_stuck_stay_in_s
 def test_a_screen_that_comes_late_shows_the_way_so_far() -> None:
     way = [(view.pose.x, view.pose.y) for view in driving()[:80] if view.pose is not None]
     kept = Recollection(way=way)
-    assert 50 < len(kept.trail) < 80
+    assert len(kept.trail) == 40
     assert {ink for _, ink in _drawing(54, 15, DOTTED).moving(MOVING, kept).values()} >= {Ink.TRAIL}
 
 
