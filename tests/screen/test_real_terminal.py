@@ -27,6 +27,9 @@ from runner.journal.reader import open_record
 
 SGR_COLORS = re.compile(rb"\x1b\[([0-9;]*)m")
 
+TOLD = ("NO_COLOR", "TRUNDLE_ASCII", "LC_ALL", "COLUMNS", "LINES")
+"""What the environment may say of a terminal; here only the terminal itself is asked."""
+
 
 class Terminal:
     """A pseudo-terminal of a size, with what was written to it and how it looks now."""
@@ -68,7 +71,7 @@ def _watching(
     scene: str, columns: int = 80, rows: int = 24, program: str = "", arguments: Sequence[str] = (), **environment: str
 ) -> Iterator[tuple[Terminal, subprocess.Popen[bytes]]]:
     terminal = Terminal(columns, rows)
-    kept = {name: value for name, value in os.environ.items() if name not in ("NO_COLOR", "TRUNDLE_ASCII", "LC_ALL")}
+    kept = {name: value for name, value in os.environ.items() if name not in TOLD}
     process = subprocess.Popen(
         [sys.executable, *(("-c", program) if program else ("-m", "tests.screen.scripted", scene)), *arguments],
         stdin=terminal.there,
