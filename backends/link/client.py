@@ -31,6 +31,9 @@ GREETING_S = 5.0
 OPENING_S = 10.0
 LEAVING_S = 1.0
 FRAMES_A_TURN = 256
+EAGER_S = 0.0005
+"""After a command its answer is looked for without sleeping for so long: on a wire, to fall asleep and be woken takes
+longer than all that both programs do."""
 
 
 class LinkClock:
@@ -81,6 +84,7 @@ class LinkBackend:
         self._context: zmq.Context[zmq.Socket[bytes]] = zmq.Context()
         self._socket = controller_socket(self._context, setup.line.address, keys)
         self._monitor = self._socket.get_monitor_socket(zmq.EVENT_HANDSHAKE_FAILED_AUTH)
+        self._eager_until = 0.0
 
     @property
     def clock(self) -> Clock:
@@ -159,32 +163,32 @@ class LinkBackend:
 
     def go(self, goal: Goal) -> None:
         self.controller.go(goal)
-        self._send()
+        self._send_command()
 
     def halt(self) -> None:
         self.controller.halt()
-        self._send()
+        self._send_command()
 
     def clear(self, action_id: int, radius: float) -> None:
         self.controller.act(action_id, lambda lease, number, heard: Clear(lease, number, heard, action_id, radius))
-        self._send()
+        self._send_command()
 
     def replan(self, action_id: int) -> None:
         self.controller.act(action_id, lambda lease, number, heard: Replan(lease, number, heard, action_id))
-        self._send()
+        self._send_command()
 
     def ease_back(self, action_id: int, distance: float) -> None:
         self.controller.act(action_id, lambda lease, number, heard: EaseBack(lease, number, heard, action_id, distance))
-        self._send()
+        self._send_command()
 
     def relocate(self, action_id: int, pose: Pose | None) -> None:
         near = None if pose is None else stand_of(pose)
         self.controller.act(action_id, lambda lease, number, heard: Relocate(lease, number, heard, action_id, near))
-        self._send()
+        self._send_command()
 
     def charge(self) -> None:
         self.controller.order(Charge)
-        self._send()
+        self._send_command()
 
     # --- reports
 
@@ -230,6 +234,9 @@ class LinkBackend:
     def _wait(self, seconds: float) -> bool:
         """Wait for a frame, at most so many seconds of our clock. Whether one is there."""
         wall = max(0.0, seconds) / self._clock.pace
+        while time.monotonic() < self._eager_until and not self.controller.settled:
+            if frame_waits(self._socket):
+                return True
         return bool(wait_for_frames((self._socket,), ceil(wall * 1e3)))
 
     def _exchange(self, ready: bool = False) -> None:
@@ -243,6 +250,10 @@ class LinkBackend:
                 return
             ready = False
             self.controller.receive(self._socket.recv(NOW))
+
+    def _send_command(self) -> None:
+        self._send()
+        self._eager_until = time.monotonic() + EAGER_S
 
     def _send(self) -> None:
         for frame in self.controller.due():
