@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import json
 import os
 import re
 import signal
@@ -15,8 +16,11 @@ from random import Random
 
 import pytest
 
-from runner.engine.values import Ended, Go, GoalNews
+from runner.cli.exits import Exit
+from runner.engine.values import Ended, Go, GoalNews, Halt
+from runner.journal.outcome import RunOutcome, outcome_of
 from runner.journal.reader import open_record
+from runner.journal.replay import verify
 from runner.journal.schema import FILE_NAME
 from tests.faults.line_proxy import Proxy, free_port
 
@@ -87,6 +91,48 @@ def test_a_mission_comes_out_over_the_link_as_it_does_directly_through_cuts(tmp_
     sent, ended = account(run_folder(tmp_path / "runs"))
     assert sent == ended
     assert len(set(sent)) == len(sent)
+
+
+def test_an_abort_while_the_line_is_cut_ends_the_run_and_the_robot_stands(tmp_path: Path) -> None:
+    """It stops itself by silence, and the halt reaches it once the line is there again."""
+    port = free_port()
+    with robot("short-errand", port, 1.0, tmp_path / "keep"):
+        proxy = Proxy(port)
+        process = run("short-errand", tmp_path / "runs", "--robot", f"tcp://127.0.0.1:{proxy.port}")
+        folder = run_folder(tmp_path / "runs")
+        wait_for_a_goal(folder)
+        proxy.cut(4.0, breaks=False)
+        process.send_signal(signal.SIGTERM)
+        code, _ = finished(process, 30.0)
+        proxy.close()
+        time.sleep(3.0)  # the silence that is agreed, and braking
+        before = standing_at(tmp_path / "keep")
+        time.sleep(1.0)
+        after = standing_at(tmp_path / "keep")
+    assert code == Exit.ABORTED
+    assert before == after
+    with open_record(folder) as record:
+        assert outcome_of(record) is RunOutcome.ABORTED
+        assert any(isinstance(entry.value, Halt) for entry in record.entries())
+        assert verify(record).parting is None
+
+
+def wait_for_a_goal(folder: Path, seconds: float = 60.0) -> None:
+    """Until the robot was sent somewhere and has set off."""
+    end = time.monotonic() + seconds
+    while time.monotonic() < end:
+        with open_record(folder) as record:
+            if any(isinstance(entry.value, GoalNews) for entry in record.entries()):
+                time.sleep(2.0)
+                return
+        time.sleep(0.1)
+    raise AssertionError("the robot was sent nowhere")
+
+
+def standing_at(keep: Path) -> list[float]:
+    """Where a robot stands, by its own note of a moment ago."""
+    pose: list[float] = json.loads(keep.read_text())["pose"]
+    return pose
 
 
 @pytest.mark.soak
