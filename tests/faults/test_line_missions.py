@@ -110,7 +110,7 @@ def test_an_abort_while_the_line_is_cut_ends_the_run_and_the_robot_stands(tmp_pa
         time.sleep(1.0)
         after = standing_at(tmp_path / "keep")
     assert code == Exit.ABORTED
-    assert before == after
+    assert before == pytest.approx(after, abs=0.03), "it stands, but for what it believes"
     with open_record(folder) as record:
         assert outcome_of(record) is RunOutcome.ABORTED
         assert any(isinstance(entry.value, Halt) for entry in record.entries())
