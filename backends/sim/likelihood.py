@@ -43,11 +43,17 @@ class Field:
     spread: float
 
 
-def field_of(mapped: NDArray[np.bool_], known: NDArray[np.float32], surveyed: NDArray[np.bool_], lidar: Lidar) -> Field:
-    """The field of a map; `surveyed` is its free floor, `known` its distance field."""
-    within = clearance(np.pad(~mapped, 1))[1:-1, 1:-1]
+def field_of(
+    surfaces: NDArray[np.bool_], known: NDArray[np.float32], surveyed: NDArray[np.bool_], lidar: Lidar
+) -> Field:
+    """The field of a map; `surveyed` is its free floor, `known` the distance field of what stands for good.
+
+    `surfaces` are all cells at which a beam may end: doors too, for they may be shut. Where only walls count, a shut
+    door is taken for a wall, and the robot for a little farther on, where the wall goes on.
+    """
+    within, outside = clearance(np.pad(~surfaces, 1))[1:-1, 1:-1], clearance(surfaces)
     half = 0.5 * CELL_M
-    signed = np.where(mapped, half - within, known - half).astype(np.float32)
+    signed = np.where(surfaces, half - within, outside - half).astype(np.float32)
     every = round(SPOTS_M / CELL_M)
     rows, columns = np.nonzero((surveyed & (known >= NEAR_WALL_M))[::every, ::every])
     spots = np.asarray((np.column_stack([columns, rows]) * every + 0.5) * CELL_M, dtype=np.float64)

@@ -89,7 +89,8 @@ class Simulator:
         uneven = setup.conditions.uneven_floor
         self._scanner = Scanner(setup.robot, self.body.outline, uneven, TICKS_PER_S, streams[1], streams[3])
         self._sweeper = None if setup.robot.sweep is None else Sweeper(setup.robot.sweep, TICKS_PER_S, streams[4])
-        field = field_of(mapped, self.memory.known, known_floor, setup.robot.lidar)
+        surfaces = floor.blocked(door.name for door in setup.site.doors)
+        field = field_of(surfaces, self.memory.known, known_floor, setup.robot.lidar)
         self.localization = Localization(field, setup.robot.lidar, self.body.wheels, setup.start, streams[2])
         self._faults = Faults(setup.conditions.faults, self.trouble, self._carry, streams[6])
         self._random_spots = streams[9]

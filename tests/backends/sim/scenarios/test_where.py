@@ -15,7 +15,7 @@ import pytest
 from backends.contract import ActionReport, Goal, GoalReport, GoalStatus, Report, Setup, Telemetry
 from backends.sim.simulator import Simulator
 from runner.language.reader import load_robot, load_site
-from runner.site.values import Conditions, Fault, FaultKind, Odometry, Pose, Walkers
+from runner.site.values import Conditions, DoorChange, Fault, FaultKind, Odometry, Pose, Walkers
 from tests.backends.sim.scenarios.watching import SEEDS
 from tests.backends.sim.support import CART, CORRIDOR, HALL, Drive, distance, go, start
 from tests.bench.night import MISSIONS
@@ -149,6 +149,24 @@ def test_in_a_hall_that_looks_the_same_turned_by_half_it_says_that_it_cannot_tel
     assert claims <= 2
 
 
+# --- doors that are shut ----------------------------------------------------------------------------------------------
+
+
+@pytest.mark.parametrize("seed", SEEDS)
+def test_a_shut_door_in_a_corridor_is_not_taken_for_the_wall_farther_on(seed: int) -> None:
+    """The map shows the kitchen's doorway open, at night it is shut: a robot that took the door for wall would believe
+    to be most of a door's width farther on, and be a meter off for the rest of the corridor."""
+    at = PLACES["charging bay"]
+    shut = Conditions(doors=(DoorChange("kitchen door", 0.0, open=False),))
+    drive = Drive(Simulator(Setup(CLINIC, SMALL_CART, at, shut, seed, datetime(2026, 1, 5, 14))))
+    worst = 0.0
+    for number in range(1, 25):
+        go(drive, number, Pose(17.0 if number % 2 else 3.5, 12.4, 0.0 if number % 2 else math.pi))
+        while drive.until_end(drive.simulator.clock.now() + 0.5) is None:
+            worst = max(worst, error(drive))
+    assert worst < 0.25
+
+
 # --- slip, stuck, stopped ---------------------------------------------------------------------------------------------
 
 
@@ -166,7 +184,7 @@ def test_where_the_wheels_slip_odometry_runs_ahead_and_the_belief_stays_near_the
     for tick in range(121, 200):
         drive.until(tick / 10.0)
         worst = max(worst, error(drive))
-    assert worst < 0.3
+    assert worst < 0.6 * (counted - made)
     end = drive.until_end(120.0)
     assert end is not None
     assert end.status is GoalStatus.ARRIVED
