@@ -30,7 +30,7 @@ from backends.sim.world import World
 from runner.site.floor import rasterize
 from runner.site.values import Pose
 
-PREPARATION = "The simulator is being compiled, once after an installation. This takes some twenty seconds."
+PREPARATION = "Compiling the simulator, once after an installation: some twenty seconds."
 
 TICKS_PER_S = 10
 TICK_S = 1.0 / TICKS_PER_S

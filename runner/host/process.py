@@ -19,6 +19,7 @@ import time
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path
+from typing import TextIO
 
 import msgspec
 
@@ -31,6 +32,9 @@ from runner.journal.header import person_and_host
 OUTPUT = "output.txt"
 START_S = 120.0
 """How long a process may take to be ready: the first run after an installation compiles."""
+STOP_S = 10.0
+PREPARING = "getting ready: "
+"""How lines begin that a process writes for whoever waits for it to be ready."""
 CODES = {"ended": 0, "mistake": 2, "trouble": 6, "stopped": 0}
 
 
@@ -72,18 +76,64 @@ def _start(work: _Work, folder: Path) -> int:
     with contextlib.suppress(BrokenPipeError):
         process.stdin.write(msgspec.msgpack.encode(work))
         process.stdin.close()
+    said = _Said(folder / OUTPUT, begun)
+    try:
+        if _is_ready(process, folder, said):
+            return process.pid
+    except KeyboardInterrupt:
+        _stop(process)  # nobody has seen it yet, so nobody would know that it goes on
+        raise
+    raise LaunchError(said.rest() or f"The run did not get ready in {START_S:g} s. See {folder / OUTPUT}.")
+
+
+def _is_ready(process: subprocess.Popen[bytes], folder: Path, said: _Said) -> bool:
+    """Wait until the process serves its socket, and pass on what it says meanwhile. False where it does not."""
     end = time.monotonic() + START_S
-    while time.monotonic() < end:
-        if process.poll() is not None:
-            break
+    while time.monotonic() < end and process.poll() is None:
         with contextlib.suppress(UnreachableError):
             look(folder)
-            return process.pid
+            return True
+        said.pass_on(sys.stderr)
         time.sleep(0.05)
-    if process.poll() == 0:  # over before anybody could look
-        return process.pid
-    said = (folder / OUTPUT).read_bytes()[begun:].decode(errors="replace").strip()
-    raise LaunchError(said or f"The run did not get ready in {START_S:g} s. See {folder / OUTPUT}.")
+    return process.poll() == 0  # over before anybody could look
+
+
+def _stop(process: subprocess.Popen[bytes]) -> None:
+    """Let it halt the robot and end; by force where it does not."""
+    process.terminate()
+    try:
+        process.wait(STOP_S)
+    except subprocess.TimeoutExpired:
+        process.kill()
+        process.wait()
+
+
+@dataclass(slots=True)
+class _Said:
+    """What a process has said in its file from some byte on: while it gets ready, what takes it so long."""
+
+    file: Path
+    at: int
+
+    def pass_on(self, stream: TextIO) -> None:
+        """Say the whole lines that are new to whoever waits. A mistake that ends the process is not among them: that
+        is said once it is known to have ended."""
+        for line in self.file.read_bytes()[self.at :].splitlines(keepends=True):
+            if not (line.startswith(PREPARING.encode()) and line.endswith(b"\n")):
+                return
+            stream.write(line.decode(errors="replace").removeprefix(PREPARING))
+            stream.flush()
+            self.at += len(line)
+
+    def rest(self) -> str:
+        return self.file.read_bytes()[self.at :].decode(errors="replace").strip()
+
+
+def _say_preparation(board: Board) -> None:
+    """Before there is a view nobody can attach, so what takes time is said where `start` reads it."""
+    if board.view() is None:
+        for line in board.feed():
+            print(f"{PREPARING}{line.text}", flush=True)
 
 
 def stop_on_request() -> None:
@@ -121,8 +171,8 @@ def main() -> int:
     folder, board = Path(work.folder), Board(person_and_host()[0])
     errand = work.errand
     if errand is None:
-        return owning(lambda: pick_up(left(folder), folder, board, lambda: None))
-    return owning(lambda: begin(errand, folder, board, lambda: None))
+        return owning(lambda: pick_up(left(folder), folder, board, lambda: _say_preparation(board)))
+    return owning(lambda: begin(errand, folder, board, lambda: _say_preparation(board)))
 
 
 if __name__ == "__main__":

@@ -12,6 +12,8 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
+from runner.cli.exits import Exit
+from runner.engine.values import Go
 from runner.host.messages import Deed
 from runner.host.remote import UnreachableError, do, look
 from runner.host.view import Health
@@ -138,3 +140,24 @@ def the_run_ends(runs: Path, seconds: float) -> RunOutcome | None:
                     return outcome_of(record)
         time.sleep(0.1)
     return None
+
+
+def test_ctrl_c_while_a_run_gets_ready_leaves_no_run_behind_that_nobody_sees(tmp_path: Path) -> None:
+    """The first run after an installation compiles, says so, and has no screen yet."""
+    environment = {**os.environ, "TRUNDLE_RUNS": str(tmp_path / "runs"), "NUMBA_CACHE_DIR": str(tmp_path / "kernels")}
+    process = subprocess.Popen(
+        [str(TRUNDLE), "run", "short-errand", "--detach"],
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+        env=environment,
+    )
+    assert process.stderr is not None
+    assert process.stderr.readline().startswith("Compiling the simulator")
+    process.send_signal(signal.SIGINT)
+    assert process.wait(30.0) == Exit.ABORTED
+    assert "Stopped by Ctrl-C." in process.stderr.read()
+    (folder,) = (file.parent for file in (tmp_path / "runs").glob(f"*/{FILE_NAME}"))
+    with open_record(folder) as record:
+        assert record.status is Status.BROKEN_OFF
+        assert not any(isinstance(entry.value, Go) for entry in record.entries())
