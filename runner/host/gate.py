@@ -14,7 +14,7 @@ import threading
 from collections.abc import Callable, Sequence
 from typing import Any
 
-from backends.contract import Backend, Report, TellsTruth, Truth
+from backends.contract import Backend, LineQuality, OnALine, Report, TellsTruth, Truth
 
 
 class RobotError(Exception):
@@ -27,6 +27,7 @@ class Gate:
     def __init__(self, backend: Backend) -> None:
         self._backend = backend
         self._teller = backend if isinstance(backend, TellsTruth) else None
+        self._on_a_line = backend if isinstance(backend, OnALine) else None
         self._lock = threading.Lock()
         self._aborting = threading.Event()
         self._halted = False
@@ -78,6 +79,15 @@ class Gate:
         with self._lock:
             truths: Sequence[Truth] = self._call(self._teller.truths)
             return truths
+
+    def quality(self) -> LineQuality | None:
+        """How good the line to the robot is; None where there is none."""
+        on_a_line = self._on_a_line
+        if on_a_line is None:
+            return None
+        with self._lock:
+            quality: LineQuality = self._call(lambda: on_a_line.quality)
+            return quality
 
     def _halt_once(self) -> None:
         """Whoever gets the lock first after an abort halts, so that an abort never waits for its turn."""

@@ -21,7 +21,7 @@ from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
-from backends.contract import Backend, OnALine
+from backends.contract import Backend
 from runner.engine.advance import advance
 from runner.engine.codec import state_to_bytes
 from runner.engine.state import EngineState
@@ -266,8 +266,8 @@ class Host:
 
     def _post_view(self) -> None:
         view = view_of(self.machine, self.state, self.backend.clock.now())
-        if isinstance(self.backend, OnALine):
-            view = replace(view, line=self.backend.quality)
+        if (quality := self.gate.quality()) is not None:
+            view = replace(view, line=quality)
         if self.distress.kind and self.state.ended is None:
             view = replace(view, health=Health.NEEDS_YOU, reason=self.distress.detail)
         self.board.post_view(view)
