@@ -76,16 +76,14 @@ class RobotServer:
         """Serve until told to stop. Whatever ends it, the robot is stopped."""
         try:
             while not until.is_set():
-                self._turn(wait_for_frames(self._sockets, TURN_MS))
+                self._turn()
         finally:
             self.side.stop()
             self.close()
 
-    def turn(self) -> None:
-        """Serve what waits, and look at the clock once."""
-        self._turn(wait_for_frames(self._sockets, 0))
-
-    def _turn(self, waiting: list[zmq.Socket[bytes]]) -> None:
+    def _turn(self) -> None:
+        """Serve what waits, or comes within a turn, and look at the clock once."""
+        waiting = wait_for_frames(self._sockets, TURN_MS)
         if self.gate is not None and self.gate.socket in waiting:
             self.gate.turn()
         left = FRAMES_A_TURN if self._socket in waiting else 0

@@ -108,7 +108,7 @@ def robot_socket(context: zmq.Context[zmq.Socket[bytes]], address: str, keys: Ke
 
 def frame_waits(socket: zmq.Socket[bytes]) -> bool:
     """Whether a frame can be taken without waiting. Cheaper than trying: an exception costs more than a frame."""
-    return bool(zmq.zmq_poll([(socket, _INCOMING)], 0))
+    return bool(wait_for_frames((socket,), 0))
 
 
 def wait_for_frames(sockets: Sequence[zmq.Socket[bytes]], milliseconds: int) -> list[zmq.Socket[bytes]]:

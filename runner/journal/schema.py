@@ -104,4 +104,4 @@ def first_digest(machine_json: str, sources: Iterable[Source]) -> str:
 
 def next_digest(before: str, seq: int, stamp: float, kind: str, name: str, body: str) -> str:
     """The digest of an entry that follows the one with digest `before`."""
-    return hashlib.sha256(f"{before}\n{seq}\n{stamp!r}\n{kind}\n{name}\n{body}".encode()).hexdigest()
+    return text_digest(f"{before}\n{seq}\n{stamp!r}\n{kind}\n{name}\n{body}")

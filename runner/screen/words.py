@@ -13,6 +13,7 @@ OLD_AT_FIRST_S = 15.0
 """The same before the first view: the first run after an installation compiles."""
 
 _ALL_ANSWERED = 0.995
+"""From this share on, no beat in a hundred is missing."""
 
 _NEXT_FOR_YOU: dict[Health, str] = {
     Health.STARTING: "nothing for you to do",
@@ -83,14 +84,10 @@ def line_so_far(view: View) -> tuple[str, str, str]:
     if line.round_trip is None or line.round_trip_worst is None:
         quick = "line: no answer yet"
     else:
-        quick = f"line {_milliseconds(line.round_trip)}, at worst {_milliseconds(line.round_trip_worst)}"
+        quick = f"line {amount(line.round_trip * 1e3, 'ms')}, at worst {amount(line.round_trip_worst * 1e3, 'ms')}"
     lost = f"{100.0 * (1.0 - line.answered):.0f} % of beats lost" if line.answered < _ALL_ANSWERED else ""
     apart = f"clocks {line.offset:+.3f} s apart" if line.offset_error is not None else ""
     return quick, lost, apart
-
-
-def _milliseconds(seconds: float) -> str:
-    return f"{seconds * 1e3:.1f} ms" if seconds < 0.00995 else f"{seconds * 1e3:.0f} ms"
 
 
 def laps(view: View) -> str:
