@@ -33,6 +33,7 @@ OUTPUT = "output.txt"
 START_S = 120.0
 """How long a process may take to be ready: the first run after an installation compiles."""
 STOP_S = 10.0
+"""How long a process that is told to stop may take, before it is killed."""
 PREPARING = "getting ready: "
 """How lines begin that a process writes for whoever waits for it to be ready."""
 CODES = {"ended": 0, "mistake": 2, "trouble": 6, "stopped": 0}
@@ -95,6 +96,7 @@ def _is_ready(process: subprocess.Popen[bytes], folder: Path, said: _Said) -> bo
             return True
         said.pass_on(sys.stderr)
         time.sleep(0.05)
+    said.pass_on(sys.stderr)  # what it said just before it ended
     return process.poll() == 0  # over before anybody could look
 
 

@@ -22,7 +22,7 @@ class Outlet:
 
     def __init__(self, stream: TextIO) -> None:
         self._stream = stream
-        self._waiting: queue.Queue[str | None] = queue.Queue(LINES_MOST)
+        self._waiting: queue.SimpleQueue[str | None] = queue.SimpleQueue()
         self._gone = self._closing = False
         self._thread = threading.Thread(target=self._pass_on, name="output", daemon=True)
         self._thread.start()
@@ -30,10 +30,8 @@ class Outlet:
     def write(self, text: str) -> None:
         if self._gone:
             raise BrokenPipeError
-        try:
-            self._waiting.put_nowait(text)
-        except queue.Full:
-            return
+        if self._waiting.qsize() < LINES_MOST:
+            self._waiting.put(text)
 
     def flush(self) -> None:
         """Nothing to do: each line is flushed as it goes out."""
