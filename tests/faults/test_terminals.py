@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import contextlib
 import fcntl
 import os
 import signal
@@ -17,6 +18,7 @@ from runner.engine.values import Go
 from runner.host.messages import Deed
 from runner.host.remote import UnreachableError, do, look
 from runner.host.view import Health
+from runner.journal.errors import JournalError
 from runner.journal.outcome import RunOutcome, outcome_of
 from runner.journal.reader import Status, open_record
 from runner.journal.runs import find_run
@@ -135,7 +137,7 @@ def the_run_ends(runs: Path, seconds: float) -> RunOutcome | None:
     end = time.monotonic() + seconds
     while time.monotonic() < end:
         for file in runs.glob(f"*/{FILE_NAME}"):
-            with open_record(file.parent) as record:
+            with contextlib.suppress(JournalError), open_record(file.parent) as record:  # it may only just be begun
                 if record.status is Status.ENDED:
                     return outcome_of(record)
         time.sleep(0.1)
