@@ -193,15 +193,14 @@ class LinkBackend:
     # --- reports
 
     def reports(self, until: float) -> Sequence[Report]:
-        ready = False
         while True:
-            self._exchange(ready)
+            self._exchange()
             if found := self.controller.reports():
                 return found
             now = self._clock.now()
             if now >= until:
                 return []
-            ready = self._wait(min(until, self.controller.next_due()) - now)
+            self._wait(min(until, self.controller.next_due()) - now)
 
     def close(self) -> None:
         if self._context.closed:
@@ -221,34 +220,31 @@ class LinkBackend:
     def _pump(self, done: Callable[[], bool], seconds: float) -> bool:
         """Exchange frames until something holds, at most for so many seconds of wall time."""
         deadline = time.monotonic() + seconds
-        ready = False
         while True:
-            self._exchange(ready)
+            self._exchange()
             if done():
                 return True
             left = deadline - time.monotonic()
             if left <= 0.0:
                 return False
-            ready = self._wait(min(left * self._clock.pace, self.controller.next_due() - self._clock.now()))
+            self._wait(min(left * self._clock.pace, self.controller.next_due() - self._clock.now()))
 
-    def _wait(self, seconds: float) -> bool:
-        """Wait for a frame, at most so many seconds of our clock. Whether one is there."""
+    def _wait(self, seconds: float) -> None:
+        """Wait for a frame, at most so many seconds of our clock."""
         wall = max(0.0, seconds) / self._clock.pace
         while time.monotonic() < self._eager_until and not self.controller.settled:
             if frame_waits(self._socket):
-                return True
-        return bool(wait_for_frames((self._socket,), ceil(wall * 1e3)))
+                return
+        wait_for_frames((self._socket,), ceil(wall * 1e3))
 
-    def _exchange(self, ready: bool = False) -> None:
-        self._receive(ready)
+    def _exchange(self) -> None:
+        self._receive()
         self._send()
 
-    def _receive(self, ready: bool) -> None:
-        """Take in what waits; `ready` where a frame is known to."""
+    def _receive(self) -> None:
         for _ in range(FRAMES_A_TURN):
-            if not ready and not frame_waits(self._socket):
+            if not frame_waits(self._socket):
                 return
-            ready = False
             self.controller.receive(self._socket.recv(NOW))
 
     def _send_command(self) -> None:

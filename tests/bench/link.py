@@ -132,7 +132,8 @@ class Ends:
         self.backend.charge()
         controller = self.backend.controller
         while not controller.settled:
-            self.backend._receive(self.backend._wait(1.0))
+            self.backend._wait(1.0)
+            self.backend._receive()
 
 
 def line(folder: Path, address: str, security: str) -> Line:
