@@ -90,9 +90,7 @@ def test_a_mission_comes_out_over_the_link_as_it_does_directly_through_cuts(tmp_
         linked = finished(process, 120.0)
         proxy.close()
     assert linked == direct
-    sent, ended = account(run_folder(tmp_path / "runs"))
-    assert sent == ended
-    assert len(set(sent)) == len(sent)
+    assert_each_goal_once(run_folder(tmp_path / "runs"))
 
 
 def test_an_abort_while_the_line_is_cut_ends_the_run_and_the_robot_stands(tmp_path: Path) -> None:
@@ -140,37 +138,10 @@ def standing_at(keep: Path) -> list[float]:
 @pytest.mark.soak
 @pytest.mark.parametrize("mission", ["short-errand", "evening-round"])
 def test_a_mission_survives_ten_cuts_of_five_seconds_and_a_restart_of_each_side(mission: str, tmp_path: Path) -> None:
-    chance = Random(mission)  # noqa: S311  a test's chance, not a secret
     direct = finished(run(mission, tmp_path / "direct", "--pace", "max"), 300.0)
-    port, runs, keep = free_port(), tmp_path / "runs", tmp_path / "keep"
-    proxy = Proxy(port)
-    legs: list[str] = []
-    with robot(mission, port, 1.0, keep) as first:
-        process = run(mission, runs, "--robot", f"tcp://127.0.0.1:{proxy.port}")
-        folder = run_folder(runs)
-        for number in range(5):
-            time.sleep(chance.uniform(6.0, 9.0))
-            proxy.cut(5.0, breaks=number % 2 == 0)
-        time.sleep(8.0)
-        process.send_signal(signal.SIGKILL)
-        legs += finished(process, 60.0)[1]
-        time.sleep(1.0)
-        again = subprocess.Popen(
-            [*TRUNDLE, "pick-up", str(folder), "--plain"], stdout=subprocess.PIPE, text=True, env=environment(runs)
-        )
-        time.sleep(6.0)
-        first.kill()
-    with robot(mission, port, 1.0, keep):
-        for number in range(5):
-            time.sleep(chance.uniform(6.0, 9.0))
-            proxy.cut(5.0, breaks=number % 2 == 0)
-        code, later = finished(again, 1200.0)
-    proxy.close()
-    sent, ended = account(folder)
-    print(f"{mission}: exit {code}, goals {sent}, ended {ended}, legs {[*legs, *later]}")
-    assert (code, [*legs, *later]) == direct
-    assert sent == ended
-    assert len(set(sent)) == len(sent)
+    linked, folder = through_cuts_and_restarts(mission, tmp_path, 1.0, ((6.0, 9.0), (6.0, 9.0)), 6.0)
+    assert linked == direct
+    assert_each_goal_once(folder)
 
 
 @pytest.mark.soak
@@ -179,41 +150,58 @@ def test_a_whole_night_over_the_link_ends_as_it_does_directly(tmp_path: Path) ->
 
     No faster: the robot must start again before its time says that it was silent for half a minute.
     """
-    mission, pace = "overnight-endurance", 7.0
-    chance = Random(mission)  # noqa: S311  a test's chance, not a secret
-    code, legs = finished(run(mission, tmp_path / "direct", "--pace", "max"), 600.0)
-    port, runs, keep = free_port(), tmp_path / "runs", tmp_path / "keep"
-    proxy = Proxy(port)
-    linked_legs: list[str] = []
-    with robot(mission, port, pace, keep) as first:
-        process = run(mission, runs, "--robot", f"tcp://127.0.0.1:{proxy.port}")
-        folder = run_folder(runs)
-        cut_now_and_then(proxy, 5, chance, 5.0 / pace, most=20.0)
-        process.send_signal(signal.SIGKILL)
-        linked_legs += finished(process, 60.0)[1]
-        again = subprocess.Popen(
-            [*TRUNDLE, "pick-up", str(folder), "--plain"], stdout=subprocess.PIPE, text=True, env=environment(runs)
-        )
-        time.sleep(30.0)
-        first.kill()
-    with robot(mission, port, pace, keep):
-        cut_now_and_then(proxy, 5, chance, 5.0 / pace, most=600.0)
-        linked, later = finished(again, 7200.0)
-    linked_legs += later
-    proxy.close()
-    sent, ended = account(folder)
-    print(f"exit {linked}, directly {code}; {len(sent)} goals; legs {len(linked_legs)}, directly {len(legs)}")
-    assert linked == code
-    assert sent == ended
-    assert len(set(sent)) == len(sent)
+    mission = "overnight-endurance"
+    direct = finished(run(mission, tmp_path / "direct", "--pace", "max"), 600.0)
+    linked, folder = through_cuts_and_restarts(mission, tmp_path, 7.0, ((6.0, 20.0), (6.0, 600.0)), 30.0)
+    assert linked[0] == direct[0]
+    assert_each_goal_once(folder)
     assert last_words(folder) == last_words(run_folder(tmp_path / "direct"))
 
 
-def cut_now_and_then(proxy: Proxy, times: int, chance: Random, seconds: float, most: float) -> None:
-    """Cut the line so many times, some seconds of wall time apart."""
-    for number in range(times):
-        time.sleep(chance.uniform(6.0, most))
-        proxy.cut(seconds, breaks=number % 2 == 0)
+def through_cuts_and_restarts(
+    mission: str, place: Path, pace: float, pauses: tuple[tuple[float, float], tuple[float, float]], alone: float
+) -> tuple[tuple[int, list[str]], Path]:
+    """The mission over the link: five cuts, the host killed and picked up, the robot killed and started again, five
+    cuts. A cut takes five seconds of the robot's time; `pauses` are least and most wall seconds between two of them,
+    before and after the restarts, and `alone` those between the two restarts.
+
+    What `finished` says of it, and the folder of its run.
+    """
+    chance = Random(mission)  # noqa: S311  a test's chance, not a secret
+    port, runs, keep = free_port(), place / "runs", place / "keep"
+    proxy = Proxy(port)
+
+    def cut_now_and_then(least: float, most: float) -> None:
+        for number in range(5):
+            time.sleep(chance.uniform(least, most))
+            proxy.cut(5.0 / pace, breaks=number % 2 == 0)
+
+    with robot(mission, port, pace, keep) as first:
+        process = run(mission, runs, "--robot", f"tcp://127.0.0.1:{proxy.port}")
+        folder = run_folder(runs)
+        cut_now_and_then(*pauses[0])
+        time.sleep(8.0)
+        process.send_signal(signal.SIGKILL)
+        legs = finished(process, 60.0)[1]
+        time.sleep(1.0)
+        again = subprocess.Popen(
+            [*TRUNDLE, "pick-up", str(folder), "--plain"], stdout=subprocess.PIPE, text=True, env=environment(runs)
+        )
+        time.sleep(alone)
+        first.kill()
+    with robot(mission, port, pace, keep):
+        cut_now_and_then(*pauses[1])
+        code, later = finished(again, 7200.0)
+    proxy.close()
+    print(f"{mission}: exit {code}, {len(account(folder)[0])} goals, {len(legs) + len(later)} legs told of")
+    return (code, [*legs, *later]), folder
+
+
+def assert_each_goal_once(folder: Path) -> None:
+    """None was sent twice, and none was lost."""
+    sent, ended = account(folder)
+    assert sent == ended
+    assert len(set(sent)) == len(sent)
 
 
 def last_words(folder: Path) -> list[Ended]:
